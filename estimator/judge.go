@@ -1,0 +1,371 @@
+package estimator
+
+import (
+	"fmt"
+	"math"
+	"math/cmplx"
+
+	"gonum.org/v1/gonum/mat"
+
+	"polewright/estimator/internal/frequency"
+	"polewright/estimator/internal/schur"
+	"polewright/estimator/poles"
+)
+
+// Given is a gain found elsewhere, or stored.
+type Given struct {
+	L *mat.Dense // n×p, prediction form
+	// Lf is the current form's gain, A Lf = L; nil leaves it to be solved for.
+	// Without L, L is A Lf.
+	Lf *mat.Dense
+	// Wanted are the poles that the gain was made for, as for Place; nil without.
+	Wanted []complex128
+}
+
+// Judge examines a gain. It answers for every finite gain; an unstable F leaves
+// figures undefined and is named in the warnings. In current form it fails where
+// no Lf solves A Lf = L.
+func (d *Designer) Judge(g Given) (*Design, error) {
+	for _, l := range []*mat.Dense{g.L, g.Lf} {
+		if l == nil {
+			continue
+		}
+		if l.IsEmpty() {
+			return nil, fmt.Errorf("the gain is empty, expected %d×%d: %w", d.n, d.p, ErrShape)
+		}
+		if r, c := l.Dims(); r != d.n || c != d.p {
+			return nil, fmt.Errorf("the gain is %d×%d, expected %d×%d: %w", r, c, d.n, d.p, ErrShape)
+		}
+		if !finite(l) {
+			return nil, fmt.Errorf("the gain: %w", ErrNotFinite)
+		}
+	}
+	var ls, lf *mat.Dense
+	switch {
+	case g.Lf != nil && d.model.Discrete():
+		lf = d.scaleGain(g.Lf)
+		ls = new(mat.Dense)
+		ls.Mul(d.a, lf)
+		if g.L != nil {
+			product := ls
+			ls = d.scaleGain(g.L)
+			product.Sub(product, ls)
+			if mat.Norm(product, 2) > 1e-6*mat.Norm(ls, 2) {
+				return nil, fmt.Errorf("the two gains are no pair, A Lf is not L: %w", ErrMethod)
+			}
+		}
+	case g.L != nil:
+		ls = d.scaleGain(g.L)
+	default:
+		return nil, fmt.Errorf("no gain was given, expected %d×%d: %w", d.n, d.p, ErrShape)
+	}
+	var wanted []complex128
+	if g.Wanted != nil {
+		movable, err := d.movable(g.Wanted)
+		if err != nil {
+			return nil, err
+		}
+		wanted = append(movable, d.pair.fixed...)
+	}
+	return d.judge(ls, lf, wanted)
+}
+
+// judge examines the scaled gain ls. lf is its current form where it is known,
+// wanted the poles asked for where there are any.
+func (d *Designer) judge(ls, lf *mat.Dense, wanted []complex128) (*Design, error) {
+	out := &Design{Form: d.opt.Form, Method: d.opt.Method, WorstError: math.NaN()}
+	if lf == nil && d.model.Discrete() {
+		lf = d.currentGain(ls)
+		if lf == nil && d.opt.Form == Current {
+			return nil, fmt.Errorf("no current-form gain Lf solves A Lf = L: %w", ErrMethod)
+		}
+	}
+	out.Gain = d.unscaleGain(ls)
+	if !finite(out.Gain) {
+		return nil, fmt.Errorf("the gain for these poles: %w", ErrNotFinite)
+	}
+	if lf != nil {
+		out.GainCurrent = d.unscaleGain(lf)
+	}
+	out.GainNorm = mat.Norm(out.Gain, 2)
+
+	f := d.errorMatrix(ls)
+	if err := d.form.Factor(raw(f)); err != nil {
+		return nil, fmt.Errorf("eigenvalues of A − LC: %w", err)
+	}
+	out.Reached = append([]complex128(nil), d.form.Eigenvalues()...)
+	if wanted != nil {
+		out.Wanted = wanted
+		out.Reached, out.WorstError = matchPoles(wanted, out.Reached)
+	}
+	out.Stable = stable(out.Reached, d.model.Discrete())
+	out.EigenvectorCondition = math.NaN()
+	if k, err := d.form.VectorCondition(); err == nil && !math.IsInf(k, 0) {
+		out.EigenvectorCondition = k
+	}
+	d.judgeNoise(out, ls, lf)
+	d.judgeTransient(out, f, ls, lf)
+	if err := d.judgeLoop(out); err != nil {
+		return nil, err
+	}
+	out.Float32Shift = d.float32Shift(out)
+	out.SensorSets = d.sensorSets(ls)
+	d.warn(out)
+	return out, nil
+}
+
+// errorMatrix returns F = A − L C in scaled coordinates.
+func (d *Designer) errorMatrix(ls *mat.Dense) *mat.Dense {
+	f := mat.NewDense(d.n, d.n, nil)
+	f.Mul(ls, d.c)
+	f.Sub(d.a, f)
+	return f
+}
+
+// currentGain solves A Lf = L in scaled coordinates; nil where nothing does.
+func (d *Designer) currentGain(ls *mat.Dense) *mat.Dense {
+	var svd mat.SVD
+	if !svd.Factorize(d.a, mat.SVDFull) {
+		return nil
+	}
+	rank := svd.Rank(1e-13)
+	if rank == 0 {
+		if mat.Norm(ls, 2) == 0 {
+			return mat.NewDense(d.n, d.p, nil)
+		}
+		return nil
+	}
+	lf := mat.NewDense(d.n, d.p, nil)
+	svd.SolveTo(lf, ls, rank)
+	var back mat.Dense
+	back.Mul(d.a, lf)
+	back.Sub(&back, ls)
+	if mat.Norm(&back, 2) > 1e-9*mat.Norm(ls, 2) {
+		return nil
+	}
+	return lf
+}
+
+// matchPoles orders have like wanted and returns the worst relative distance.
+func matchPoles(wanted, have []complex128) (ordered []complex128, worst float64) {
+	index := poles.Match(wanted, have)
+	ordered = make([]complex128, len(have))
+	for i, w := range wanted {
+		ordered[i] = have[index[i]]
+		size := cmplx.Abs(w)
+		if size == 0 {
+			size = 1
+		}
+		worst = max(worst, cmplx.Abs(ordered[i]-w)/size)
+	}
+	return ordered, worst
+}
+
+// solveNoise solves for the covariance that a noise q leaves, on the Schur form
+// of F at hand.
+func (d *Designer) solveNoise(q *mat.Dense) (*mat.Dense, error) {
+	n, _ := q.Dims()
+	p := mat.NewDense(n, n, nil)
+	if d.model.Discrete() {
+		return p, d.form.Stein(raw(p), raw(q))
+	}
+	return p, d.form.Lyapunov(raw(p), raw(q))
+}
+
+// judgeNoise fills the steady-state figures from the Schur form of F at hand.
+func (d *Designer) judgeNoise(out *Design, ls, lf *mat.Dense) {
+	out.Noise.OverFloorRMS = math.NaN()
+	if !out.Stable {
+		return
+	}
+	var lr, q mat.Dense
+	lr.Mul(ls, d.r)
+	q.Mul(&lr, ls.T())
+	q.Add(&q, d.w)
+	p, err := d.solveNoise(&q)
+	if err != nil {
+		out.Warnings = append(out.Warnings, "the noise has no steady state that can be computed: "+err.Error())
+		return
+	}
+	if d.opt.Form == Current {
+		p = d.filteredBy(p, lf)
+	}
+	noise := &out.Noise
+	noise.Covariance = d.unscaleCovariance(p)
+	noise.Std = roots(noise.Covariance)
+	d.compareWithFloor(noise)
+	d.sensorNoise(noise, ls)
+	d.peakGains(out)
+	for i := range outputRows(d.model) {
+		row := d.model.Outputs.RowView(i)
+		o := OutputNoise{Std: math.Sqrt(max(mat.Inner(row, noise.Covariance, row), 0)), FloorStd: math.NaN()}
+		if f := d.analysis.Floor; f != nil {
+			o.FloorStd = math.Sqrt(max(mat.Inner(row, f.Covariance, row), 0))
+		}
+		noise.Outputs = append(noise.Outputs, o)
+	}
+}
+
+func outputRows(m *Model) int {
+	if m.Outputs == nil {
+		return 0
+	}
+	r, _ := m.Outputs.Dims()
+	return r
+}
+
+// filteredBy returns (I − Lf C) P (I − Lf C)ᵀ + Lf R Lfᵀ.
+func (d *Designer) filteredBy(p, lf *mat.Dense) *mat.Dense {
+	var j, jp, jpj, lr, lrl mat.Dense
+	j.Mul(lf, d.c)
+	j.Apply(func(i, k int, v float64) float64 {
+		if i == k {
+			return 1 - v
+		}
+		return -v
+	}, &j)
+	jp.Mul(&j, p)
+	jpj.Mul(&jp, j.T())
+	lr.Mul(lf, d.r)
+	lrl.Mul(&lr, lf.T())
+	jpj.Add(&jpj, &lrl)
+	return &jpj
+}
+
+func (d *Designer) compareWithFloor(noise *Noise) {
+	noise.OverFloor = make([]float64, d.n)
+	var sum float64
+	var count int
+	floor := d.analysis.Floor
+	for i := range d.n {
+		noise.OverFloor[i] = math.NaN()
+		if floor == nil || !(floor.Std[i] > 0) {
+			continue
+		}
+		ratio := noise.Std[i] / floor.Std[i]
+		noise.OverFloor[i] = ratio
+		if d.keep == nil || d.keep[i] {
+			sum += ratio * ratio
+			count++
+		}
+	}
+	noise.OverFloorRMS = math.NaN()
+	if count > 0 {
+		noise.OverFloorRMS = math.Sqrt(sum / float64(count))
+	}
+}
+
+func (d *Designer) sensorNoise(noise *Noise, ls *mat.Dense) {
+	s := mat.NewDense(d.n, d.p, nil)
+	q := mat.NewDense(d.n, d.n, nil)
+	for j := range d.p {
+		col := ls.ColView(j)
+		q.Outer(1, col, col)
+		p, err := d.solveNoise(q)
+		if err != nil {
+			return
+		}
+		for i := range d.n {
+			s.Set(i, j, math.Sqrt(max(p.At(i, i), 0))*d.sx[i]/d.sy[j])
+		}
+	}
+	noise.SensorToState = s
+}
+
+// peakGains finds, per state, the largest gain over frequency from the sensors'
+// noise to its error (prediction form).
+func (d *Designer) peakGains(out *Design) {
+	var f, b mat.Dense
+	f.Mul(out.Gain, d.model.C)
+	f.Sub(d.model.A, &f)
+	b.Scale(-1, out.Gain)
+	peaks := make([]Peak, d.n)
+	for i := range peaks {
+		row := mat.NewDense(1, d.n, nil)
+		row.Set(0, i, 1)
+		v, w, err := frequency.PeakGain(frequency.System{A: raw(&f), B: raw(&b), C: raw(row), Period: d.model.Period})
+		if err != nil {
+			v, w = math.NaN(), math.NaN()
+			out.Warnings = append(out.Warnings, fmt.Sprintf("peak gain of %s: %v", d.stateName(i), err))
+		}
+		peaks[i] = Peak{Value: v, Frequency: w}
+	}
+	out.Noise.PeakGain = peaks
+}
+
+func (d *Designer) judgeTransient(out *Design, f, ls, lf *mat.Dense) {
+	out.Transient = Transient{Settle: math.NaN(), Peak: math.NaN()}
+	if !out.Stable {
+		return
+	}
+	if d.opt.Form == Current { // the error after each sample: (I − Lf C) A
+		var ca mat.Dense
+		ca.Mul(d.c, d.a)
+		f = mat.NewDense(d.n, d.n, nil)
+		f.Mul(lf, &ca)
+		f.Sub(d.a, f)
+	}
+	settle, peak, err := d.transient.Settle(raw(f), d.model.Period, d.keep)
+	if err != nil {
+		out.Warnings = append(out.Warnings, "the start-up transient could not be computed: "+err.Error())
+		return
+	}
+	out.Transient = Transient{Settle: settle, Peak: peak}
+}
+
+// float32Shift rounds A, L and C to float32 and returns the largest relative
+// movement of an eigenvalue of F; NaN where an eigenvalue iteration gives up.
+func (d *Designer) float32Shift(out *Design) float64 {
+	round := func(m *mat.Dense) *mat.Dense {
+		r := mat.DenseCopyOf(m)
+		r.Apply(func(_, _ int, v float64) float64 { return float64(float32(v)) }, r)
+		return r
+	}
+	var f mat.Dense
+	f.Mul(round(out.Gain), round(d.model.C))
+	f.Sub(round(d.model.A), &f)
+	if !finite(&f) {
+		return math.NaN()
+	}
+	var form schur.Form
+	f.Apply(func(i, j int, v float64) float64 { return v * d.sx[j] / d.sx[i] }, &f)
+	if form.Factor(raw(&f)) != nil {
+		return math.NaN()
+	}
+	_, worst := matchPoles(out.Reached, form.Eigenvalues())
+	return worst
+}
+
+// sensorSets judges F with the columns of lost sensors set to zero: every
+// subset for up to six sensors, else each sensor alone.
+func (d *Designer) sensorSets(ls *mat.Dense) []SensorSet {
+	var sets []SensorSet
+	var form schur.Form
+	judge := func(lost []int) {
+		l := mat.DenseCopyOf(ls)
+		for _, j := range lost {
+			for i := range d.n {
+				l.Set(i, j, 0)
+			}
+		}
+		if form.Factor(raw(d.errorMatrix(l))) == nil {
+			sets = append(sets, SensorSet{Lost: lost, Stable: stable(form.Eigenvalues(), d.model.Discrete())})
+		}
+	}
+	if d.p > 6 {
+		for j := range d.p {
+			judge([]int{j})
+		}
+		return sets
+	}
+	for bits := 1; bits < 1<<d.p; bits++ {
+		var lost []int
+		for j := range d.p {
+			if bits>>j&1 == 1 {
+				lost = append(lost, j)
+			}
+		}
+		judge(lost)
+	}
+	return sets
+}

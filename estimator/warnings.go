@@ -1,0 +1,122 @@
+package estimator
+
+import (
+	"fmt"
+	"math"
+	"math/cmplx"
+
+	"gonum.org/v1/gonum/mat"
+
+	"polewright/estimator/internal/schur"
+)
+
+func name(list []string, letter string, i int) string {
+	if i < len(list) {
+		return list[i]
+	}
+	return fmt.Sprintf("%s%d", letter, i+1)
+}
+
+func (d *Designer) stateName(i int) string { return name(d.model.StateNames, "x", i) }
+func (d *Designer) inputName(i int) string { return name(d.model.InputNames, "u", i) }
+
+// warn adds the sentences that a reader of the figures should know.
+func (d *Designer) warn(out *Design) {
+	say := func(format string, args ...any) {
+		out.Warnings = append(out.Warnings, fmt.Sprintf(format, args...))
+	}
+	m := d.model
+	if !out.Stable {
+		say("the estimator is unstable: its noise and its transient are not defined")
+	}
+	if d.analysis.Floor == nil {
+		say("%s", d.analysis.FloorReason)
+	}
+	if out.WorstError > 1e-6 {
+		say("the poles are reached only to a relative error of %.2g", out.WorstError)
+	}
+	if math.IsNaN(out.EigenvectorCondition) {
+		say("A − LC has fewer eigenvectors than states: their conditioning is not defined")
+	}
+	if m.Discrete() && out.GainCurrent == nil {
+		say("A is singular and no current-form gain Lf gives this L")
+	}
+	if zeroNoise(m.R) {
+		say("a sensor has no noise at all: the figures promise more than a real sensor gives")
+	}
+	if mat.Norm(m.Q, 1) == 0 {
+		say("there is no process noise: the best estimator would in time stop listening to the sensors")
+	}
+	if m.K != nil && m.B != nil {
+		d.warnLoop(say, out)
+	}
+	for _, s := range out.SensorSets {
+		if out.Stable && !s.Stable && len(s.Lost) == 1 && d.p > 1 {
+			say("with %s lost and its column of L set to zero the estimator is unstable", name(m.SensorNames, "y", s.Lost[0]))
+		}
+	}
+}
+
+func zeroNoise(r *mat.SymDense) bool {
+	for i := range r.SymmetricDim() {
+		if r.At(i, i) == 0 {
+			return true
+		}
+	}
+	return false
+}
+
+func (d *Designer) warnLoop(say func(string, ...any), out *Design) {
+	m := d.model
+	var bk, lc, f mat.Dense
+	bk.Mul(m.B, m.K)
+	lc.Mul(out.Gain, m.C)
+	f.Sub(m.A, &bk)
+	var form schur.Form
+	if form.Factor(raw(&f)) != nil {
+		return
+	}
+	control := slowest(d.ownModes(form.Eigenvalues()), m.Discrete())
+	estimate := slowest(out.Reached, m.Discrete())
+	if out.Stable && estimate < control {
+		say("the slowest pole of the estimator is slower than the controller's")
+	}
+	f.Sub(&f, &lc)
+	if form.Factor(raw(&f)) == nil && !stable(form.Eigenvalues(), m.Discrete()) {
+		say("A − BK − LC is unstable: the controller with its estimator is unstable on its own, with the plant cut off")
+	}
+}
+
+// ownModes leaves out the eigenvalues on the stability limit that unknown states bring.
+func (d *Designer) ownModes(list []complex128) []complex128 {
+	unknown := 0
+	for _, r := range d.model.Roles {
+		if r == UnknownState {
+			unknown++
+		}
+	}
+	if unknown == 0 {
+		return list
+	}
+	var own []complex128
+	for _, v := range list {
+		if strictlyStable(v, d.model.Discrete()) {
+			own = append(own, v)
+		}
+	}
+	return own
+}
+
+// slowest returns the rate at which the slowest of the poles dies out, per
+// second or per sample.
+func slowest(list []complex128, discrete bool) float64 {
+	rate := math.Inf(1)
+	for _, v := range list {
+		r := -real(v)
+		if discrete {
+			r = -math.Log(cmplx.Abs(v))
+		}
+		rate = min(rate, r)
+	}
+	return rate
+}

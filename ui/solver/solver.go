@@ -1,0 +1,205 @@
+// Package solver recomputes designs in the background. The newest request wins:
+// asking never waits, a pending request is replaced, and a run in progress stops
+// at its next look at the clock of its context.
+package solver
+
+import (
+	"context"
+	"fmt"
+	"sync"
+
+	"polewright/estimator"
+	"polewright/scenarios"
+	"polewright/ui/desk"
+	"polewright/ui/targets"
+)
+
+// Solver owns one worker and all its workspaces.
+type Solver struct {
+	notify func(desk.Answer)
+	wake   chan struct{}
+	done   chan struct{}
+	base   context.Context
+	stop   context.CancelFunc
+
+	mu      sync.Mutex
+	pending *desk.Request
+	cancel  context.CancelFunc // of the run in progress
+}
+
+// New starts a solver for one bench. notify is called from the worker, one answer
+// at a time; it may wait, but must not be reached from inside Ask or Close.
+func New(bench *desk.Bench, notify func(desk.Answer)) *Solver {
+	return start(newWork(bench).stages, notify)
+}
+
+// stages computes the answers of one request in order and hands each to send. It
+// may leave out what comes after ctx is cancelled.
+type stages func(ctx context.Context, r desk.Request, send func(desk.Answer))
+
+func start(work stages, notify func(desk.Answer)) *Solver {
+	s := &Solver{notify: notify, wake: make(chan struct{}, 1), done: make(chan struct{})}
+	s.base, s.stop = context.WithCancel(context.Background())
+	go s.loop(work)
+	return s
+}
+
+// Ask hands over a request and returns at once.
+func (s *Solver) Ask(r desk.Request) {
+	s.mu.Lock()
+	s.pending = &r
+	if s.cancel != nil {
+		s.cancel()
+	}
+	s.mu.Unlock()
+	select {
+	case s.wake <- struct{}{}:
+	default:
+	}
+}
+
+// Close cancels the work in progress and waits for the worker to end. No answer
+// is delivered after it returns.
+func (s *Solver) Close() {
+	s.stop()
+	<-s.done
+}
+
+func (s *Solver) loop(work stages) {
+	defer close(s.done)
+	for {
+		select {
+		case <-s.base.Done():
+			return
+		case <-s.wake:
+		}
+		for {
+			r, ctx, ok := s.take()
+			if !ok {
+				break
+			}
+			s.serve(ctx, r, work)
+		}
+	}
+}
+
+// take removes the pending request and gives it a context of its own.
+func (s *Solver) take() (desk.Request, context.Context, bool) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if s.cancel != nil {
+		s.cancel()
+		s.cancel = nil
+	}
+	if s.pending == nil || s.base.Err() != nil {
+		return desk.Request{}, nil, false
+	}
+	r := *s.pending
+	s.pending = nil
+	ctx, cancel := context.WithCancel(s.base)
+	s.cancel = cancel
+	return r, ctx, true
+}
+
+func (s *Solver) serve(ctx context.Context, r desk.Request, work stages) {
+	send := func(a desk.Answer) {
+		if s.base.Err() != nil {
+			return
+		}
+		a.Gen = r.Gen
+		s.notify(a)
+	}
+	defer func() {
+		if p := recover(); p != nil {
+			send(desk.Answer{Err: fmt.Errorf("this design broke the solver (%v): undo and go on; the work is kept", p)})
+		}
+	}()
+	work(ctx, r, send)
+}
+
+// work answers requests about one bench.
+type work struct {
+	bench     *desk.Bench
+	designers map[estimator.Options]*estimator.Designer
+	runner    *scenarios.Runner
+}
+
+func newWork(b *desk.Bench) *work {
+	return &work{bench: b, designers: map[estimator.Options]*estimator.Designer{}}
+}
+
+func (w *work) stages(ctx context.Context, r desk.Request, send func(desk.Answer)) {
+	a, err := w.judge(r)
+	if err != nil {
+		a.Err = err
+		send(a)
+		return
+	}
+	send(a)
+	if ctx.Err() != nil {
+		return
+	}
+	run, err := w.run(ctx, a.Design)
+	if ctx.Err() != nil {
+		return
+	}
+	a.Stage = desk.Traced
+	if err != nil {
+		a.Err = fmt.Errorf("the scenario's run: %w", err)
+	} else {
+		a.Run = run
+		a.Limits = w.bench.Scenario.Judge(a.Design, w.bench.Model, w.bench.Plant, run)
+	}
+	send(a)
+}
+
+// judge is the first stage: the design, its readings and the limits on these.
+func (w *work) judge(r desk.Request) (desk.Answer, error) {
+	var a desk.Answer
+	d, err := w.designer(estimator.Options{Form: r.Form, Method: r.Method})
+	if err != nil {
+		return a, err
+	}
+	a.Analysis, a.Fixed = d.Analysis(), d.Fixed()
+	a.Movable, a.Registers = d.Movable()
+	wanted := r.Poles
+	switch {
+	case r.Gain != nil || r.GainCurrent != nil:
+		a.Design, err = d.Judge(estimator.Given{L: r.Gain, Lf: r.GainCurrent, Wanted: wanted})
+	default:
+		if wanted == nil {
+			if wanted, err = targets.Start(w.bench.Model, d); err != nil {
+				return a, err
+			}
+		}
+		a.Design, err = d.Place(wanted, r.From)
+	}
+	if err != nil {
+		return a, err
+	}
+	a.Limits = w.bench.Scenario.Judge(a.Design, w.bench.Model, w.bench.Plant, nil)
+	return a, nil
+}
+
+func (w *work) designer(o estimator.Options) (*estimator.Designer, error) {
+	if d := w.designers[o]; d != nil {
+		return d, nil
+	}
+	d, err := estimator.NewDesigner(w.bench.Model, o)
+	if err != nil {
+		return nil, err
+	}
+	w.designers[o] = d
+	return d, nil
+}
+
+func (w *work) run(ctx context.Context, d *estimator.Design) (*scenarios.Run, error) {
+	if w.runner == nil {
+		r, err := scenarios.NewRunner(w.bench.Plant, w.bench.Model, w.bench.Scenario, w.bench.Truth)
+		if err != nil {
+			return nil, err
+		}
+		w.runner = r
+	}
+	return w.runner.Run(ctx, scenarios.Gain{L: d.Gain, Lf: d.GainCurrent, Form: d.Form})
+}
