@@ -1,0 +1,242 @@
+package placement
+
+import (
+	"math"
+
+	"gonum.org/v1/gonum/blas/blas64"
+	"gonum.org/v1/gonum/mat"
+)
+
+// chains writes a gain for poles that have no independent eigenvectors, such as
+// more copies of one pole than there are sensors (the Jordan chains of Klein &
+// Moore 1977). It allocates; such lists are rare.
+func chains(dst, a, c blas64.General, list []pole) error {
+	am, cm, l := new(mat.Dense), new(mat.Dense), new(mat.Dense)
+	am.SetRawMatrix(a)
+	cm.SetRawMatrix(c)
+	l.SetRawMatrix(dst)
+	k, err := assign(mat.DenseCopyOf(am.T()), mat.DenseCopyOf(cm.T()), list)
+	if err != nil {
+		return err
+	}
+	l.Copy(k.T())
+	return nil
+}
+
+// assign returns K that gives m − b K the listed eigenvalues. Where the rest has
+// independent eigenvectors it chooses them as Robust does; else it takes one pole
+// with one eigenvector off by an orthogonal change of coordinates and goes on with
+// the block that is left, which is controllable as well (Varga 1981).
+func assign(m, b *mat.Dense, list []pole) (*mat.Dense, error) {
+	b1, turn, err := compress(b)
+	if err != nil {
+		return nil, err
+	}
+	n, r := b1.Dims()
+	var k *mat.Dense
+	switch {
+	case r == 1:
+		k, err = assignSingle(m, b1, list)
+	default:
+		k = assignVectors(m, b1, list)
+		if k == nil {
+			k, err = deflate(m, b1, list)
+		}
+	}
+	if err != nil {
+		return nil, err
+	}
+	full := mat.NewDense(turn.RawMatrix().Rows, n, nil)
+	full.Mul(turn, k)
+	return full, nil
+}
+
+// compress returns b V with independent columns, and V.
+func compress(b *mat.Dense) (b1, v *mat.Dense, err error) {
+	var svd mat.SVD
+	if !svd.Factorize(b, mat.SVDThin) {
+		return nil, nil, ErrNotReached
+	}
+	s := svd.Values(nil)
+	rank := 0
+	for rank < len(s) && s[rank] > 1e-13*s[0] {
+		rank++
+	}
+	if rank == 0 {
+		return nil, nil, ErrUnobservable
+	}
+	var all mat.Dense
+	svd.VTo(&all)
+	rows, _ := all.Dims()
+	v = mat.DenseCopyOf(all.Slice(0, rows, 0, rank))
+	b1 = new(mat.Dense)
+	b1.Mul(b, v)
+	return b1, v, nil
+}
+
+func assignSingle(m, b *mat.Dense, list []pole) (*mat.Dense, error) {
+	n, _ := m.Dims()
+	var one single
+	one.reset(n)
+	for i := range n {
+		copy(one.m[i*n:i*n+n], m.RawRowView(i))
+		one.b[i] = b.At(i, 0)
+	}
+	if err := one.place(list); err != nil {
+		return nil, err
+	}
+	return mat.NewDense(1, n, one.k), nil
+}
+
+// assignVectors returns nil where no independent eigenvectors are found.
+func assignVectors(m, b *mat.Dense, list []pole) *mat.Dense {
+	n, p := b.Dims()
+	var r robust
+	if !r.load(mat.DenseCopyOf(m.T()).RawMatrix(), mat.DenseCopyOf(b.T()).RawMatrix()) {
+		return nil
+	}
+	if r.gather(list) > p {
+		return nil
+	}
+	if n == p {
+		r.normalVectors(nil)
+	} else if _, ok := r.choose(nil); !ok {
+		return nil
+	}
+	l := mat.NewDense(n, p, nil)
+	if !r.gain(l.RawMatrix()) {
+		return nil
+	}
+	return mat.DenseCopyOf(l.T())
+}
+
+// deflate places one pole of the list and leaves the others to assign.
+func deflate(m, b *mat.Dense, list []pole) (*mat.Dense, error) {
+	n, p := b.Dims()
+	i := hardest(list)
+	r := robust{}
+	if !r.load(mat.DenseCopyOf(m.T()).RawMatrix(), mat.DenseCopyOf(b.T()).RawMatrix()) {
+		return nil, ErrNotReached
+	}
+	q, part := r.cheapest(list[i])
+	if q == nil {
+		return nil, ErrUnobservable
+	}
+	w := list[i].width()
+	rest := append(append([]pole(nil), list[:i]...), list[i+1:]...)
+	k := mat.NewDense(p, n, nil)
+	k.Mul(part, q.Slice(0, n, 0, w).T())
+	if n == w {
+		return k, nil
+	}
+	q2 := q.Slice(0, n, w, n)
+	var t, m2, b2, more mat.Dense
+	t.Mul(m, q2)
+	m2.Mul(q2.T(), &t)
+	b2.Mul(q2.T(), b)
+	k2, err := assign(&m2, &b2, rest)
+	if err != nil {
+		return nil, err
+	}
+	more.Mul(k2, q2.T())
+	k.Add(k, &more)
+	return k, nil
+}
+
+// hardest returns the entry with most copies, and among equals the one closest to
+// another pole.
+func hardest(list []pole) int {
+	best, most, near := 0, 0, math.Inf(1)
+	for i, p := range list {
+		k, d := multiplicity(list, p.at), math.Inf(1)
+		for j, q := range list {
+			if j != i {
+				d = math.Min(d, abs(p.at-q.at))
+			}
+		}
+		if k > most || k == most && d < near {
+			best, most, near = i, k, d
+		}
+	}
+	return best
+}
+
+func abs(z complex128) float64 { return math.Hypot(real(z), imag(z)) }
+
+// cheapest looks through the null space of one pole, at each basis vector and at a
+// fixed number of mixtures, for the eigenvector that needs the smallest gain. It
+// returns an orthogonal matrix whose first columns span the eigenvector and the
+// gain on these columns; nil where every candidate is degenerate.
+func (r *robust) cheapest(at pole) (q, part *mat.Dense) {
+	n, p, w := r.n, r.p, at.width()
+	r.groups = []group{{pole: at, m: 1}}
+	r.nullSpaces()
+	basis := append([]complex128(nil), r.frames...)
+	seed := uint64(1)
+	best := math.Inf(1)
+	for try := range p + 40 {
+		copy(r.frames, basis)
+		if try < p {
+			copy(r.frames[:n], basis[try*n:try*n+n])
+		} else {
+			r.scatter(&seed)
+		}
+		x, gamma := mat.NewDense(n, w, nil), mat.NewDense(p, w, nil)
+		for i, v := range r.frames[:n] {
+			x.Set(i, 0, real(v))
+			if at.pair {
+				x.Set(i, 1, imag(v))
+			}
+		}
+		r.inputs(gamma, at)
+		var qr mat.QR
+		qr.Factorize(x)
+		if qr.Cond() > 1e8 {
+			continue
+		}
+		var kt mat.Dense
+		if qr.SolveTo(&kt, false, mat.NewDense(n, n, r.identity())) != nil {
+			continue
+		}
+		var full, onQ mat.Dense
+		full.Mul(gamma, &kt) // Γ X⁺, the gain that acts on the eigenvector alone
+		if size := mat.Norm(&full, 2); size < best {
+			best = size
+			q = new(mat.Dense)
+			qr.QTo(q)
+			onQ.Mul(&full, q.Slice(0, n, 0, w))
+			part = &onQ
+		}
+	}
+	return q, part
+}
+
+func (r *robust) identity() []float64 {
+	clear(r.closed)
+	for i := range r.n {
+		r.closed[i*r.n+i] = 1
+	}
+	return r.closed
+}
+
+// inputs writes Γ = Z⁻¹ U₀ᵀ (M − λI) x, real and imaginary part, for the first
+// vector of the frames.
+func (r *robust) inputs(gamma *mat.Dense, at pole) {
+	n, p := r.n, r.p
+	g := make([]complex128, p)
+	for k := range p {
+		for i, v := range r.frames[:n] {
+			g[k] += (complex(r.u0m[k*n+i], 0) - at.at*complex(r.q[i*n+k], 0)) * v
+		}
+	}
+	for k := p - 1; k >= 0; k-- {
+		for j := k + 1; j < p; j++ {
+			g[k] -= complex(r.b[k*p+j], 0) * g[j]
+		}
+		g[k] /= complex(r.b[k*p+k], 0)
+		gamma.Set(k, 0, real(g[k]))
+		if at.pair {
+			gamma.Set(k, 1, imag(g[k]))
+		}
+	}
+}
