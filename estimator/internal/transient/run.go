@@ -1,0 +1,241 @@
+package transient
+
+import "math"
+
+// run walks from time 0 until the error can never be above Level again.
+func (s *Solver) run() error {
+	n := s.n
+	clear(s.at)
+	for i := range n {
+		s.at[i*n+i] = 1
+	}
+	s.peak, s.last, s.fraction = 1, 0, 0
+	top := len(s.steps) - 1
+	var k int64
+	largest := math.Sqrt(float64(n)) // of the Frobenius norm, which is submultiplicative
+	j := 0
+	for count := 0; ; count++ {
+		size := frobenius(s.at)
+		if math.IsNaN(size) || math.IsInf(size, 0) {
+			return ErrUnstable
+		}
+		largest = max(largest, size)
+		if size*largest <= Level {
+			return nil
+		}
+		if count > most {
+			return s.jump(k, j, largest)
+		}
+		var bend float64
+		for {
+			s.advanceWhole(j)
+			if j == 0 {
+				break
+			}
+			bend = s.bend(s.at, s.mids[j], s.next, nil)
+			if bend <= smooth*max(size, frobenius(s.next)) {
+				break
+			}
+			j--
+		}
+		s.examine(j, k, s.at, s.next)
+		k += int64(1) << j
+		s.at, s.next = s.next, s.at
+		if j < top && (j == 0 || bend <= smooth/5*size) {
+			j++
+		}
+	}
+}
+
+// advanceWhole sets next = Φ(2ʲh)·at by way of its middle, kept at level j.
+func (s *Solver) advanceWhole(j int) {
+	if j == 0 {
+		s.advance(s.next, s.at, 0)
+		return
+	}
+	m := s.mid(j)
+	s.advance(m, s.at, j-1)
+	s.advance(s.next, m, j-1)
+}
+
+// bend is the Frobenius norm of the second difference a − 2 m + b, over the kept
+// rows and columns where they are given.
+func (s *Solver) bend(a, m, b []float64, keep []int) float64 {
+	var sum float64
+	if keep == nil {
+		for i, v := range m {
+			d := a[i] - 2*v + b[i]
+			sum += d * d
+		}
+		return math.Sqrt(sum)
+	}
+	for _, r := range keep {
+		for _, c := range keep {
+			i := r*s.n + c
+			d := a[i] - 2*m[i] + b[i]
+			sum += d * d
+		}
+	}
+	return math.Sqrt(sum)
+}
+
+// kept is the Frobenius norm of what is kept: an upper bound of its 2-norm.
+func (s *Solver) kept(x []float64) float64 {
+	if len(s.keep) == s.n {
+		return frobenius(x)
+	}
+	var sum float64
+	for _, r := range s.keep {
+		for _, c := range s.keep {
+			v := x[r*s.n+c]
+			sum += v * v
+		}
+	}
+	return math.Sqrt(sum)
+}
+
+func (s *Solver) norm(x []float64) float64 { return s.gram.norm(s.n, x, s.keep) }
+
+// examine looks at the interval of 2ʲ steps from k, with Φ = a at its start, b
+// at its end and, for j > 0, the middle at level j. It raises the peak and the
+// last time above Level.
+func (s *Solver) examine(j int, k int64, a, b []float64) {
+	end := k + int64(1)<<j
+	fa, fb := s.kept(a), s.kept(b)
+	if j == 0 {
+		s.examineUnit(k, a, b, fa, fb)
+		return
+	}
+	m := s.mids[j]
+	bend := s.bend(a, m, b, s.keep)
+	bound := max(fa, fb, s.kept(m)) + bend
+	if bound <= s.peak && (bound <= Level || s.surelyAbove(fb)) {
+		if bound > Level {
+			s.last, s.fraction = end, 0
+		}
+		return
+	}
+	na, nm, nb := s.norm(a), s.norm(m), s.norm(b)
+	s.peak = max(s.peak, na, nm, nb)
+	above := max(na, nm, nb) + bend/2 // four times what a parabola would reach
+	if nb > Level {
+		s.last, s.fraction = end, 0
+	}
+	forPeak := above > s.peak*(1+tolerance)
+	forLast := nb <= Level && above > Level
+	if !forPeak && !forLast {
+		return
+	}
+	// the later half first: what it finds makes the earlier one needless
+	s.examineHalf(j-1, k+int64(1)<<(j-1), m, b, forPeak)
+	s.examineHalf(j-1, k, a, m, forPeak)
+}
+
+func (s *Solver) examineHalf(j int, k int64, a, b []float64, forPeak bool) {
+	if !forPeak && s.last > k+int64(1)<<j {
+		return
+	}
+	last, fraction := s.last, s.fraction
+	if j > 0 {
+		s.advance(s.mid(j), a, j-1)
+	}
+	s.examine(j, k, a, b)
+	if last > s.last || last == s.last && fraction > s.fraction {
+		// an earlier interval never takes back a later one
+		s.last, s.fraction = last, fraction
+	}
+}
+
+// examineUnit is examine for one step.
+func (s *Solver) examineUnit(k int64, a, b []float64, fa, fb float64) {
+	if max(fa, fb) <= min(s.peak, Level) {
+		return
+	}
+	if fb <= s.peak && s.surelyAbove(fb) {
+		s.last, s.fraction = k+1, 0
+		return
+	}
+	nb := s.norm(b)
+	s.peak = max(s.peak, nb)
+	if nb > Level {
+		s.last, s.fraction = k+1, 0
+		return
+	}
+	if na := s.norm(a); na > Level {
+		s.last, s.fraction = k, 0
+		if !s.discrete {
+			s.fraction = 1
+			if nb > 0 && nb < Level {
+				s.fraction = math.Log(na/Level) / math.Log(na/nb)
+			}
+		}
+	}
+}
+
+// surelyAbove says whether a Frobenius norm leaves no doubt that the 2-norm is
+// above Level.
+func (s *Solver) surelyAbove(f float64) bool {
+	return f > Level*math.Sqrt(float64(len(s.keep)))
+}
+
+// jump finds the last time above Level by bisection on windows of 64 steps from
+// k on, where walking there would take too long.
+func (s *Solver) jump(k int64, j int, largest float64) error {
+	width := int64(64) << j
+	low, high := k, k
+	for span := width; ; span *= 2 {
+		if span > 1<<61 {
+			return ErrUnstable
+		}
+		high = k + span
+		s.moveTo(high)
+		if frobenius(s.at)*largest <= Level {
+			break
+		}
+	}
+	for high-low > width && float64(high-low) > tolerance/4*float64(high) {
+		middle := low + (high-low)/2
+		before := s.last
+		s.window(middle, j)
+		if s.last > before {
+			low = middle
+		} else {
+			high = middle
+		}
+	}
+	s.window(low, j)
+	return nil
+}
+
+// moveTo sets at = Φ(k·h).
+func (s *Solver) moveTo(k int64) {
+	n := s.n
+	clear(s.at)
+	for i := range n {
+		s.at[i*n+i] = 1
+	}
+	for top := len(s.steps) - 1; k > int64(1)<<top; k -= int64(1) << top {
+		if frobenius(s.at) == 0 {
+			return
+		}
+		s.advance(s.next, s.at, top)
+		s.at, s.next = s.next, s.at
+	}
+	for j := 0; k>>j != 0; j++ {
+		if k>>j&1 == 1 {
+			s.advance(s.next, s.at, j)
+			s.at, s.next = s.next, s.at
+		}
+	}
+}
+
+// window examines 64 intervals of level j from k on.
+func (s *Solver) window(k int64, j int) {
+	s.moveTo(k)
+	for range 64 {
+		s.advanceWhole(j)
+		s.examine(j, k, s.at, s.next)
+		k += int64(1) << j
+		s.at, s.next = s.next, s.at
+	}
+}
