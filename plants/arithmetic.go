@@ -14,7 +14,7 @@ import (
 // Bounds on one expression.
 const (
 	maxExpression = 200 // characters
-	maxNodes      = 100
+	maxNodes      = maxExpression
 )
 
 // arithmetic is a checked expression: numbers, parameters, + - * / ^ ** and

@@ -113,7 +113,7 @@ func bindStruct(tree any, v reflect.Value, path string) *Error {
 	for _, key := range sortedKeysOf(table) {
 		i, ok := fields[key]
 		if !ok {
-			return &Error{Where: where(path, shortened(key)), Wrong: "unknown key", Expected: "known here: " + strings.Join(known, ", ")}
+			return &Error{Where: where(path, shortened(key)), Wrong: "unknown key", Expected: "expected one of " + strings.Join(known, ", ")}
 		}
 		if bad := bind(table[key], v.Field(i), where(path, key)); bad != nil {
 			return bad

@@ -84,7 +84,7 @@ func (p *Plant) period(wish *float64) (float64, *Error) {
 	case t != 0 && !(t >= minPeriod && t <= maxPeriod):
 		return 0, &Error{Where: "period", Wrong: fmt.Sprintf("%g s", t), Expected: "expected 0 or " + periodExpected}
 	case !p.Continuous && t != p.Period:
-		return 0, &Error{Where: "period", Wrong: fmt.Sprintf("%g s for a discrete plant of %g s", t, p.Period), Expected: "a discrete plant keeps its period"}
+		return 0, &Error{Where: "period", Wrong: fmt.Sprintf("%g s for a discrete plant of %g s", t, p.Period), Expected: "expected no other period"}
 	}
 	return t, nil
 }

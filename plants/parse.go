@@ -120,8 +120,10 @@ func (r *reader) time() *Error {
 		r.plant.Continuous = true
 	case "discrete":
 		if model.Period == nil {
-			return &Error{Where: "model, period_s", Wrong: "missing", Expected: "a discrete plant needs its sample period in s"}
+			return &Error{Where: "model, period_s", Wrong: "missing", Expected: "expected the sample period of a discrete plant in s"}
 		}
+	case "":
+		return &Error{Where: "model, time", Wrong: "missing", Expected: `expected "continuous" or "discrete"`}
 	default:
 		return &Error{Where: "model, time", Wrong: quoted(model.Time), Expected: `expected "continuous" or "discrete"`}
 	}
