@@ -13,8 +13,8 @@ import (
 )
 
 // plant returns a random plant with p sensors and, as wanted poles, its own poles
-// made faster by 0.6.
-func plant(n, p int, seed uint64) (a, c blas64.General, poles []complex128) {
+// made faster.
+func plant(n, p int, seed uint64, faster float64) (a, c blas64.General, poles []complex128) {
 	rng := rand.New(rand.NewPCG(seed, 1))
 	a, c = zeros(n, n), zeros(p, n)
 	for i := range a.Data {
@@ -27,7 +27,7 @@ func plant(n, p int, seed uint64) (a, c blas64.General, poles []complex128) {
 	eig.Factorize(wrap(a), mat.EigenNone)
 	poles = eig.Values(nil)
 	for i, v := range poles {
-		poles[i] = complex(-math.Abs(real(v))-0.6, imag(v))
+		poles[i] = complex(-math.Abs(real(v))-faster, imag(v))
 	}
 	return a, c, poles
 }
@@ -37,7 +37,7 @@ var sizes = []int{4, 6, 10, 20}
 func BenchmarkSingle(b *testing.B) {
 	for _, n := range sizes {
 		b.Run(fmt.Sprint("n=", n), func(b *testing.B) {
-			a, c, poles := plant(n, 1, 3)
+			a, c, poles := plant(n, 1, 3, 0.1)
 			l := zeros(n, 1)
 			var s placement.Solver
 			b.ReportAllocs()
@@ -53,7 +53,7 @@ func BenchmarkSingle(b *testing.B) {
 func BenchmarkRobustCold(b *testing.B) {
 	for _, n := range sizes {
 		b.Run(fmt.Sprint("n=", n), func(b *testing.B) {
-			a, c, poles := plant(n, 2, 3)
+			a, c, poles := plant(n, 2, 3, 0.6)
 			l := zeros(n, 2)
 			var s placement.Solver
 			b.ReportAllocs()
@@ -70,7 +70,7 @@ func BenchmarkRobustCold(b *testing.B) {
 func BenchmarkRobustWarm(b *testing.B) {
 	for _, n := range sizes {
 		b.Run(fmt.Sprint("n=", n), func(b *testing.B) {
-			a, c, poles := plant(n, 2, 3)
+			a, c, poles := plant(n, 2, 3, 0.6)
 			l := zeros(n, 2)
 			var s placement.Solver
 			var w placement.Warm

@@ -12,6 +12,7 @@ import (
 // coordinates and the inverse Hessian can be carried over.
 type descent struct {
 	hessian         []float64 // inverse
+	learnt          bool      // hessian belongs to the present frames
 	g, gNext, d, hy []float64
 	saved           []complex128 // the frames where the step starts
 }
@@ -33,8 +34,9 @@ type stopping struct {
 }
 
 // descend minimises the measure from the present frames. It returns the last
-// value, the steps taken and whether the gradient rule ended it.
-func (r *robust) descend(rule stopping) (f float64, steps int, done bool) {
+// value, the steps taken and whether it came to rest. carried tells that the inverse
+// Hessian of an earlier descent is in place.
+func (r *robust) descend(rule stopping, carried bool) (f float64, steps int, done bool) {
 	m := &r.descent
 	m.reset(r.free, len(r.frames))
 	f = r.measure(rule.squarings)
@@ -42,7 +44,8 @@ func (r *robust) descend(rule stopping) (f float64, steps int, done bool) {
 		return f, 0, r.free == 0
 	}
 	r.pullBack(m.g)
-	fresh := true
+	fresh := !carried
+	m.learnt = carried
 	for steps < rule.steps {
 		if largest(m.g) <= rule.gradient {
 			return f, steps, true
@@ -59,9 +62,9 @@ func (r *robust) descend(rule stopping) (f float64, steps int, done bool) {
 		steps++
 		drop := f - next
 		m.update(t, fresh)
-		f, fresh = next, false
+		f, fresh, m.learnt = next, false, true
 		m.g, m.gNext = m.gNext, m.g
-		if drop <= 1e-14*math.Max(1, math.Abs(f)) {
+		if drop <= 1e-11*math.Max(1, math.Abs(f)) {
 			return f, steps, true
 		}
 	}

@@ -32,7 +32,7 @@ func (s *Solver) normal(dst, a, c blas64.General, warm *Warm) (Info, error) {
 // order of real parts.
 func (r *robust) normalVectors(warm *Warm) {
 	r.nullSpaces()
-	if warm.project(r) && r.orthogonal() {
+	if ok, _ := warm.project(r); ok && r.orthogonal() {
 		return
 	}
 	n := r.n

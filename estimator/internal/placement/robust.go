@@ -178,17 +178,27 @@ const worstCondition = 1e10
 func (r *robust) choose(warm *Warm) (Info, bool) {
 	r.nullSpaces()
 	r.start = grow(r.start, len(r.frames))
-	if warm != nil && warm.project(r) {
-		f, steps, done := r.descend(stopping{squarings: powerFine, steps: 60, gradient: 1e-7})
+	if ok, carried := warm.project(r); ok {
+		f, steps, done := r.descend(nearby, carried)
 		if f < math.Log(worstCondition) {
 			return Info{Condition: r.condition(), Iterations: steps, Converged: done}, true
 		}
+	}
+	if !warm.Empty() {
 		r.nullSpaces()
 	}
 	return r.cold()
 }
 
 const starts = 4
+
+// How far the descents go: from a start to the right valley, down that valley, and
+// from an earlier choice.
+var (
+	rough  = stopping{squarings: powerRough, steps: 30, gradient: 1e-2}
+	fine   = stopping{squarings: powerFine, steps: 200, gradient: 1e-6}
+	nearby = stopping{squarings: powerFine, steps: 60, gradient: 1e-6}
+)
 
 // cold descends from several starts on the rough measure, then polishes the best.
 func (r *robust) cold() (Info, bool) {
@@ -199,7 +209,7 @@ func (r *robust) cold() (Info, bool) {
 	for range starts {
 		copy(r.frames, basis)
 		r.scatter(&seed)
-		_, steps, _ := r.descend(stopping{squarings: powerRough, steps: 30, gradient: 1e-2})
+		_, steps, _ := r.descend(rough, false)
 		info.Iterations += steps
 		if f := r.measure(powerFine); f < best {
 			best = f
@@ -213,7 +223,7 @@ func (r *robust) cold() (Info, bool) {
 		return info, false
 	}
 	copy(r.frames, r.start)
-	f, steps, done := r.descend(stopping{squarings: powerFine, steps: 200, gradient: 1e-7})
+	f, steps, done := r.descend(fine, false)
 	info.Iterations += steps
 	info.Converged = done
 	info.Condition = r.condition()

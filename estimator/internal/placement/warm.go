@@ -6,13 +6,14 @@ import (
 	"slices"
 )
 
-// Warm carries the eigenvectors that Robust chose, as the start of the next call.
-// The zero value is empty. It belongs to the caller; a call to Robust overwrites
-// it and keeps no reference, so a Clone may be stored with a finished design.
+// Warm carries the eigenvectors that the Solver chose, as the start of the next
+// call. The zero value is empty. It belongs to the caller; a call overwrites it and
+// keeps no reference, so a Clone may be stored with a finished design.
 type Warm struct {
 	n, p    int
-	poles   []pole
-	vectors []complex128 // one of length n per pole
+	groups  []group // their frames point into frames
+	frames  []complex128
+	hessian []float64 // of the descent that ended there, or empty
 }
 
 // Clone returns an independent copy; of nil, nil.
@@ -20,46 +21,108 @@ func (w *Warm) Clone() *Warm {
 	if w == nil {
 		return nil
 	}
-	return &Warm{n: w.n, p: w.p, poles: slices.Clone(w.poles), vectors: slices.Clone(w.vectors)}
+	c := &Warm{n: w.n, p: w.p}
+	c.store(w.groups, w.frames, w.hessian)
+	return c
 }
 
 // Empty tells whether w holds no choice yet.
-func (w *Warm) Empty() bool { return w == nil || len(w.poles) == 0 }
+func (w *Warm) Empty() bool { return w == nil || len(w.groups) == 0 }
 
-func (w *Warm) clear() { w.poles, w.vectors = w.poles[:0], w.vectors[:0] }
+func (w *Warm) clear() { w.groups = w.groups[:0] }
+
+func (w *Warm) store(groups []group, frames []complex128, hessian []float64) {
+	w.groups = append(w.groups[:0], groups...)
+	w.frames = append(w.frames[:0], frames...)
+	w.hessian = append(w.hessian[:0], hessian...)
+	size := w.n * w.p
+	for i := range w.groups {
+		w.groups[i].t = w.frames[i*size : (i+1)*size : (i+1)*size]
+	}
+}
 
 // keep stores the eigenvectors of r.
 func (w *Warm) keep(r *robust) {
 	w.n, w.p = r.n, r.p
-	w.clear()
-	for i := range r.groups {
-		g := &r.groups[i]
-		for j := range g.m {
-			w.poles = append(w.poles, g.pole)
-			w.vectors = append(w.vectors, g.t[j*r.n:j*r.n+r.n]...)
-		}
+	var hessian []float64
+	if r.n > r.p && r.descent.learnt {
+		hessian = r.descent.hessian
 	}
+	w.store(r.groups, r.frames, hessian)
 }
 
 // project turns the frames of r, which hold bases of the null spaces, so that the
 // eigenvectors are as near as possible to the stored ones of the nearest poles. It
-// reports false where nothing fits.
-func (w *Warm) project(r *robust) bool {
+// reports false where nothing fits. carried tells that the stored inverse Hessian
+// fits as well and has been handed to the descent.
+func (w *Warm) project(r *robust) (ok, carried bool) {
 	if w.Empty() || w.n != r.n || w.p != r.p {
+		return false, false
+	}
+	r.start = grow(r.start, len(r.frames))
+	copy(r.start, r.frames)
+	if w.sameOrder(r.groups) {
+		if !w.projectFrames(r) {
+			return false, false
+		}
+		if len(w.hessian) == r.free*r.free && r.free > 0 {
+			r.descent.reset(r.free, len(r.frames))
+			copy(r.descent.hessian, w.hessian)
+			return true, true
+		}
+		return true, false
+	}
+	return w.projectVectors(r), false
+}
+
+// sameOrder tells whether every group has a counterpart of the same kind at the
+// same place in the stored list, none closer.
+func (w *Warm) sameOrder(groups []group) bool {
+	if len(groups) != len(w.groups) {
 		return false
 	}
-	n, p := r.n, r.p
-	used := make([]bool, len(w.poles))
-	for i := range r.groups {
-		g := &r.groups[i]
-		basis := slices.Clone(g.t)
-		for j := range g.m {
-			k := w.nearest(g.pole, used)
-			if k < 0 {
+	for i, g := range groups {
+		if o := w.groups[i]; o.pair != g.pair || o.m != g.m {
+			return false
+		}
+		own := cmplx.Abs(w.groups[i].at - g.at)
+		for _, o := range w.groups {
+			if o.pair == g.pair && cmplx.Abs(o.at-g.at) < own {
 				return false
 			}
-			used[k] = true
-			if !projectOnto(g.t[j*n:j*n+n], basis, w.vectors[k*n:k*n+n]) {
+		}
+	}
+	return true
+}
+
+// projectFrames projects whole frames, which keeps the coordinates of the descent.
+func (w *Warm) projectFrames(r *robust) bool {
+	n, size := r.n, r.n*r.p
+	for i := range r.groups {
+		t, basis, old := r.groups[i].t, r.start[i*size:(i+1)*size], w.groups[i].t
+		for j := 0; j < size; j += n {
+			if !projectOnto(t[j:j+n], basis, old[j:j+n]) {
+				return false
+			}
+		}
+		if !orthonormalise(t, n) {
+			return false
+		}
+	}
+	return true
+}
+
+// projectVectors serves lists whose structure has changed: poles that have met,
+// parted, or changed their order.
+func (w *Warm) projectVectors(r *robust) bool {
+	n, p, size := r.n, r.p, r.n*r.p
+	stock := w.stock()
+	for i := range r.groups {
+		g := &r.groups[i]
+		basis := r.start[i*size : (i+1)*size]
+		for j := range g.m {
+			x := stock.take(g.pole)
+			if x == nil || !projectOnto(g.t[j*n:j*n+n], basis, x) {
 				return false
 			}
 		}
@@ -71,11 +134,63 @@ func (w *Warm) project(r *robust) bool {
 	return true
 }
 
-// nearest finds the unused stored pole of the same kind that is closest.
-func (w *Warm) nearest(to pole, used []bool) int {
+// stock is a list of eigenvectors to choose from.
+type stock []eigenvector
+
+type eigenvector struct {
+	pole
+	x    []complex128
+	used bool
+}
+
+func (w *Warm) stock() *stock {
+	var s stock
+	for _, g := range w.groups {
+		for j := range g.m {
+			s = append(s, eigenvector{pole: g.pole, x: g.t[j*w.n : j*w.n+w.n]})
+		}
+	}
+	return &s
+}
+
+// take returns the unused eigenvector of the nearest pole of the same kind. Where
+// there is none, a pair gives its real and imaginary part to two real poles, or two
+// real poles join to a pair.
+func (s *stock) take(to pole) []complex128 {
+	if i := s.nearest(to.at, to.pair); i >= 0 {
+		(*s)[i].used = true
+		return (*s)[i].x
+	}
+	i := s.nearest(to.at, !to.pair)
+	if i < 0 {
+		return nil
+	}
+	(*s)[i].used = true
+	x := (*s)[i].x
+	if to.pair {
+		j := s.nearest(to.at, false)
+		if j < 0 {
+			return nil
+		}
+		(*s)[j].used = true
+		z := slices.Clone(x)
+		for k, v := range (*s)[j].x {
+			z[k] = (z[k] + complex(0, real(v))) / complex(math.Sqrt2, 0)
+		}
+		return z
+	}
+	re, im := make([]complex128, len(x)), make([]complex128, len(x))
+	for k, v := range x {
+		re[k], im[k] = complex(math.Sqrt2*real(v), 0), complex(math.Sqrt2*imag(v), 0)
+	}
+	*s = append(*s, eigenvector{pole: pole{at: complex(real((*s)[i].at), 0)}, x: im})
+	return re
+}
+
+func (s *stock) nearest(at complex128, pair bool) int {
 	best := -1
-	for i, q := range w.poles {
-		if !used[i] && q.pair == to.pair && (best < 0 || cmplx.Abs(q.at-to.at) < cmplx.Abs(w.poles[best].at-to.at)) {
+	for i, e := range *s {
+		if !e.used && e.pair == pair && (best < 0 || cmplx.Abs(e.at-at) < cmplx.Abs((*s)[best].at-at)) {
 			best = i
 		}
 	}
@@ -106,31 +221,25 @@ func projectOnto(dst, basis, x []complex128) bool {
 // largest remainder first.
 func complete(t, basis []complex128, m, n, p int) {
 	rest := slices.Clone(basis)
-	for j := m; j < p; j++ {
-		if j == m {
+	for j := range p {
+		if j >= m {
+			best, at := -1.0, 0
 			for i := 0; i < len(rest); i += n {
-				for k := range m {
-					reflectComplex(rest[i:i+n], t[k*n:k*n+n])
+				sum := 0.0
+				for _, v := range rest[i : i+n] {
+					sum += real(v)*real(v) + imag(v)*imag(v)
+				}
+				if sum > best {
+					best, at = sum, i
 				}
 			}
-		}
-		best, at := -1.0, 0
-		for i := 0; i < len(rest); i += n {
-			sum := 0.0
-			for _, v := range rest[i : i+n] {
-				sum += real(v)*real(v) + imag(v)*imag(v)
-			}
-			if sum > best {
-				best, at = sum, i
+			s := complex(1/math.Sqrt(best), 0)
+			for k, v := range rest[at : at+n] {
+				t[j*n+k] = s * v
 			}
 		}
-		x := t[j*n : j*n+n]
-		s := complex(1/math.Sqrt(best), 0)
-		for k, v := range rest[at : at+n] {
-			x[k] = s * v
-		}
 		for i := 0; i < len(rest); i += n {
-			reflectComplex(rest[i:i+n], x)
+			reflectComplex(rest[i:i+n], t[j*n:j*n+n])
 		}
 	}
 }
