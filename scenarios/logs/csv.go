@@ -17,7 +17,7 @@ var (
 )
 
 // splitter cuts a stream into the records and fields of RFC 4180. Lines may end
-// in LF or CRLF; empty lines are passed over. It holds one record at a time.
+// in LF or CRLF; empty lines and a byte order mark are passed over. It holds one record at a time.
 type splitter struct {
 	src    io.Reader
 	buf    []byte
@@ -79,6 +79,9 @@ func (s *splitter) next() ([][]byte, error) {
 		record, err := s.record()
 		if err != nil {
 			return nil, err
+		}
+		if s.line == 1 {
+			record = bytes.TrimPrefix(record, []byte("\xef\xbb\xbf"))
 		}
 		if len(record) == 0 {
 			continue

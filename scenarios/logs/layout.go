@@ -2,6 +2,8 @@ package logs
 
 import (
 	"fmt"
+	"maps"
+	"slices"
 	"strings"
 
 	"gonum.org/v1/gonum/mat"
@@ -163,7 +165,7 @@ func (l *Layout) columns(header [][]byte, names map[string]string) ([]column, *p
 		}
 		list[i] = c
 	}
-	for name := range names {
+	for _, name := range slices.Sorted(maps.Keys(names)) {
 		if !mapped[name] {
 			return nil, &plants.Error{Where: "header", Wrong: "no column " + quote(name) + " to rename", Expected: "the log has " + enumerate(header)}
 		}
