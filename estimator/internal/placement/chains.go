@@ -110,7 +110,9 @@ func assignVectors(m, b *mat.Dense, list []pole) *mat.Dense {
 	return mat.DenseCopyOf(l.T())
 }
 
-// deflate places one pole of the list and leaves the others to assign.
+// deflate places one pole of the list and leaves the others to assign. More than p
+// copies of a pole take the whole null space at once, which leaves the shortest
+// chains.
 func deflate(m, b *mat.Dense, list []pole) (*mat.Dense, error) {
 	n, p := b.Dims()
 	i := hardest(list)
@@ -118,12 +120,19 @@ func deflate(m, b *mat.Dense, list []pole) (*mat.Dense, error) {
 	if !r.load(mat.DenseCopyOf(m.T()).RawMatrix(), mat.DenseCopyOf(b.T()).RawMatrix()) {
 		return nil, ErrNotReached
 	}
-	q, part := r.cheapest(list[i])
+	copies := 1
+	var q, part *mat.Dense
+	if multiplicity(list, list[i].at) > p {
+		copies = p
+		q, part = r.everything(list[i])
+	} else {
+		q, part = r.cheapest(list[i])
+	}
 	if q == nil {
 		return nil, ErrUnobservable
 	}
-	w := list[i].width()
-	rest := append(append([]pole(nil), list[:i]...), list[i+1:]...)
+	w := copies * list[i].width()
+	rest := without(list, list[i].at, copies)
 	k := mat.NewDense(p, n, nil)
 	k.Mul(part, q.Slice(0, n, 0, w).T())
 	if n == w {
@@ -141,6 +150,18 @@ func deflate(m, b *mat.Dense, list []pole) (*mat.Dense, error) {
 	more.Mul(k2, q2.T())
 	k.Add(k, &more)
 	return k, nil
+}
+
+func without(list []pole, at complex128, copies int) []pole {
+	var rest []pole
+	for _, q := range list {
+		if q.at == at && copies > 0 {
+			copies--
+			continue
+		}
+		rest = append(rest, q)
+	}
+	return rest
 }
 
 // hardest returns the entry with most copies, and among equals the one closest to
@@ -168,7 +189,7 @@ func abs(z complex128) float64 { return math.Hypot(real(z), imag(z)) }
 // returns an orthogonal matrix whose first columns span the eigenvector and the
 // gain on these columns; nil where every candidate is degenerate.
 func (r *robust) cheapest(at pole) (q, part *mat.Dense) {
-	n, p, w := r.n, r.p, at.width()
+	n, p := r.n, r.p
 	r.groups = []group{{pole: at, m: 1}}
 	r.nullSpaces()
 	basis := append([]complex128(nil), r.frames...)
@@ -181,62 +202,72 @@ func (r *robust) cheapest(at pole) (q, part *mat.Dense) {
 		} else {
 			r.scatter(&seed)
 		}
-		x, gamma := mat.NewDense(n, w, nil), mat.NewDense(p, w, nil)
-		for i, v := range r.frames[:n] {
-			x.Set(i, 0, real(v))
-			if at.pair {
-				x.Set(i, 1, imag(v))
+		if qt, pt := r.fix(at, 1); qt != nil {
+			if size := mat.Norm(pt, 2); size < best {
+				best, q, part = size, qt, pt
 			}
-		}
-		r.inputs(gamma, at)
-		var qr mat.QR
-		qr.Factorize(x)
-		if qr.Cond() > 1e8 {
-			continue
-		}
-		var kt mat.Dense
-		if qr.SolveTo(&kt, false, mat.NewDense(n, n, r.identity())) != nil {
-			continue
-		}
-		var full, onQ mat.Dense
-		full.Mul(gamma, &kt) // Γ X⁺, the gain that acts on the eigenvector alone
-		if size := mat.Norm(&full, 2); size < best {
-			best = size
-			q = new(mat.Dense)
-			qr.QTo(q)
-			onQ.Mul(&full, q.Slice(0, n, 0, w))
-			part = &onQ
 		}
 	}
 	return q, part
 }
 
-func (r *robust) identity() []float64 {
-	clear(r.closed)
-	for i := range r.n {
-		r.closed[i*r.n+i] = 1
-	}
-	return r.closed
+// everything is cheapest for p copies of the pole, which leaves no choice.
+func (r *robust) everything(at pole) (q, part *mat.Dense) {
+	r.groups = []group{{pole: at, m: 1}}
+	r.nullSpaces()
+	return r.fix(at, r.p)
 }
 
-// inputs writes Γ = Z⁻¹ U₀ᵀ (M − λI) x, real and imaginary part, for the first
-// vector of the frames.
-func (r *robust) inputs(gamma *mat.Dense, at pole) {
+// fix returns an orthogonal matrix whose first columns span the first m vectors of
+// the frames and the gain on these columns that makes them eigenvectors; nil where
+// they are dependent.
+func (r *robust) fix(at pole, m int) (q, part *mat.Dense) {
+	n, w := r.n, at.width()
+	x, gamma := mat.NewDense(n, m*w, nil), mat.NewDense(r.p, m*w, nil)
+	for j := range m {
+		for i, v := range r.frames[j*n : j*n+n] {
+			x.Set(i, j*w, real(v))
+			if at.pair {
+				x.Set(i, j*w+1, imag(v))
+			}
+		}
+		r.inputs(gamma, j, at)
+	}
+	var qr mat.QR
+	qr.Factorize(x)
+	if !(qr.Cond() < 1e8) {
+		return nil, nil
+	}
+	var upper mat.Dense
+	qr.RTo(&upper)
+	q, part = new(mat.Dense), new(mat.Dense)
+	qr.QTo(q)
+	var t mat.Dense // Γ R⁻¹
+	if t.Solve(upper.Slice(0, m*w, 0, m*w).T(), gamma.T()) != nil {
+		return nil, nil
+	}
+	part.CloneFrom(t.T())
+	return q, part
+}
+
+// inputs writes Γ = Z⁻¹ U₀ᵀ (M − λI) x, real and imaginary part, for vector j of the
+// frames.
+func (r *robust) inputs(gamma *mat.Dense, j int, at pole) {
 	n, p := r.n, r.p
 	g := make([]complex128, p)
 	for k := range p {
-		for i, v := range r.frames[:n] {
+		for i, v := range r.frames[j*n : j*n+n] {
 			g[k] += (complex(r.u0m[k*n+i], 0) - at.at*complex(r.q[i*n+k], 0)) * v
 		}
 	}
 	for k := p - 1; k >= 0; k-- {
-		for j := k + 1; j < p; j++ {
-			g[k] -= complex(r.b[k*p+j], 0) * g[j]
+		for l := k + 1; l < p; l++ {
+			g[k] -= complex(r.b[k*p+l], 0) * g[l]
 		}
 		g[k] /= complex(r.b[k*p+k], 0)
-		gamma.Set(k, 0, real(g[k]))
+		gamma.Set(k, j*at.width(), real(g[k]))
 		if at.pair {
-			gamma.Set(k, 1, imag(g[k]))
+			gamma.Set(k, j*at.width()+1, imag(g[k]))
 		}
 	}
 }

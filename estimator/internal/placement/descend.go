@@ -31,6 +31,7 @@ type stopping struct {
 	squarings int     // of the measure
 	steps     int     // at most
 	gradient  float64 // largest entry where it ends
+	travel    float64 // longest way in radians, all steps together; 0 means no limit
 }
 
 // descend minimises the measure from the present frames. It returns the last
@@ -46,12 +47,19 @@ func (r *robust) descend(rule stopping, carried bool) (f float64, steps int, don
 	r.pullBack(m.g)
 	fresh := !carried
 	m.learnt = carried
+	left := rule.travel
 	for steps < rule.steps {
 		if largest(m.g) <= rule.gradient {
 			return f, steps, true
 		}
-		slope := m.direction(fresh)
-		t, next, ok := r.search(rule.squarings, f, slope)
+		slope, reach := m.direction(fresh), math.Inf(1)
+		if rule.travel > 0 {
+			if left < 1e-3*rule.travel {
+				return f, steps, false
+			}
+			reach = left / norm2(m.d)
+		}
+		t, next, ok := r.search(rule.squarings, f, slope, reach)
 		if !ok {
 			if fresh {
 				return f, steps, false
@@ -62,6 +70,7 @@ func (r *robust) descend(rule stopping, carried bool) (f float64, steps int, don
 		steps++
 		drop := f - next
 		m.update(t, fresh)
+		left -= norm2(m.d) // which update has scaled to the step taken
 		f, fresh, m.learnt = next, false, true
 		m.g, m.gNext = m.gNext, m.g
 		if drop <= 1e-11*math.Max(1, math.Abs(f)) {
@@ -103,12 +112,13 @@ func (m *descent) direction(fresh bool) float64 {
 
 // search finds a step along d that meets the weak Wolfe conditions by bisection
 // (Lewis & Overton 2013, which also serves where the measure has kinks). The
-// frames and gNext are left at the accepted point, or where the step started.
-func (r *robust) search(squarings int, f, slope float64) (t, next float64, ok bool) {
+// frames and gNext are left at the accepted point, or where the step started. No
+// step is longer than reach.
+func (r *robust) search(squarings int, f, slope, reach float64) (t, next float64, ok bool) {
 	m := &r.descent
 	copy(m.saved, r.frames)
 	low, high := 0.0, math.Inf(1)
-	t = 1
+	t = min(1, reach)
 	for range 25 {
 		r.move(m.saved, m.d, t)
 		next = r.measure(squarings)
@@ -120,13 +130,13 @@ func (r *robust) search(squarings int, f, slope float64) (t, next float64, ok bo
 			for i, v := range m.gNext {
 				along += v * m.d[i]
 			}
-			if along >= 0.9*slope || t > 4 {
+			if along >= 0.9*slope || t > 4 || t >= reach {
 				return t, next, true
 			}
 			low = t
 		}
 		if math.IsInf(high, 1) {
-			t = 2 * low
+			t = min(2*low, reach)
 		} else {
 			t = (low + high) / 2
 		}

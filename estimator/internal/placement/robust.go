@@ -111,8 +111,8 @@ func axpy(dst []float64, t float64, x []float64) {
 // their 2-norm condition number (after Byers & Nash 1989).
 //
 // With warm holding an earlier choice the descent starts there and stays near, so
-// that the gain follows small movements of the poles; an empty warm or nil means a
-// cold start. The call leaves its own choice in warm.
+// that the gain follows small movements of the poles (Converged is false while it
+// lags behind its optimum); an empty warm or nil means a cold start. The call leaves its own choice in warm.
 //
 // Errors: ErrShape, ErrNotFinite, ErrPairs, ErrSensors, ErrUnobservable,
 // ErrNotReached. After an error the contents of dst and warm are unspecified.
@@ -125,6 +125,9 @@ func (s *Solver) Robust(dst, a, c blas64.General, poles []complex128, warm *Warm
 	}
 	r := &s.robust
 	if !r.load(a, c) {
+		if c.Rows == 1 {
+			return Info{}, ErrUnobservable
+		}
 		return Info{}, ErrSensors
 	}
 	most := r.gather(s.list)
@@ -170,6 +173,14 @@ func (s *Solver) unique(dst, a, c blas64.General, most int, warm *Warm) (Info, e
 	return info, s.singleGain(dst, a, c)
 }
 
+// A warm descent may turn the eigenvectors by restless + follow times the relative
+// movement of the poles, in radians. So the gain stays continuous where the valley
+// that it follows ends: the fall into the next one is spread over several calls.
+const (
+	restless = 1e-3
+	follow   = 4.0
+)
+
 // worstCondition is where eigenvectors count as dependent.
 const worstCondition = 1e10
 
@@ -178,8 +189,11 @@ const worstCondition = 1e10
 func (r *robust) choose(warm *Warm) (Info, bool) {
 	r.nullSpaces()
 	r.start = grow(r.start, len(r.frames))
+	moved := warm.moved(r.groups)
 	if ok, carried := warm.project(r); ok {
-		f, steps, done := r.descend(nearby, carried)
+		rule := nearby
+		rule.travel = restless + follow*moved
+		f, steps, done := r.descend(rule, carried)
 		if f < math.Log(worstCondition) {
 			return Info{Condition: r.condition(), Iterations: steps, Converged: done}, true
 		}

@@ -75,6 +75,30 @@ func (w *Warm) project(r *robust) (ok, carried bool) {
 	return w.projectVectors(r), false
 }
 
+// moved returns how far the poles have gone from the stored ones: the largest
+// distance to the nearest, relative to the pole, for a slow one to a tenth of the
+// fastest.
+func (w *Warm) moved(groups []group) float64 {
+	if w.Empty() {
+		return 0
+	}
+	size := 0.0
+	for _, g := range groups {
+		size = math.Max(size, cmplx.Abs(g.at))
+	}
+	far := 0.0
+	for _, g := range groups {
+		near := math.Inf(1)
+		for _, o := range w.groups {
+			near = math.Min(near, cmplx.Abs(o.at-g.at))
+		}
+		if near > 0 {
+			far = math.Max(far, near/math.Max(cmplx.Abs(g.at), 0.1*size))
+		}
+	}
+	return far
+}
+
 // sameOrder tells whether every group has a counterpart of the same kind at the
 // same place in the stored list, none closer.
 func (w *Warm) sameOrder(groups []group) bool {

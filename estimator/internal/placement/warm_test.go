@@ -1,0 +1,151 @@
+package placement_test
+
+import (
+	"math"
+	"testing"
+
+	"gonum.org/v1/gonum/blas/blas64"
+	"gonum.org/v1/gonum/mat"
+
+	"polewright/estimator/internal/placement"
+)
+
+func distance(x, y blas64.General) float64 {
+	var d mat.Dense
+	d.Sub(wrap(x), wrap(y))
+	return mat.Norm(&d, 2)
+}
+
+func copyOf(g blas64.General) blas64.General {
+	return mat.DenseCopyOf(wrap(g)).RawMatrix()
+}
+
+// Dragging a pole in 200 small steps moves the gain in small steps: none may exceed
+// a fixed multiple of the step's size relative to the poles.
+func TestDragIsContinuous(t *testing.T) {
+	var s placement.Solver
+	for _, c := range load(t, "robust.json", 16) {
+		if len(c.A) == len(c.C) {
+			continue
+		}
+		a, cm := general(c.A), general(c.C)
+		list := c.list()
+		size := 0.0
+		for _, p := range list {
+			size = math.Max(size, math.Hypot(real(p), imag(p)))
+		}
+		last := len(list) - 1
+		step := size * 0.002
+		var w placement.Warm
+		l, before := zeros(len(c.A), len(c.C)), zeros(len(c.A), len(c.C))
+		worst, steps := 0.0, 0
+		for k := range 201 {
+			info, err := s.Robust(l, a, cm, list, &w)
+			if err != nil {
+				t.Errorf("%s, step %d: %v", c.Name, k, err)
+				break
+			}
+			if k > 0 {
+				steps += info.Iterations
+				j := distance(l, before) / mat.Norm(wrap(before), 2) / 0.002
+				worst = math.Max(worst, j)
+			}
+			before = copyOf(l)
+			if imag(list[last]) != 0 { // the last pair, or the last real pole, gets faster
+				list[last-1] -= complex(step, 0)
+			}
+			list[last] -= complex(step, 0)
+		}
+		t.Logf("%-28s largest relative jump over relative step %.2f, %.1f steps of descent each", c.Name, worst, float64(steps)/200)
+		if worst > 25 {
+			t.Errorf("%s: the gain jumps by %g times the step", c.Name, worst)
+		}
+	}
+}
+
+// Poles that pass through each other, meet on the axis and part again keep the gain
+// on its branch.
+func TestDragThroughMeetings(t *testing.T) {
+	var s placement.Solver
+	a := general([][]float64{{0, 1, 0, 0}, {-2, -0.1, 1, 0.05}, {0, 0, 0, 1}, {1, 0.05, -2, -0.1}})
+	c := general([][]float64{{1, 0, 0, 0}, {0, 0, 1, 0}})
+	const h = 0.02
+	path := func(k int) []complex128 {
+		x := float64(k) * h
+		switch {
+		case k < 50: // -3 passes -3.5 on its way to -4
+			return []complex128{complex(-3-x, 0), -3.5, -5, -6}
+		case k < 100: // -4 and -3.5 meet
+			d := 0.5 * (1 - (x-50*h)/(50*h))
+			return []complex128{complex(-3.75-d/2, 0), complex(-3.75+d/2, 0), -5, -6}
+		case k == 100:
+			return []complex128{-3.75, -3.75, -5, -6}
+		}
+		y := x - 100*h // and leave the axis as a pair
+		return []complex128{complex(-3.75, y), complex(-3.75, -y), -5, -6}
+	}
+	var w placement.Warm
+	l, before := zeros(4, 2), zeros(4, 2)
+	worst, at := 0.0, 0
+	for k := range 151 {
+		if _, err := s.Robust(l, a, c, path(k), &w); err != nil {
+			t.Fatalf("step %d: %v", k, err)
+		}
+		if k > 0 {
+			if d := distance(l, before) / h; d > worst {
+				worst, at = d, k
+			}
+		}
+		before = copyOf(l)
+	}
+	t.Logf("largest jump %.1f times the step, at step %d", worst, at)
+	if worst > 60 {
+		t.Errorf("the gain jumps by %g times the step at step %d", worst, at)
+	}
+}
+
+// A clone is not touched by later calls, and leads back to the same gain.
+func TestWarmClone(t *testing.T) {
+	var s placement.Solver
+	a, c, poles := plant(6, 2, 5, 0.6)
+	var w placement.Warm
+	l := zeros(6, 2)
+	if (&w).Clone().Empty() != true || (*placement.Warm)(nil).Clone() != nil {
+		t.Error("clone of nothing")
+	}
+	if _, err := s.Robust(l, a, c, poles, &w); err != nil {
+		t.Fatal(err)
+	}
+	kept, first := w.Clone(), copyOf(l)
+	for i := range poles {
+		poles[i] *= 1.5
+	}
+	if _, err := s.Robust(l, a, c, poles, &w); err != nil {
+		t.Fatal(err)
+	}
+	for i := range poles {
+		poles[i] /= 1.5
+	}
+	if _, err := s.Robust(l, a, c, poles, kept); err != nil {
+		t.Fatal(err)
+	}
+	if d := distance(l, first) / mat.Norm(wrap(first), 2); d > 1e-5 {
+		t.Errorf("the clone leads to a gain %g away", d)
+	}
+}
+
+// A warm choice for another plant size is not used.
+func TestWarmOfOtherSize(t *testing.T) {
+	var s placement.Solver
+	var w placement.Warm
+	for _, n := range []int{6, 4, 5} {
+		a, c, poles := plant(n, 2, 7, 0.6)
+		l := zeros(n, 2)
+		if _, err := s.Robust(l, a, c, poles, &w); err != nil {
+			t.Fatal(err)
+		}
+		if miss := poleError(closed(a, c, l), poles); miss > 1e-9 {
+			t.Errorf("n = %d: poles off by %g", n, miss)
+		}
+	}
+}
