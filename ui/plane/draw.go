@@ -1,0 +1,266 @@
+package plane
+
+import (
+	"math"
+	"math/cmplx"
+	"strconv"
+
+	"polewright/ui/canvas"
+	"polewright/ui/plane/targets"
+	"polewright/ui/theme"
+)
+
+// Kind of a mark, in the order in which one covers another.
+type Kind uint8
+
+const (
+	// Plant poles are the model's own.
+	Plant Kind = iota
+	// Controller poles are those of the loop.
+	Controller
+	// Floor poles are those of the best linear estimator.
+	Floor
+	// Fixed poles cannot be moved by any gain.
+	Fixed
+	// Target poles are wanted.
+	Target
+	// Selected is the target in the hand.
+	Selected
+)
+
+// Mark is one pole, in the plane shown. Place is false where it has none there.
+type Mark struct {
+	At    complex128
+	Place bool
+	Kind  Kind
+}
+
+// Glyph is the shape of a mark.
+func Glyph(k Kind, g *theme.Glyphs) rune {
+	return [...]rune{g.Plant, g.Controller, g.Floor, g.Fixed, g.Target, g.Selected}[k]
+}
+
+// Ink is the ink of a mark.
+func Ink(k Kind) theme.Ink {
+	return [...]theme.Ink{theme.Faint, theme.Faint, theme.Text, theme.Text, theme.Title, theme.Hold}[k]
+}
+
+// Draw draws the window with the marks on it, at (x, y) of the canvas. Marks of
+// higher kind cover others.
+func Draw(c *canvas.Canvas, x, y int, w Window, marks []Mark, t *theme.Theme) {
+	p := pen{c: c, x: x, y: y, w: w, g: &t.Glyphs}
+	if w.Plane == targets.Z {
+		p.circle()
+	} else {
+		p.rings()
+		p.rays()
+		p.limit()
+	}
+	p.axes()
+	for k := Plant; k <= Selected; k++ {
+		for _, m := range marks {
+			if m.Kind == k {
+				p.mark(m)
+			}
+		}
+	}
+}
+
+// pen draws in the coordinates of a window.
+type pen struct {
+	c    *canvas.Canvas
+	x, y int
+	w    Window
+	g    *theme.Glyphs
+}
+
+func (p *pen) set(col, row int, r rune, ink theme.Ink) {
+	if col >= 0 && row >= 0 && col < p.w.W && row < p.w.H {
+		p.c.Set(p.x+col, p.y+row, r, ink)
+	}
+}
+
+// text writes a label if it lies wholly inside and covers nothing but blanks and dots.
+func (p *pen) text(col, row int, s string) bool {
+	n := canvas.TextWidth(s)
+	if col < 0 || row < 0 || col+n > p.w.W || row >= p.w.H {
+		return false
+	}
+	for i := range n {
+		if r := p.c.At(p.x+col+i, p.y+row); r != ' ' && r != p.g.Dot {
+			return false
+		}
+	}
+	p.c.Text(p.x+col, p.y+row, s, theme.Faint)
+	return true
+}
+
+// dot is part of a curve.
+func (p *pen) dot(v complex128) {
+	p.set(p.w.Column(real(v)), p.w.Row(imag(v)), p.g.Dot, theme.Faint)
+}
+
+// ticks are the distances of labels along the axes.
+func (p *pen) ticks() (dx, dy float64) {
+	return tick(11 * p.w.DX), tick(3 * p.w.DY)
+}
+
+// rings are arcs of equal natural frequency in the left half plane, at every
+// labelled place of the real axis.
+func (p *pen) rings() {
+	d, _ := p.ticks()
+	if p.w.W < 60 || p.w.H < 16 {
+		d *= 2
+	}
+	far := math.Hypot(max(-p.w.X0, 0), p.w.Half())
+	for r := d; r < far; r += d {
+		// one dot in about three cells of the way around
+		n := max(int(math.Pi/2*r/p.w.DX/5), 2)
+		for i := range n {
+			v := cmplx.Rect(r, math.Pi/2*(1+(float64(i)+0.5)/float64(n)))
+			p.dot(v)
+			p.dot(cmplx.Conj(v))
+		}
+	}
+}
+
+// dampings are the ratios that have a line.
+var dampings = []float64{0.3, 0.7}
+
+// rays are lines of equal damping ratio, with the ratio where they leave.
+func (p *pen) rays() {
+	for _, zeta := range dampings {
+		slope := zeta / math.Sqrt(1-zeta*zeta)
+		top := 0
+		for row := range p.w.H / 2 {
+			im := float64(p.w.H/2-row) * p.w.DY
+			col := p.w.Column(-slope * im)
+			if col < 0 {
+				top = row + 1
+				continue
+			}
+			p.set(col, row, p.g.Dot, theme.Faint)
+			p.set(col, p.w.H-1-row+(p.w.H+1)%2, p.g.Dot, theme.Faint)
+		}
+		if im := float64(p.w.H/2-top) * p.w.DY; im > 0 {
+			label := strconv.FormatFloat(zeta, 'g', 2, 64)
+			col := p.w.Column(-slope * im)
+			p.text(max(col-1, 0), top, label)
+		}
+	}
+}
+
+// limit draws the sampling limit ±π/period of the s-plane.
+func (p *pen) limit() {
+	if p.w.Period == 0 {
+		return
+	}
+	im := math.Pi / p.w.Period
+	for _, sign := range []float64{1, -1} {
+		row := p.w.Row(sign * im)
+		if row < 0 || row >= p.w.H {
+			continue
+		}
+		for col := range p.w.W {
+			p.set(col, row, p.g.Limit, theme.Faint)
+		}
+		if sign > 0 {
+			p.c.Text(p.x+2, p.y+row, " sampling limit ", theme.Faint)
+		}
+	}
+}
+
+// circle draws the unit circle and a line of equal damping inside it.
+func (p *pen) circle() {
+	n := max(int(2*math.Pi/p.w.DX/2), 8)
+	for i := range min(n, 4000) {
+		v := cmplx.Rect(1, math.Pi*(float64(i)+0.5)/float64(min(n, 4000)))
+		p.dot(v)
+		p.dot(cmplx.Conj(v))
+	}
+	for _, zeta := range dampings {
+		angle := math.Sqrt(1 - zeta*zeta)
+		for a := 0.0; a < math.Pi; {
+			radius := math.Exp(-zeta / angle * a)
+			v := cmplx.Rect(radius, a)
+			p.dot(v)
+			p.dot(cmplx.Conj(v))
+			a += min(max(6*p.w.DX/radius, 0.001), 0.5)
+		}
+	}
+}
+
+// axes draws both axes with their labels.
+func (p *pen) axes() {
+	mid, axis := p.w.H/2, p.w.Column(0)
+	for col := range p.w.W {
+		p.set(col, mid, p.g.Rule, theme.Faint)
+	}
+	for row := range p.w.H {
+		p.set(axis, row, p.g.Vertical, theme.Faint)
+	}
+	p.set(axis, mid, p.g.Cross, theme.Faint)
+	dx, dy := p.ticks()
+	for _, im := range values(-p.w.Half(), p.w.Half(), dy) {
+		if row := p.w.Row(im); row != mid && row != mid+1 {
+			p.text(axis+2, row, label(im, dy))
+		}
+	}
+	for _, re := range values(p.w.X0, p.w.X0+float64(p.w.W)*p.w.DX, dx) {
+		if re == 0 {
+			continue
+		}
+		col, s := p.w.Column(re), label(re, dx)
+		p.set(col, mid, p.g.Cross, theme.Faint)
+		p.text(col-len(s)/2, mid+1, s)
+	}
+}
+
+// values are the multiples of d from low to high.
+func values(low, high, d float64) []float64 {
+	var out []float64
+	for k := math.Ceil(low / d); k*d <= high && len(out) < 200; k++ {
+		out = append(out, k*d)
+	}
+	return out
+}
+
+// label prints a multiple of d with the decimals that d has.
+func label(v, d float64) string {
+	decimals := max(-int(math.Floor(math.Log10(d)+1e-9)), 0)
+	if decimals > 4 || math.Abs(v) >= 1e5 {
+		return strconv.FormatFloat(v, 'e', 0, 64)
+	}
+	return strconv.FormatFloat(v, 'f', decimals, 64)
+}
+
+// mark draws one pole. A target beyond the picture becomes an arrow at its edge.
+func (p *pen) mark(m Mark) {
+	ink, r := Ink(m.Kind), Glyph(m.Kind, p.g)
+	if !m.Place { // z = 0 lies infinitely far to the left in the s-plane
+		if m.Kind >= Fixed {
+			p.set(0, p.w.H/2, p.g.Left, ink)
+			p.c.Text(p.x+1, p.y+p.w.H/2, " z = 0 ", ink)
+		}
+		return
+	}
+	col, row := p.w.Column(real(m.At)), p.w.Row(imag(m.At))
+	if p.w.Inside(m.At) {
+		p.set(col, row, r, ink)
+		return
+	}
+	if m.Kind < Fixed {
+		return
+	}
+	switch {
+	case row < 0:
+		r = p.g.Up
+	case row >= p.w.H:
+		r = p.g.Down
+	case col < 0:
+		r = p.g.Left
+	default:
+		r = p.g.Right
+	}
+	p.set(min(max(col, 0), p.w.W-1), min(max(row, 0), p.w.H-1), r, ink)
+}

@@ -1,0 +1,198 @@
+package screen
+
+import (
+	"math"
+	"math/cmplx"
+	"time"
+
+	tea "github.com/charmbracelet/bubbletea"
+
+	"polewright/scenarios"
+	"polewright/ui/desk"
+	"polewright/ui/plane/targets"
+	"polewright/ui/readings"
+	"polewright/ui/traces"
+)
+
+// request is what to ask for the design in hand. A gain that is known is judged
+// as it stands, nothing is optimised anew behind the user's back.
+func (m *Model) request() desk.Request {
+	r := desk.Request{Gen: m.gen, Form: m.now.form, Method: m.now.method, Gain: m.now.gain}
+	if a := m.now.answer; a != nil && a.Design != nil {
+		r.Gain = a.Design.Gain
+	}
+	if r.Gain != nil {
+		return r
+	}
+	if len(m.now.set.List) > 0 {
+		r.Poles = m.now.set.Poles()
+	}
+	if m.shown != nil && m.shown.Stable && m.shown.Form == r.Form && m.shown.Method == r.Method {
+		r.From = m.shown
+	}
+	return r
+}
+
+// answer takes what is not older than what is shown.
+func (m *Model) answer(a *desk.Answer) tea.Cmd {
+	if a.Gen < m.shownGen || a.Gen > m.gen {
+		return nil
+	}
+	if a.Err != nil {
+		if a.Gen == m.gen {
+			m.failure, m.pending, m.keepWanted = a.Err, time.Time{}, false
+			m.refuse("no design: " + a.Err.Error())
+			m.dirty |= readingsRegion | tracesRegion
+		}
+		return nil
+	}
+	if a.Design == nil {
+		return nil
+	}
+	m.shown, m.shownGen = a.Design, a.Gen
+	m.limits = mergeLimits(m.limits, a)
+	first := m.analysis == nil
+	if a.Analysis != nil && a.Analysis != m.analysis {
+		m.analysis = a.Analysis
+		m.dirty |= planeRegion
+	}
+	m.adopt(a)
+	m.dirty |= readingsRegion
+	if a.Stage >= desk.Traced {
+		m.run, m.runGen = a.Run, a.Gen
+		m.newRun()
+	}
+	if a.Gen == m.gen {
+		m.upToDate(a)
+	} else {
+		m.pending = m.cfg.Now()
+	}
+	if first && m.half == 0 {
+		m.fitPlane()
+		m.dirty |= planeRegion
+	}
+	return nil
+}
+
+// upToDate notes that the newest request is answered, as far as the stage goes.
+func (m *Model) upToDate(a *desk.Answer) {
+	m.late, m.failure = false, nil
+	if a.Stage >= desk.Traced {
+		m.pending = time.Time{}
+	}
+	m.now.answer, m.now.limits = a, m.limits
+	m.now.run = a.Run
+	m.dirty |= tracesRegion
+	if m.keepWanted && a.Stage >= desk.Traced {
+		m.keepWanted = false
+		m.keep()
+	}
+}
+
+// mergeLimits keeps a row per limit: one that the answer does not judge yet keeps
+// its value, marked as older.
+func mergeLimits(old []readings.Limit, a *desk.Answer) []readings.Limit {
+	var out []readings.Limit
+	if a.Stage >= desk.Traced || len(old) == 0 {
+		for _, l := range a.Limits {
+			out = append(out, readings.Limit{LimitResult: l})
+		}
+		return out
+	}
+	fresh := map[string]scenarios.LimitResult{}
+	for _, l := range a.Limits {
+		fresh[l.Name] = l
+	}
+	for _, l := range old {
+		if f, ok := fresh[l.Name]; ok {
+			out = append(out, readings.Limit{LimitResult: f})
+		} else {
+			l.Older = true
+			out = append(out, l)
+		}
+	}
+	return out
+}
+
+// adopt takes over what only the background knows: the first targets, the fixed
+// poles, the controller's.
+func (m *Model) adopt(a *desk.Answer) {
+	if len(m.fixed) != len(a.Fixed) && len(a.Fixed) > 0 || m.fixed == nil {
+		if set, err := targets.From(a.Fixed, m.period()); err == nil {
+			m.fixed = set.List
+			m.dirty |= planeRegion
+		}
+	}
+	if len(m.now.set.List) == 0 && a.Gen == m.gen {
+		list := a.Design.Wanted
+		if list == nil {
+			list = without(a.Design.Reached, a.Fixed)
+		}
+		if set, err := targets.From(list, m.period()); err == nil {
+			m.now.set = set
+			m.now.held = m.firstHeld()
+			m.dirty |= planeRegion
+		}
+	}
+	if l := a.Design.Loop; l != nil && m.controller == nil {
+		m.controller = without(l.Poles, a.Design.Reached)
+		m.dirty |= planeRegion
+	}
+}
+
+// firstHeld is the pole to start with: the one the session held, else the first.
+func (m *Model) firstHeld() int {
+	return min(max(m.cfg.Work.View.Selected, 0), max(len(m.now.set.List)-1, 0))
+}
+
+// without removes from list the nearest to each of the others.
+func without(list, others []complex128) []complex128 {
+	out := append([]complex128(nil), list...)
+	for _, o := range others {
+		best, least := -1, math.Inf(1)
+		for i, p := range out {
+			if d := cmplx.Abs(p - o); d < least {
+				best, least = i, d
+			}
+		}
+		if best >= 0 {
+			out = append(out[:best], out[best+1:]...)
+		}
+	}
+	return out
+}
+
+// newRun gives every trace that is looked at an axis, the first time; later runs
+// keep it until the hands rest.
+func (m *Model) newRun() {
+	for _, key := range m.panels() {
+		curves := traces.Curves(m.run, key.mode, key.index)
+		if _, ok := m.axes[key]; !ok && curves != nil {
+			m.axes[key] = traces.Axes(curves)
+		}
+	}
+	m.dirty |= tracesRegion
+}
+
+// settleAxes fits the axes that no longer serve.
+func (m *Model) settleAxes() {
+	for _, key := range m.panels() {
+		curves := traces.Curves(m.run, key.mode, key.index)
+		if axis, ok := m.axes[key]; curves != nil && (!ok || !axis.Serves(curves)) {
+			m.axes[key] = traces.Axes(curves)
+		}
+	}
+}
+
+// panels are the traces in sight.
+func (m *Model) panels() []axisKey {
+	n, _, p := m.cfg.Work.Bench.Model.Dims()
+	if m.mode == traces.Innovation {
+		n = p
+	}
+	var out []axisKey
+	for k := range min(m.lay.panels, n) {
+		out = append(out, axisKey{m.mode, (m.trace + k) % n})
+	}
+	return out
+}

@@ -1,0 +1,114 @@
+// Package screen is the root of the terminal screen: it owns the keyboard, the
+// design in hand and its history, and routes what changes to the regions. It
+// does no work of its own and no input or output but through its Config.
+package screen
+
+import (
+	"io/fs"
+	"time"
+
+	tea "github.com/charmbracelet/bubbletea"
+
+	"polewright/estimator"
+	"polewright/ui/desk"
+	"polewright/ui/keys"
+	"polewright/ui/plane/targets"
+	"polewright/ui/theme"
+	"polewright/ui/traces"
+)
+
+// Config is what the screen needs from outside. Only Work.Bench and Ask are
+// required.
+type Config struct {
+	Work desk.Work
+
+	// Ask takes a request for the background and returns at once. Answers come
+	// back as AnswerMsg.
+	Ask func(desk.Request)
+
+	// Save writes a session file. Without replace it fails with an error that is
+	// fs.ErrExist where the file exists; with replace it may do so too, where the
+	// file is no longer what this session read or wrote. It runs outside Update.
+	Save func(file string, w desk.Work, replace bool) error
+
+	// Journal keeps unsaved work against a crash; it is called when the hands
+	// rest, outside Update. Nil for none.
+	Journal func(w desk.Work)
+
+	// Resolve turns a pole list or a pattern, typed in a plane ("s" or "z"), into
+	// movable poles of the model's own plane. It runs inside Update: short.
+	Resolve func(text, plane string, form estimator.Form) ([]complex128, error)
+
+	Theme theme.Options
+	// Calm sends less while poles move: traces follow only when the hands rest.
+	Calm bool
+	// Width and Height stand in for the terminal's until it tells; 0 means 80x24.
+	Width, Height int
+	// Now is the clock, for tests; nil is time.Now.
+	Now func() time.Time
+	// Message greets, in the status line: a journal was found, a file is new.
+	Message string
+}
+
+// AnswerMsg brings an answer of the background to the screen.
+type AnswerMsg struct{ desk.Answer }
+
+// errExists is what Save says of a file that is already there.
+var errExists = fs.ErrExist
+
+// New returns the screen.
+func New(cfg Config) Model {
+	if cfg.Now == nil {
+		cfg.Now = time.Now
+	}
+	w := cfg.Work
+	m := Model{
+		cfg: cfg, theme: theme.New(cfg.Theme), keys: keys.Default(),
+		file: w.File, current: w.Current, candidates: append([]desk.Candidate(nil), w.Candidates...),
+		trace: max(w.View.Trace, 0), plane: targets.S, axes: map[axisKey]traces.Axis{},
+		message: cfg.Message,
+	}
+	m.actions = m.bindings()
+	if w.View.Plane == "z" && m.period() > 0 || w.View.Plane == "" && m.period() > 0 && !w.Bench.Plant.Continuous {
+		m.plane = targets.Z
+	}
+	if set, err := targets.From(w.Poles, m.period()); err == nil {
+		m.now.set = set
+	}
+	m.now.form, m.now.method, m.now.gain = w.Form, w.Method, w.Gain
+	m.now.held = min(max(w.View.Selected, 0), max(len(m.now.set.List)-1, 0))
+	if n, _, _ := w.Bench.Model.Dims(); m.trace >= n {
+		m.trace = 0
+	}
+	m.resize(cfg.Width, cfg.Height)
+	m.half = w.View.Zoom
+	m.fitPlane()
+	m.refresh()
+	return m
+}
+
+// startMsg makes the first request, once the loop runs.
+type startMsg struct{}
+
+// Init asks for the first design.
+func (m Model) Init() tea.Cmd {
+	return func() tea.Msg { return startMsg{} }
+}
+
+// Work returns what a session keeps, as it is now.
+func (m Model) Work() desk.Work {
+	w := m.cfg.Work
+	w.File, w.Form, w.Method = m.file, m.now.form, m.now.method
+	w.Poles = m.now.set.Poles()
+	w.Gain = m.now.gain
+	if a := m.now.answer; a != nil && a.Design != nil {
+		w.Gain = a.Design.Gain
+	}
+	w.Candidates = append([]desk.Candidate(nil), m.candidates...)
+	w.Current = m.current
+	w.View = desk.View{Plane: string(byte(m.plane)), Zoom: m.half, Selected: m.now.held, Trace: m.trace}
+	return w
+}
+
+// Unsaved reports whether something would be lost.
+func (m Model) Unsaved() bool { return m.revision != m.saved }

@@ -1,0 +1,106 @@
+package screen
+
+import (
+	"errors"
+	"path/filepath"
+	"strings"
+
+	tea "github.com/charmbracelet/bubbletea"
+)
+
+// ending of a session file.
+const ending = ".session.json"
+
+// save writes the session, after asking for a name where it has none.
+func (m *Model) save() tea.Cmd {
+	if m.cfg.Save == nil {
+		m.refuse("saving is not available here")
+		return nil
+	}
+	if m.file != "" {
+		return m.write(m.file, true)
+	}
+	return m.openPrompt("save as:", suggestion(m.cfg.Work.Bench.Plant.Name), func(m *Model, text string) (tea.Cmd, error) {
+		if text == "" {
+			return nil, errors.New("a name is needed, for instance bench" + ending)
+		}
+		if !strings.HasSuffix(text, ".json") {
+			text += ending
+		}
+		return m.write(text, false), nil
+	})
+}
+
+// suggestion is a file name from a plant's name, which cannot lead elsewhere.
+func suggestion(plant string) string {
+	clean := strings.Map(func(r rune) rune {
+		if r < ' ' || r == 0x7f || strings.ContainsRune(`/\:*?"<>|`, r) {
+			return '_'
+		}
+		return r
+	}, strings.TrimSpace(plant))
+	clean = strings.TrimLeft(clean, ".-")
+	if clean == "" {
+		clean = "estimator"
+	}
+	return clean + ending
+}
+
+func (m *Model) write(file string, replace bool) tea.Cmd {
+	if m.saving {
+		m.say("still saving")
+		return nil
+	}
+	m.saving = true
+	m.say("saving")
+	m.dirty |= statusRegion
+	w, revision, save := m.Work(), m.revision, m.cfg.Save
+	w.File = file
+	return func() tea.Msg { return savedMsg{file, revision, save(file, w, replace)} }
+}
+
+func (m *Model) savedResult(msg savedMsg) tea.Cmd {
+	m.saving = false
+	m.dirty |= statusRegion | headerRegion
+	quit := m.quitAfterSave
+	switch {
+	case errors.Is(msg.err, errExists):
+		text := filepath.Base(msg.file) + " exists already"
+		if msg.file == m.file {
+			text = filepath.Base(msg.file) + " was changed by someone else"
+		}
+		m.question = &question{text: text + ".  r replace it   a another name   n leave it", choices: map[string]func(m *Model) tea.Cmd{
+			"n": stay,
+			"r": func(m *Model) tea.Cmd { m.file = ""; return m.write(msg.file, true) },
+			"a": func(m *Model) tea.Cmd { m.file = ""; return m.save() },
+		}}
+		return nil
+	case msg.err != nil:
+		m.quitAfterSave = false
+		m.refuse("not saved: " + msg.err.Error())
+		return nil
+	}
+	m.file, m.saved, m.quitAfterSave = msg.file, msg.revision, false
+	m.say("saved " + msg.file)
+	if quit && !m.Unsaved() {
+		return tea.Quit
+	}
+	return nil
+}
+
+// quit leaves, after a question where something would be lost.
+func (m *Model) quit() tea.Cmd {
+	if !m.Unsaved() || m.question != nil && m.question.text == unsavedText {
+		return tea.Quit // asked twice means yes
+	}
+	m.prompt = nil
+	m.dirty |= statusRegion
+	m.question = &question{text: unsavedText, choices: map[string]func(m *Model) tea.Cmd{
+		"y": func(*Model) tea.Cmd { return tea.Quit },
+		"n": stay,
+		"s": func(m *Model) tea.Cmd { m.quitAfterSave = true; return m.save() },
+	}}
+	return nil
+}
+
+const unsavedText = "quit with unsaved work?  y quit   n stay   s save and quit"

@@ -1,0 +1,44 @@
+package theme
+
+// Glyphs are the characters of the screen, each one cell wide. Marks differ in
+// shape, so that none needs a colour.
+type Glyphs struct {
+	Target, Selected, Fixed, Plant, Controller, Floor rune
+
+	Rule, Vertical, Cross, Dot, Limit rune
+	Left, Right, Up, Down             rune // at the edge: further out that way
+	Cursor                            rune
+	Ellipsis                          rune
+
+	Truth    Line
+	Estimate Line
+	Band     rune
+
+	Minus, PlusMinus, AtMost, AtLeast, Undefined, Middle, Times, Sigma, Arrows string
+}
+
+// Line is what a trace is drawn with.
+type Line struct {
+	Horizontal, Vertical, DownRight, DownLeft, UpRight, UpLeft, Start, End string
+	Sample                                                                 string // three cells, for the key
+}
+
+var unicode = Glyphs{
+	Target: '○', Selected: '●', Fixed: '■', Plant: '×', Controller: '△', Floor: '◇',
+	Rule: '─', Vertical: '│', Cross: '┼', Dot: '·', Limit: '╌',
+	Left: '◂', Right: '▸', Up: '▴', Down: '▾', Cursor: '▏', Ellipsis: '…',
+	Truth:    Line{"─", "│", "╭", "╮", "╰", "╯", "╶", "╴", "───"},
+	Estimate: Line{"•", "•", "•", "•", "•", "•", "•", "•", "•••"},
+	Band:     '┄',
+	Minus:    "−", PlusMinus: "±", AtMost: "≤", AtLeast: "≥", Undefined: "–", Middle: " · ", Times: "×", Sigma: "σ", Arrows: "←↓↑→",
+}
+
+var ascii = Glyphs{
+	Target: 'o', Selected: '@', Fixed: '#', Plant: 'x', Controller: '^', Floor: 'v',
+	Rule: '-', Vertical: '|', Cross: '+', Dot: '.', Limit: '=',
+	Left: '<', Right: '>', Up: '^', Down: 'v', Cursor: '_', Ellipsis: '~',
+	Truth:    Line{"-", "|", ".", ".", "'", "'", "-", "-", "---"},
+	Estimate: Line{"*", "*", "*", "*", "*", "*", "*", "*", "***"},
+	Band:     '~',
+	Minus:    "-", PlusMinus: "+-", AtMost: "<=", AtLeast: ">=", Undefined: "-", Middle: ", ", Times: "x", Sigma: "sigma", Arrows: "hjkl",
+}

@@ -1,0 +1,55 @@
+// Package views draws what opens on top of the screen: help, all readings, the
+// candidates side by side.
+package views
+
+import (
+	"polewright/ui/canvas"
+	"polewright/ui/theme"
+)
+
+// span is a text at a column, or one that ends before it.
+type span struct {
+	x     int
+	text  string
+	ink   theme.Ink
+	right bool
+}
+
+// page collects rows; it becomes lines of text at the end.
+type page struct {
+	w    int
+	rows [][]span
+}
+
+func (p *page) row(spans ...span) { p.rows = append(p.rows, spans) }
+func (p *page) blank()            { p.rows = append(p.rows, nil) }
+
+// title starts a part, with a blank row before all but the first.
+func (p *page) title(text string) {
+	if len(p.rows) > 0 {
+		p.blank()
+	}
+	p.row(span{text: text, ink: theme.Title})
+}
+
+// prose writes a wrapped text from column x on.
+func (p *page) prose(x int, text string, ink theme.Ink) {
+	for _, l := range canvas.Wrap(text, p.w-x) {
+		p.row(span{x: x, text: l, ink: ink})
+	}
+}
+
+func (p *page) lines(t *theme.Theme) []string {
+	var c canvas.Canvas
+	c.Reset(p.w, len(p.rows))
+	for y, row := range p.rows {
+		for _, s := range row {
+			if s.right {
+				c.Right(s.x, y, s.text, s.ink)
+			} else {
+				c.Text(s.x, y, s.text, s.ink)
+			}
+		}
+	}
+	return c.Lines(t, true)
+}
