@@ -90,9 +90,9 @@ func (r *reader) covariance(at string, raw [][]entry, size int, because string) 
 			if math.Abs(v) > size*(1+1e-9) {
 				return nil, &Error{Where: place, Wrong: fmt.Sprintf("%g is more than its variances allow", v), Expected: fmt.Sprintf("expected at most %g in size", size)}
 			}
-			s.SetSym(i, j, (v+w)/2)
+			s.SetSym(i, j, v/2+w/2)
 			if size > 0 {
-				scaled.SetSym(i, j, (v+w)/2/size)
+				scaled.SetSym(i, j, v/2/size+w/2/size)
 			}
 		}
 	}
