@@ -13,7 +13,7 @@ func (s *Solver) run() error {
 	top := len(s.steps) - 1
 	var k int64
 	largest := math.Sqrt(float64(n)) // of the Frobenius norm, which is submultiplicative
-	j := 0
+	j, a := 0, s.place(s.at)
 	for count := 0; ; count++ {
 		size := frobenius(s.at)
 		if math.IsNaN(size) || math.IsInf(size, 0) {
@@ -38,9 +38,10 @@ func (s *Solver) run() error {
 			}
 			j--
 		}
-		s.examine(j, k, s.at, s.next)
+		b := s.place(s.next)
+		s.examine(j, k, &a, &b)
 		k += int64(1) << j
-		s.at, s.next = s.next, s.at
+		s.at, s.next, a = s.next, s.at, b
 		if j < top && (j == 0 || bend <= smooth/5*size) {
 			j++
 		}
@@ -94,50 +95,71 @@ func (s *Solver) kept(x []float64) float64 {
 	return math.Sqrt(sum)
 }
 
-func (s *Solver) norm(x []float64) float64 { return s.gram.norm(s.n, x, s.keep) }
+// place is Φ at one time, with what is known of its norm.
+type place struct {
+	x     []float64
+	upper float64 // Frobenius norm of what is kept
+	exact float64 // 2-norm, negative while unknown
+}
 
-// examine looks at the interval of 2ʲ steps from k, with Φ = a at its start, b
-// at its end and, for j > 0, the middle at level j. It raises the peak and the
-// last time above Level.
-func (s *Solver) examine(j int, k int64, a, b []float64) {
+func (s *Solver) place(x []float64) place { return place{x: x, upper: s.kept(x), exact: -1} }
+
+func (s *Solver) norm(p *place) float64 {
+	if p.exact < 0 {
+		p.exact = s.gram.norm(s.n, p.x, s.keep)
+		s.peak = max(s.peak, p.exact)
+	}
+	return p.exact
+}
+
+// examine looks at the interval of 2ʲ steps from k to the place b, with its
+// middle at level j. It raises the peak and the last time above Level.
+func (s *Solver) examine(j int, k int64, a, b *place) {
 	end := k + int64(1)<<j
-	fa, fb := s.kept(a), s.kept(b)
 	if j == 0 {
-		s.examineUnit(k, a, b, fa, fb)
+		s.examineUnit(k, a, b)
 		return
 	}
-	m := s.mids[j]
-	bend := s.bend(a, m, b, s.keep)
-	bound := max(fa, fb, s.kept(m)) + bend
-	if bound <= s.peak && (bound <= Level || s.surelyAbove(fb)) {
+	m := s.place(s.mids[j])
+	bend := s.bend(a.x, m.x, b.x, s.keep)
+	bound := max(a.upper, b.upper, m.upper) + bend
+	if bound <= s.peak && (bound <= Level || s.surelyAbove(b.upper)) {
 		if bound > Level {
 			s.last, s.fraction = end, 0
 		}
 		return
 	}
-	na, nm, nb := s.norm(a), s.norm(m), s.norm(b)
-	s.peak = max(s.peak, na, nm, nb)
-	above := max(na, nm, nb) + bend/2 // four times what a parabola would reach
+	na, nm, nb := s.norm(a), s.norm(&m), s.norm(b)
+	top := max(na, nm, nb)
+	above := top + bend/2 // four times what a parabola would reach
 	if nb > Level {
 		s.last, s.fraction = end, 0
 	}
 	forPeak := above > s.peak*(1+tolerance)
+	if forPeak && !s.discrete && bend <= fine*top {
+		s.peak = max(s.peak, vertex(na, nm, nb))
+		forPeak = false
+	}
 	forLast := nb <= Level && above > Level
+	if forLast && !s.discrete && na > Level && bend <= fine*Level {
+		s.cross(j, k, na, nm, nb)
+		forLast = false
+	}
 	if !forPeak && !forLast {
 		return
 	}
 	// the later half first: what it finds makes the earlier one needless
-	s.examineHalf(j-1, k+int64(1)<<(j-1), m, b, forPeak)
-	s.examineHalf(j-1, k, a, m, forPeak)
+	s.examineHalf(j-1, k+int64(1)<<(j-1), &m, b, forPeak)
+	s.examineHalf(j-1, k, a, &m, forPeak)
 }
 
-func (s *Solver) examineHalf(j int, k int64, a, b []float64, forPeak bool) {
+func (s *Solver) examineHalf(j int, k int64, a, b *place, forPeak bool) {
 	if !forPeak && s.last > k+int64(1)<<j {
 		return
 	}
 	last, fraction := s.last, s.fraction
 	if j > 0 {
-		s.advance(s.mid(j), a, j-1)
+		s.advance(s.mid(j), a.x, j-1)
 	}
 	s.examine(j, k, a, b)
 	if last > s.last || last == s.last && fraction > s.fraction {
@@ -146,17 +168,43 @@ func (s *Solver) examineHalf(j int, k int64, a, b []float64, forPeak bool) {
 	}
 }
 
+// vertex is the largest value of the parabola through three equidistant places.
+func vertex(a, m, b float64) float64 {
+	top := max(a, m, b)
+	if curve := a - 2*m + b; curve < 0 && math.Abs(a-b) <= -2*curve {
+		return max(top, m-(a-b)*(a-b)/(8*curve))
+	}
+	return top
+}
+
+// cross places the fall to Level within an interval that bends little, by a
+// parabola through the logarithms.
+func (s *Solver) cross(j int, k int64, a, m, b float64) {
+	const small = 1e-30
+	la, lm, lb := math.Log(a/Level), math.Log(max(m, small)/Level), math.Log(max(b, small)/Level)
+	slope, curve := (lb-la)/2, (lb-2*lm+la)/2
+	value := func(x float64) float64 { return lm + x*(slope+x*curve) }
+	low, high := -1.0, 1.0 // in halves of the interval, from its middle
+	for range 50 {
+		if x := (low + high) / 2; value(x) > 0 {
+			low = x
+		} else {
+			high = x
+		}
+	}
+	s.last, s.fraction = k, (1+low)/2*float64(int64(1)<<j)
+}
+
 // examineUnit is examine for one step.
-func (s *Solver) examineUnit(k int64, a, b []float64, fa, fb float64) {
-	if max(fa, fb) <= min(s.peak, Level) {
+func (s *Solver) examineUnit(k int64, a, b *place) {
+	if max(a.upper, b.upper) <= min(s.peak, Level) {
 		return
 	}
-	if fb <= s.peak && s.surelyAbove(fb) {
+	if b.upper <= s.peak && s.surelyAbove(b.upper) {
 		s.last, s.fraction = k+1, 0
 		return
 	}
 	nb := s.norm(b)
-	s.peak = max(s.peak, nb)
 	if nb > Level {
 		s.last, s.fraction = k+1, 0
 		return
@@ -232,10 +280,12 @@ func (s *Solver) moveTo(k int64) {
 // window examines 64 intervals of level j from k on.
 func (s *Solver) window(k int64, j int) {
 	s.moveTo(k)
+	a := s.place(s.at)
 	for range 64 {
 		s.advanceWhole(j)
-		s.examine(j, k, s.at, s.next)
+		b := s.place(s.next)
+		s.examine(j, k, &a, &b)
 		k += int64(1) << j
-		s.at, s.next = s.next, s.at
+		s.at, s.next, a = s.next, s.at, b
 	}
 }
