@@ -117,7 +117,8 @@ func TestOptions(t *testing.T) {
 func TestOptionsRefused(t *testing.T) {
 	discrete := parse(t, "d.toml", "format = 1\n[model]\ntime = \"discrete\"\nperiod_s = 0.5\nA = [[0.5]]\nC = [[1]]")
 	delayed := parse(t, "cart.toml", changed(t, "noise_std = 0.01", "delay_samples = 1"))
-	long := parse(t, "cart.toml", changed(t, "noise_std = 0.01", "delay_samples = 100")+"")
+	long := parse(t, "cart.toml", changed(t, "noise_std = 0.01", "delay_samples = 100"))
+	loud := parse(t, "n.toml", "format = 1\n[model]\ntime = \"discrete\"\nperiod_s = 0.5\nA = [[0.5]]\nC = [[1]]\n[process_noise]\nstd = [1e200]")
 	cart := parse(t, "cart.toml", base)
 	sine := parse(t, "cart.toml", base+"\n[[unknowns]]\nkind = \"input-sine\"\non = \"force\"\ndrift = 1.0\nfrequency_hz = 4.0")
 	large := parse(t, "l.toml", `format = 1
@@ -142,6 +143,7 @@ delay_samples = 100
 		{discrete, plants.Options{Period: period(0)}, "d.toml: period: 0 s for a discrete plant of 0.5 s; expected no other period"},
 		{delayed, plants.Options{Period: period(0)}, "cart.toml: sensors 1, delay_samples: a delay in samples without a sample period; expected a period above 0"},
 		{sine, plants.Options{Period: period(0.2)}, "cart.toml: unknowns 2, frequency_hz: 4; expected below half the sample rate, 2.5 Hz"},
+		{loud, plants.Options{}, "n.toml: model: Q: not a finite number; expected numbers that a computer can hold"},
 		{large, plants.Options{}, "l.toml: model: 201 states with lags, delays and unknowns; expected at most 200"},
 		{cart, plants.Options{Factors: map[string]float64{"weight": 2}}, `cart.toml: parameter factors: unknown parameter "weight"; expected one of "damp", "mass"`},
 		{cart, plants.Options{Factors: map[string]float64{"mass": math.NaN()}}, "cart.toml: parameter factors, mass: NaN; expected a finite number"},
