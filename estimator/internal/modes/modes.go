@@ -91,7 +91,7 @@ func Analyse(a, c blas64.General, tol float64) (*Result, error) {
 func check(a, c blas64.General) (am, cm *mat.Dense, err error) {
 	n, p := a.Rows, c.Rows
 	if n < 1 || p < 1 || a.Cols != n || c.Cols != n {
-		return nil, nil, fmt.Errorf("A is %d×%d, C is %d×%d: %w", n, a.Cols, p, c.Cols, ErrShape)
+		return nil, nil, fmt.Errorf("matrix A is %d×%d, C is %d×%d: %w", n, a.Cols, p, c.Cols, ErrShape)
 	}
 	for _, g := range []blas64.General{a, c} {
 		if g.Stride < g.Cols || len(g.Data) < (g.Rows-1)*g.Stride+g.Cols {

@@ -31,6 +31,7 @@ type stopping struct {
 	squarings int     // of the measure
 	steps     int     // at most
 	gradient  float64 // largest entry where it ends
+	drop      float64 // decrease of the measure, twice in a row, where it ends
 	travel    float64 // longest way in radians, all steps together; 0 means no limit
 }
 
@@ -47,7 +48,7 @@ func (r *robust) descend(rule stopping, carried bool) (f float64, steps int, don
 	r.pullBack(m.g)
 	fresh := !carried
 	m.learnt = carried
-	left := rule.travel
+	left, small := rule.travel, false
 	for steps < rule.steps {
 		if largest(m.g) <= rule.gradient {
 			return f, steps, true
@@ -73,9 +74,10 @@ func (r *robust) descend(rule stopping, carried bool) (f float64, steps int, don
 		left -= norm2(m.d) // which update has scaled to the step taken
 		f, fresh, m.learnt = next, false, true
 		m.g, m.gNext = m.gNext, m.g
-		if drop <= 1e-11*math.Max(1, math.Abs(f)) {
+		if small = drop <= rule.drop && small; small {
 			return f, steps, true
 		}
+		small = drop <= rule.drop
 	}
 	return f, steps, false
 }

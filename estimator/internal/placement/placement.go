@@ -65,7 +65,7 @@ func (p pole) width() int {
 func checkInput(dst, a, c blas64.General, poles []complex128) error {
 	n, p := a.Rows, c.Rows
 	if n < 1 || p < 1 || p > n || a.Cols != n || c.Cols != n || dst.Rows != n || dst.Cols != p || len(poles) != n {
-		return fmt.Errorf("A is %d×%d, C is %d×%d, L is %d×%d, %d poles: %w",
+		return fmt.Errorf("matrix A is %d×%d, C is %d×%d, L is %d×%d, %d poles: %w",
 			n, a.Cols, p, c.Cols, dst.Rows, dst.Cols, len(poles), ErrShape)
 	}
 	for _, g := range []blas64.General{dst, a, c} {

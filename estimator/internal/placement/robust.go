@@ -209,9 +209,9 @@ const starts = 4
 // How far the descents go: from a start to the right valley, down that valley, and
 // from an earlier choice.
 var (
-	rough  = stopping{squarings: powerRough, steps: 30, gradient: 1e-2}
-	fine   = stopping{squarings: powerFine, steps: 200, gradient: 1e-6}
-	nearby = stopping{squarings: powerFine, steps: 60, gradient: 1e-6}
+	rough  = stopping{squarings: powerRough, steps: 30, gradient: 1e-2, drop: 1e-2}
+	fine   = stopping{squarings: powerFine, steps: 200, gradient: 1e-6, drop: 1e-5}
+	nearby = stopping{squarings: powerFine, steps: 60, gradient: 1e-6, drop: 1e-9}
 )
 
 // cold descends from several starts on the rough measure, then polishes the best.
@@ -251,9 +251,8 @@ func (r *robust) scatter(seed *uint64) {
 		*seed = *seed*6364136223846793005 + 1442695040888963407
 		return float64(*seed>>11)/(1<<52) - 1
 	}
-	old := r.descent.saved
 	r.descent.reset(r.free, len(r.frames))
-	old = r.descent.saved
+	old := r.descent.saved
 	copy(old, r.frames)
 	for i := range r.groups {
 		g := &r.groups[i]
