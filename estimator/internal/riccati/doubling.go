@@ -50,35 +50,42 @@ var errUnsolved = errors.New("the doubling did not converge")
 // as they are; a little noise added everywhere leads to the stabilising one,
 // which Newton's method then makes exact.
 func (p *problem) start() (*mat.Dense, error) {
+	reason := absent("no gain was found that makes all errors die out: the equation is too close to having no solution")
 	for _, extra := range []float64{0, 1e-10, 1e-6, 1e-2, 1} {
-		e, g, h, err := p.doublingStart(extra)
-		if err != nil {
-			continue
-		}
-		x, err := double(e, g, h)
-		if err != nil {
-			continue
-		}
-		l, err := p.work.gain(p, x)
-		if err != nil {
-			continue
-		}
-		poles, err := p.work.poles(p, l)
-		if err != nil {
-			continue
-		}
-		if stable := func() bool {
-			for _, v := range poles {
-				if !p.strictly(v, 0) {
-					return false
-				}
-			}
-			return true
-		}(); stable {
+		x, err := p.tryDoubling(extra)
+		if err == nil {
 			return x, nil
 		}
+		errors.As(err, &reason)
 	}
-	return nil, absent("no gain was found that makes all errors die out: the equation is too close to having no solution")
+	return nil, reason
+}
+
+// tryDoubling returns a covariance with a stabilising gain, found with extra
+// noise.
+func (p *problem) tryDoubling(extra float64) (*mat.Dense, error) {
+	e, g, h, err := p.doublingStart(extra)
+	if err != nil {
+		return nil, err
+	}
+	x, err := double(e, g, h)
+	if err != nil {
+		return nil, err
+	}
+	l, err := p.work.gain(p, x)
+	if err != nil {
+		return nil, err
+	}
+	poles, err := p.work.poles(p, l)
+	if err != nil {
+		return nil, err
+	}
+	for _, v := range poles {
+		if !p.strictly(v, 0) {
+			return nil, errUnsolved
+		}
+	}
+	return x, nil
 }
 
 // doublingStart returns the first triple (E, G, H) of the doubling, in discrete
@@ -91,7 +98,7 @@ func (p *problem) doublingStart(extra float64) (e, g, h *mat.Dense, err error) {
 		h.Set(i, i, h.At(i, i)+add)
 	}
 	r := mat.DenseCopyOf(p.r)
-	if lowest(p.r) < 1e-10 {
+	if p.noiseFree() {
 		unit := max(1e-8, extra) * max(mat.Norm(p.w, 2), 1)
 		for j := range p.p {
 			r.Set(j, j, r.At(j, j)*(1+1e-8)+unit)
@@ -109,6 +116,9 @@ func (p *problem) doublingStart(extra float64) (e, g, h *mat.Dense, err error) {
 	}
 	return cayley(e, g, h)
 }
+
+// noiseFree tells whether R is singular, for all practical purposes.
+func (p *problem) noiseFree() bool { return lowest(p.r) < 1e-10 }
 
 // cayley turns the continuous equation FᵀX + XF − XGX + H = 0 into a discrete
 // one with the same stabilising solution (Chu, Fan & Lin 2005). Its parameter
