@@ -1,6 +1,10 @@
 package estimator
 
-import "gonum.org/v1/gonum/mat"
+import (
+	"gonum.org/v1/gonum/mat"
+
+	"polewright/estimator/internal/placement"
+)
 
 // Form is the form in which a discrete estimator uses its newest sample.
 type Form uint8
@@ -99,6 +103,10 @@ type Design struct {
 	Float32Shift float64
 	SensorSets   []SensorSet
 	Warnings     []string
+
+	// branch is the choice among the gains for these poles that a next design
+	// follows; nil where there is none.
+	branch *placement.Warm
 }
 
 // Noise is the steady state of the estimation error of the chosen form. All

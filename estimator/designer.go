@@ -76,8 +76,13 @@ func (e *FixedModesError) Error() string {
 		strings.Join(list, ", "), e.Movable, e.Wanted)
 }
 
-// ErrMethod reports a combination of options that has no meaning.
-var ErrMethod = errors.New("not available")
+var (
+	// ErrMethod reports a combination of options that has no meaning.
+	ErrMethod = errors.New("not available")
+	// ErrNotReached reports poles that no gain in double precision comes near, such
+	// as where a mode is hardly seen.
+	ErrNotReached = placement.ErrNotReached
+)
 
 // NewDesigner checks and analyses a model. It fails where the model does
 // (Model.Check), where the current form is asked for in continuous time, or
@@ -219,11 +224,20 @@ func (d *Designer) gramian() []float64 {
 	if solve(raw(x), raw(&ctc)) != nil {
 		return nil
 	}
+	size := mat.Norm(x, 2)
+	if size == 0 {
+		return make([]float64, d.n)
+	}
+	x.Scale(1/size, x) // a tiny matrix would break the eigenvalue routine
 	var e mat.EigenSym
 	if !e.Factorize(symmetric(x), false) {
 		return nil
 	}
-	return e.Values(nil)
+	values := e.Values(nil)
+	for i := range values {
+		values[i] *= size
+	}
+	return values
 }
 
 func symmetric(x *mat.Dense) *mat.SymDense {

@@ -7,6 +7,7 @@ import (
 	"gonum.org/v1/gonum/mat"
 
 	"polewright/estimator/internal/modes"
+	"polewright/estimator/internal/placement"
 	"polewright/estimator/poles"
 )
 
@@ -84,20 +85,26 @@ func (d *Designer) Place(wanted []complex128, prev *Design) (*Design, error) {
 		return nil, err
 	}
 	ls := mat.NewDense(d.n, d.p, nil)
+	var branch *placement.Warm
 	if d.pair.rank > 0 {
-		if err := d.assign(ls, movable, prev); err != nil {
+		if branch, err = d.assign(ls, movable, prev); err != nil {
 			return nil, err
 		}
 	}
 	if d.pair.rank < d.n {
 		d.addUnseenRows(ls)
 	}
+	var lf *mat.Dense
 	if d.opt.Form == Current {
-		lf := mat.DenseCopyOf(ls)
+		lf = mat.DenseCopyOf(ls)
 		ls.Mul(d.a, lf)
-		return d.judge(ls, lf, append(movable, d.pair.fixed...))
 	}
-	return d.judge(ls, nil, append(movable, d.pair.fixed...))
+	out, err := d.judge(ls, lf, append(movable, d.pair.fixed...))
+	if err != nil {
+		return nil, err
+	}
+	out.branch = branch
+	return out, nil
 }
 
 // movable reduces a list to the poles that placement can choose.
@@ -144,21 +151,24 @@ func withoutFixed(list, fixed []complex128, refuse error) ([]complex128, error) 
 }
 
 // assign writes the scaled gain for the movable poles to ls.
-func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) error {
+func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) (branch *placement.Warm, err error) {
 	pr := &d.pair
 	p1, _ := pr.c.Dims()
 	part := mat.NewDense(pr.rank, p1, nil)
-	var err error
 	switch {
 	case d.opt.Method == LeastNoise && p1 > 1:
-		return fmt.Errorf("least-noise gain for several sensors: %w", ErrMethod)
+		return nil, fmt.Errorf("least-noise gain for several sensors: %w", ErrMethod)
 	case p1 == 1:
 		err = d.placement.Single(raw(part), raw(pr.a), raw(pr.c), movable)
 	default:
-		_, err = d.placement.Robust(raw(part), raw(pr.a), raw(pr.c), movable, nil)
+		branch = new(placement.Warm)
+		if prev != nil && prev.branch != nil {
+			branch = prev.branch.Clone()
+		}
+		_, err = d.placement.Robust(raw(part), raw(pr.a), raw(pr.c), movable, branch)
 	}
 	if err != nil {
-		return fmt.Errorf("placement: %w", err)
+		return nil, fmt.Errorf("placement: %w", err)
 	}
 	full := part
 	if pr.combine != nil {
@@ -166,7 +176,7 @@ func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) err
 		full.Mul(part, pr.combine)
 	}
 	ls.Mul(pr.q.Slice(0, d.n, 0, pr.rank), full)
-	return nil
+	return branch, nil
 }
 
 func formatPole(v complex128) string { return poles.Format(v) }

@@ -81,14 +81,24 @@ func designOf(t *rapid.T, m *estimator.Model, o estimator.Options) (*estimator.D
 			t.Skip("a mode that is hardly seen")
 		}
 	}
+	var svd mat.SVD
+	if svd.Factorize(m.C, mat.SVDNone); svd.Cond() > 1e4 {
+		t.Skip("sensors that nearly depend on each other")
+	}
 	wanted := anyPoles(t, n, m.Discrete())
 	got, err := d.Place(wanted, nil)
 	var fixed *estimator.FixedModesError
 	if errors.As(err, &fixed) {
 		t.Skip("nearly unobservable")
 	}
+	if o.Form == estimator.Current && errors.Is(err, estimator.ErrNotReached) {
+		t.Skip("(C A, A) is nearly unobservable")
+	}
 	if err != nil {
 		t.Fatal(err)
+	}
+	if lf := got.GainCurrent; o.Form == estimator.Current && mat.Norm(lf, 2) > 100 {
+		t.Skip("A is nearly singular, so that A Lf = L is ill-conditioned")
 	}
 	return d, got, wanted
 }

@@ -29,7 +29,7 @@ var layers = []struct {
 	{folder: "ui/measures", never: []string{"github.com/charmbracelet/"}},
 	{folder: "ui/session", never: []string{"github.com/charmbracelet/"}},
 	{folder: "ui/solver", never: []string{"github.com/charmbracelet/"}},
-	{folder: "ui/targets", never: []string{"github.com/charmbracelet/"}},
+	{folder: "ui/aim", never: []string{"github.com/charmbracelet/"}},
 }
 
 func TestLayers(t *testing.T) {

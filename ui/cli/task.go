@@ -10,9 +10,9 @@ import (
 
 	"polewright/estimator"
 	"polewright/estimator/poles"
+	"polewright/ui/aim"
 	"polewright/ui/desk"
 	"polewright/ui/session"
-	"polewright/ui/targets"
 )
 
 // task is one design to make: what is on the bench, a designer, what is wanted.
@@ -145,7 +145,7 @@ func (t *task) wanted(list string) ([]complex128, error) {
 	if err != nil {
 		return nil, fmt.Errorf("--poles: %w", err)
 	}
-	own, err := targets.Own(spec, t.plane, t.Model, t.designer)
+	own, err := aim.Own(spec, t.plane, t.Model, t.designer)
 	if err != nil {
 		return nil, fmt.Errorf("--poles: %w", err)
 	}

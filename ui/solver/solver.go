@@ -10,8 +10,8 @@ import (
 
 	"polewright/estimator"
 	"polewright/scenarios"
+	"polewright/ui/aim"
 	"polewright/ui/desk"
-	"polewright/ui/targets"
 )
 
 // Solver owns one worker and all its workspaces.
@@ -168,7 +168,7 @@ func (w *work) judge(r desk.Request) (desk.Answer, error) {
 		a.Design, err = d.Judge(estimator.Given{L: r.Gain, Lf: r.GainCurrent, Wanted: wanted})
 	default:
 		if wanted == nil {
-			if wanted, err = targets.Start(w.bench.Model, d); err != nil {
+			if wanted, err = aim.Start(w.bench.Model, d); err != nil {
 				return a, err
 			}
 		}

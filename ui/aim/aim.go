@@ -1,6 +1,6 @@
-// Package targets turns what a person writes for poles, a list or a pattern, into
+// Package aim turns what a person writes for poles, a list or a pattern, into
 // poles of an estimator's own plane. Commands, prompt and first start share it.
-package targets
+package aim
 
 import (
 	"errors"

@@ -1,0 +1,149 @@
+package cli
+
+import (
+	"fmt"
+	"os"
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"polewright/estimator"
+	"polewright/plants"
+	"polewright/plants/library"
+	"polewright/ui/desk"
+	"polewright/ui/launch"
+	"polewright/ui/quiet"
+	"polewright/ui/session"
+	"polewright/ui/theme"
+)
+
+// screenOptions are those of polewright without a command.
+type screenOptions struct {
+	scenario, form, background, colours string
+	period                              float64
+	ascii, calm                         bool
+}
+
+func (o *screenOptions) register(cmd *cobra.Command) {
+	f := cmd.Flags()
+	f.StringVar(&o.scenario, "scenario", "", "scenario name (built-in plants) or file")
+	f.StringVar(&o.form, "form", "prediction", "prediction or current (discrete estimators)")
+	f.Float64Var(&o.period, "period", 0, "sample period in seconds in place of the plant file's; 0 drops it")
+	f.BoolVar(&o.ascii, "ascii", false, "draw with 7-bit characters only")
+	f.BoolVar(&o.calm, "calm", false, "send little over a slow link: traces follow when the hands rest")
+	f.StringVar(&o.background, "background", "auto", "dark, light or auto (from COLORFGBG, else dark)")
+	f.StringVar(&o.colours, "colours", "auto", "none, 16, 256, all or auto (from TERM, COLORTERM and NO_COLOR)")
+	for name, words := range map[string][]string{
+		"form": {"prediction", "current"}, "background": {"auto", "dark", "light"}, "colours": {"auto", "none", "16", "256", "all"},
+	} {
+		cobra.CheckErr(cmd.RegisterFlagCompletionFunc(name, cobra.FixedCompletions(words, cobra.ShellCompDirectiveNoFileComp)))
+	}
+}
+
+// theme decides the look from options and environment alone: no terminal is asked.
+func (o *screenOptions) theme() (theme.Options, error) {
+	t := theme.Options{ASCII: o.ascii || asciiLocale()}
+	dark, err := word("background", o.background, map[string]bool{"auto": quiet.Dark(), "dark": true, "light": false})
+	if err != nil {
+		return t, err
+	}
+	t.Dark = dark
+	t.Depth, err = word("colours", o.colours, map[string]theme.Depth{
+		"auto": depth(), "none": theme.NoColour, "16": theme.Sixteen, "256": theme.Many, "all": theme.True})
+	return t, err
+}
+
+func depth() theme.Depth {
+	term, colour := os.Getenv("TERM"), os.Getenv("COLORTERM")
+	switch {
+	case os.Getenv("NO_COLOR") != "" || strings.HasPrefix(term, "vt"):
+		return theme.NoColour
+	case colour == "truecolor" || colour == "24bit":
+		return theme.True
+	case strings.Contains(term, "256"):
+		return theme.Many
+	}
+	return theme.Sixteen
+}
+
+// asciiLocale reports a locale that says it has no UTF-8, and the Linux console,
+// whose font lacks most of the marks.
+func asciiLocale() bool {
+	if os.Getenv("TERM") == "linux" {
+		return true
+	}
+	for _, name := range []string{"LC_ALL", "LC_CTYPE", "LANG"} {
+		if v := os.Getenv(name); v != "" {
+			v = strings.ToUpper(v)
+			return !strings.Contains(v, "UTF-8") && !strings.Contains(v, "UTF8")
+		}
+	}
+	return false
+}
+
+// openScreen shows the screen on a plant, a session, or without either on the
+// first built-in plant.
+func openScreen(cmd *cobra.Command, o screenOptions, args []string) error {
+	quiet.Restore()
+	look, err := o.theme()
+	if err != nil {
+		return err
+	}
+	w, err := o.work(cmd, args)
+	if err != nil {
+		return err
+	}
+	in, out, ok := launch.IsTerminal(cmd.InOrStdin(), cmd.OutOrStdout())
+	if !ok || os.Getenv("TERM") == "dumb" {
+		return &plants.Error{Where: "terminal", Wrong: "the screen needs a terminal that can move its cursor", Expected: "one, or the commands that 'polewright --help' lists"}
+	}
+	saved, err := launch.Run(cmd.Context(), launch.Options{Work: *w, Program: "polewright " + Version, Theme: look, Calm: o.calm, In: in, Out: out})
+	if saved != "" {
+		fmt.Fprintln(cmd.OutOrStdout(), "saved in "+saved)
+	}
+	return err
+}
+
+// work is what the screen starts from.
+func (o *screenOptions) work(cmd *cobra.Command, args []string) (*desk.Work, error) {
+	form, err := word("form", o.form, map[string]estimator.Form{"prediction": estimator.Prediction, "current": estimator.Current})
+	if err != nil {
+		return nil, err
+	}
+	if len(args) == 1 && session.Is(args[0]) {
+		for _, name := range []string{"period", "scenario", "form"} {
+			if cmd.Flags().Changed(name) {
+				return nil, usageError(name, "given with a session", "the session's own")
+			}
+		}
+		w, err := session.Load(args[0])
+		if err != nil {
+			return nil, fileError(args[0], "a session file", err)
+		}
+		return w, nil
+	}
+	name := library.Names()[0]
+	if len(args) == 1 {
+		name = args[0]
+	}
+	src, err := loadPlant(name)
+	if err != nil {
+		return nil, err
+	}
+	scenario := o.scenario
+	if own := library.Scenarios(src.builtIn); scenario == "" && len(own) > 0 {
+		scenario = scenarioWord(own[0].Name)
+	}
+	mo, err := periodOption(cmd, &o.period)
+	if err != nil {
+		return nil, err
+	}
+	b, err := src.bench(scenario, mo)
+	if err != nil {
+		return nil, err
+	}
+	if form == estimator.Current && !b.Model.Discrete() {
+		return nil, usageError("form", "current for an estimator in continuous time", "prediction, or a sample period")
+	}
+	return &desk.Work{Bench: b, Form: form}, nil
+}
