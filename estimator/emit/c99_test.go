@@ -1,0 +1,98 @@
+package emit_test
+
+import (
+	"fmt"
+	"os"
+	"os/exec"
+	"path/filepath"
+	"strings"
+	"testing"
+
+	"polewright/estimator"
+	"polewright/estimator/emit"
+)
+
+// strict are the flags that every emitted file must compile under.
+var strict = []string{"-std=c99", "-O2", "-Wall", "-Wextra", "-Wpedantic", "-Wconversion", "-Werror"}
+
+// compiler returns the path of a C compiler or skips; with
+// POLEWRIGHT_REQUIRE_TOOLS=1 a missing one fails.
+func compiler(t testing.TB, name string) string {
+	t.Helper()
+	path, err := exec.LookPath(name)
+	if err == nil {
+		return path
+	}
+	if os.Getenv("POLEWRIGHT_REQUIRE_TOOLS") == "1" && name == "gcc" {
+		t.Fatalf("%s is needed to check the emitted C and is not installed", name)
+	}
+	t.Skipf("%s is not installed: the emitted C is not compiled here", name)
+	return ""
+}
+
+// write puts emitted files into a folder and returns the path of each.
+func write(t testing.TB, dir string, files []emit.File) []string {
+	t.Helper()
+	var paths []string
+	for _, f := range files {
+		path := filepath.Join(dir, f.Name)
+		if err := os.WriteFile(path, f.Text, 0o644); err != nil {
+			t.Fatal(err)
+		}
+		paths = append(paths, path)
+	}
+	return paths
+}
+
+func build(t testing.TB, cc, out string, args ...string) {
+	t.Helper()
+	all := append(append([]string{}, strict...), "-o", out)
+	if text, err := exec.Command(cc, append(all, args...)...).CombinedOutput(); err != nil {
+		t.Fatalf("%s %s: %v\n%s", cc, strings.Join(args, " "), err, text)
+	}
+}
+
+// shapes are the designs whose code is compiled and run.
+func shapes() []shape {
+	var list []shape
+	for n := 1; n <= 8; n++ {
+		s := shape{n: n, m: n % 3, p: 1 + n%2, wrap: n%3 == 1, ranges: n%2 == 0, through: n%3 == 2}
+		if s.m > 0 && n%4 == 1 {
+			s.unknowns = 1
+		}
+		s.form = estimator.Form(n / 2 % 2)
+		list = append(list, s)
+		s.arithmetic = emit.Float
+		s.form = 1 - s.form
+		list = append(list, s)
+	}
+	return list
+}
+
+func (s shape) String() string {
+	return fmt.Sprintf("n%d m%d p%d unknowns%d form%d arithmetic%d D%v wrap%v", s.n, s.m, s.p, s.unknowns, s.form, s.arithmetic, s.through, s.wrap)
+}
+
+func TestSelfTestPasses(t *testing.T) {
+	for _, cc := range []string{"gcc", "clang"} {
+		t.Run(cc, func(t *testing.T) {
+			path := compiler(t, cc)
+			for i, s := range shapes() {
+				if cc == "clang" && i%4 != 1 {
+					continue
+				}
+				files, err := emit.Emit(randomSource(t, s, uint64(i)), emit.C99)
+				if err != nil {
+					t.Fatal(s, err)
+				}
+				dir := t.TempDir()
+				paths := write(t, dir, files)
+				exe := filepath.Join(dir, "selftest")
+				build(t, path, exe, paths[1])
+				if err := exec.Command(exe).Run(); err != nil {
+					t.Errorf("%s: self-test: %v", s, err)
+				}
+			}
+		})
+	}
+}
