@@ -15,6 +15,7 @@ type robust struct {
 	groups []group
 	frames []complex128
 	start  []complex128 // the best frames so far
+	basis  []complex128 // frames before any choice
 
 	m, b, q []float64 // Aᵀ n×n; Cᵀ n×p, then its QR factors; the orthogonal factor
 	u1, w   []float64 // U₁ᵀ and U₁ᵀ M, (n−p)×n
@@ -219,9 +220,9 @@ func (r *robust) cold() (Info, bool) {
 	info := Info{}
 	best := math.Inf(1)
 	seed := uint64(1)
-	basis := append([]complex128(nil), r.frames...)
+	r.basis = append(r.basis[:0], r.frames...)
 	for range starts {
-		copy(r.frames, basis)
+		copy(r.frames, r.basis)
 		r.scatter(&seed)
 		_, steps, _ := r.descend(rough, false)
 		info.Iterations += steps
@@ -281,9 +282,8 @@ func (r *robust) condition() float64 {
 	r.fillX()
 	copy(r.lu, r.xt)
 	impl := gonum.Implementation{}
-	var query [1]float64
-	impl.Dgesvd('N', 'N', n, n, r.lu, n, r.gram[:n], nil, 1, nil, 1, query[:], -1)
-	r.work = grow(r.work, max(r.n, int(query[0])))
+	impl.Dgesvd('N', 'N', n, n, r.lu, n, r.gram[:n], nil, 1, nil, 1, r.residual[:1], -1)
+	r.work = grow(r.work, max(n, int(r.residual[0])))
 	if !impl.Dgesvd('N', 'N', n, n, r.lu, n, r.gram[:n], nil, 1, nil, 1, r.work, len(r.work)) {
 		return math.NaN()
 	}

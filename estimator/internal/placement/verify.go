@@ -65,9 +65,9 @@ func (k *checker) iterate(n int) bool {
 	k.wr, k.wi = grow(k.wr, n), grow(k.wi, n)
 	k.tau = grow(k.tau, n)
 	impl := gonum.Implementation{}
-	var query [1]float64
-	impl.Dhseqr(lapack.EigenvaluesOnly, lapack.SchurNone, n, 0, n-1, k.f, n, k.wr, k.wi, nil, 1, query[:], -1)
-	k.work = grow(k.work, max(n, int(query[0])))
+	k.work = grow(k.work, n)
+	impl.Dhseqr(lapack.EigenvaluesOnly, lapack.SchurNone, n, 0, n-1, k.f, n, k.wr, k.wi, nil, 1, k.work[:1], -1)
+	k.work = grow(k.work, max(n, int(k.work[0])))
 	k.scale = grow(k.scale, n)
 	lo, hi := impl.Dgebal(lapack.PermuteScale, n, k.f, n, k.scale)
 	if n > 1 {

@@ -99,24 +99,31 @@ func (w *Warm) moved(groups []group) float64 {
 	return far
 }
 
-// sameOrder tells whether every group has a counterpart of the same kind at the
-// same place in the stored list, none closer.
+// sameOrder tells whether every group has its counterpart of the same kind at the
+// same place in the stored list: at most one has moved, as in a drag, or none has a
+// closer counterpart elsewhere.
 func (w *Warm) sameOrder(groups []group) bool {
 	if len(groups) != len(w.groups) {
 		return false
 	}
+	moved, nearest := 0, true
 	for i, g := range groups {
-		if o := w.groups[i]; o.pair != g.pair || o.m != g.m {
+		own := w.groups[i]
+		if own.pair != g.pair || own.m != g.m {
 			return false
 		}
-		own := cmplx.Abs(w.groups[i].at - g.at)
+		distance := cmplx.Abs(own.at - g.at)
+		if distance == 0 {
+			continue
+		}
+		moved++
 		for _, o := range w.groups {
-			if o.pair == g.pair && cmplx.Abs(o.at-g.at) < own {
-				return false
+			if o.pair == g.pair && cmplx.Abs(o.at-g.at) < distance {
+				nearest = false
 			}
 		}
 	}
-	return true
+	return moved <= 1 || nearest
 }
 
 // projectFrames projects whole frames, which keeps the coordinates of the descent.
