@@ -53,6 +53,22 @@ func BenchmarkPeakGain(b *testing.B) {
 	}
 }
 
+func BenchmarkPeakGains(b *testing.B) {
+	for _, n := range []int{4, 6, 10, 20, 50} {
+		b.Run(fmt.Sprint(n), func(b *testing.B) {
+			sys := randomStable(rand.New(rand.NewPCG(1, uint64(n))), n, 2, n, 0.1)
+			b.ReportAllocs()
+			for b.Loop() {
+				v, _, err := frequency.PeakGains(sys)
+				if err != nil {
+					b.Fatal(err)
+				}
+				sink = v[0]
+			}
+		})
+	}
+}
+
 func BenchmarkMargins(b *testing.B) {
 	for _, n := range []int{4, 8, 12, 20, 40, 100} {
 		b.Run(fmt.Sprint(n), func(b *testing.B) {

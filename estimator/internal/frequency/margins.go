@@ -3,7 +3,6 @@ package frequency
 import (
 	"math"
 	"math/cmplx"
-	"sort"
 )
 
 // Result holds the margins of a loop.
@@ -55,29 +54,30 @@ func Margins(loop System) (Result, error) {
 	if err := t.toContinuous(); err != nil {
 		return none, err
 	}
-	var res Result
-	if res.SensitivityPeak, res.SensitivityFrequency, err = peak(t.sensitivity()); err != nil {
-		return none, err
-	}
 	r, err := newResponse(t)
 	if err != nil {
 		return none, err
 	}
-	if err := r.gainMargins(t, &res); err != nil {
+	var res Result
+	if res.SensitivityPeak, res.SensitivityFrequency, err = r.peak(t.sensitivity(), true); err != nil {
 		return none, err
 	}
-	if err := r.phaseMargins(t, &res); err != nil {
+	turns, err := t.realAxis()
+	if err != nil {
 		return none, err
 	}
+	unit, err := t.unitGain()
+	if err != nil {
+		return none, err
+	}
+	turns, unit = r.roots(append(turns, unit...))
+	r.gainMargins(turns, &res)
+	r.phaseMargins(t, unit, &res)
 	return res, nil
 }
 
 // gainMargins looks at all frequencies where L is real.
-func (r *response) gainMargins(t *model, res *Result) error {
-	nus, err := t.realAxis()
-	if err != nil {
-		return err
-	}
+func (r *response) gainMargins(turns []float64, res *Result) {
 	below, above := 0.0, math.Inf(1)
 	consider := func(nu float64) {
 		v := r.at(nu)[0]
@@ -95,21 +95,16 @@ func (r *response) gainMargins(t *model, res *Result) error {
 	}
 	consider(0)
 	consider(math.Inf(1))
-	for _, nu := range r.roots(nus, func(v complex128) float64 { return imag(v) }) {
+	for _, nu := range turns {
 		consider(nu)
 	}
 	res.GainBelowDB, res.GainAboveDB = 20*math.Log10(below), 20*math.Log10(above)
-	return nil
 }
 
 // phaseMargins looks at all frequencies where |L| = 1.
-func (r *response) phaseMargins(t *model, res *Result) error {
-	nus, err := t.unitGain()
-	if err != nil {
-		return err
-	}
+func (r *response) phaseMargins(t *model, unit []float64, res *Result) {
 	res.PhaseDeg, res.DelayS = math.Inf(1), math.Inf(1)
-	for _, nu := range r.roots(nus, func(v complex128) float64 { return real(v) - 0.5 }) {
+	for _, nu := range unit {
 		v := r.at(nu)[0]
 		angle := cmplx.Phase(v / (v - 1)) // of −L
 		res.PhaseDeg = min(res.PhaseDeg, math.Abs(angle)*180/math.Pi)
@@ -120,7 +115,6 @@ func (r *response) phaseMargins(t *model, res *Result) error {
 			res.DelayS = min(res.DelayS, angle/w)
 		}
 	}
-	return nil
 }
 
 // unitGain returns candidates for Re T = 1/2: the |Im| of the eigenvalues of the
@@ -186,92 +180,4 @@ func (t *model) realAxis() ([]float64, error) {
 		}
 	}
 	return upper(list), nil
-}
-
-// grid returns frequencies that resolve every pole, lightly damped ones too,
-// and the candidates with the places between them, in rising order.
-func (r *response) grid(candidates []float64) []float64 {
-	least, most := math.Inf(1), 0.0
-	var list []float64
-	for i, re := range r.re {
-		size := math.Hypot(re, r.im[i])
-		if size == 0 {
-			continue
-		}
-		least, most = min(least, size), max(most, size)
-		if r.im[i] > 0 {
-			for _, f := range []float64{-3, -1, -0.5, -0.2, 0, 0.2, 0.5, 1, 3} {
-				list = append(list, r.im[i]+f*re)
-			}
-		}
-	}
-	for _, v := range candidates {
-		// a candidate carries rounding: look on both sides of it
-		list = append(list, v, v*(1-1e-6), v*(1+1e-6))
-		if v > 0 {
-			least, most = min(least, v), max(most, v)
-		}
-	}
-	const perDecade = 12
-	for k := 0; k < 400; k++ {
-		v := least / 100 * math.Pow(10, float64(k)/perDecade)
-		if v > most*100 {
-			break
-		}
-		list = append(list, v)
-	}
-	sort.Float64s(list)
-	kept := list[:0]
-	for _, v := range list {
-		if v > 0 && !math.IsInf(v, 0) && (len(kept) == 0 || v > kept[len(kept)-1]) {
-			kept = append(kept, v)
-		}
-	}
-	return kept
-}
-
-// roots returns the frequencies above zero where f of the response changes sign.
-func (r *response) roots(candidates []float64, f func(complex128) float64) []float64 {
-	var found []float64
-	var last, lastValue float64
-	value := func(nu float64) float64 {
-		v := f(r.at(nu)[0])
-		if math.Abs(v) <= 1e-15*r.noise {
-			return 0
-		}
-		return v
-	}
-	for _, nu := range r.grid(candidates) {
-		v := value(nu)
-		switch {
-		case v == 0:
-			found = append(found, nu)
-		case lastValue*v < 0:
-			found = append(found, bisect(value, last, nu, lastValue))
-		}
-		last, lastValue = nu, v
-	}
-	return found
-}
-
-// bisect halves down to rounding, on a geometric scale while that is wide.
-func bisect(f func(float64) float64, a, b, fa float64) float64 {
-	for range 200 {
-		mid := (a + b) / 2
-		if b > 2*a {
-			mid = math.Sqrt(a) * math.Sqrt(b)
-		}
-		if mid <= a || mid >= b {
-			break
-		}
-		switch v := f(mid); {
-		case v == 0:
-			return mid
-		case (v > 0) == (fa > 0):
-			a = mid
-		default:
-			b = mid
-		}
-	}
-	return (a + b) / 2
 }

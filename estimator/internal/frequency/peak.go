@@ -1,7 +1,9 @@
 package frequency
 
 import (
+	"fmt"
 	"math"
+	"math/cmplx"
 	"sort"
 )
 
@@ -23,6 +25,31 @@ func PeakGain(sys System) (value, rad float64, err error) {
 		return math.NaN(), math.NaN(), err
 	}
 	return peak(m)
+}
+
+// PeakGains is PeakGain for each output alone: element i belongs to row i of C.
+// One Hessenberg form serves all of them.
+func PeakGains(sys System) (values, rads []float64, err error) {
+	m, err := read(sys)
+	if err != nil {
+		return nil, nil, err
+	}
+	if err := m.toContinuous(); err != nil {
+		return nil, nil, err
+	}
+	r, err := newResponse(m)
+	if err != nil {
+		return nil, nil, err
+	}
+	for i := range m.c.r {
+		one := &model{n: m.n, period: m.period, a: m.a, b: m.b, c: dense{1, m.n, m.c.row(i)}, d: dense{1, m.b.c, m.d.row(i)}}
+		v, w, err := r.row(i).peak(one, false)
+		if err != nil {
+			return nil, nil, fmt.Errorf("output %d: %w", i+1, err)
+		}
+		values, rads = append(values, v), append(rads, w)
+	}
+	return values, rads, nil
 }
 
 // SensitivityPeakMIMO returns sup σmax((I + L)⁻¹) of a loop with as many inputs
@@ -49,14 +76,26 @@ func peak(m *model) (value, rad float64, err error) {
 	if err != nil {
 		return math.NaN(), math.NaN(), err
 	}
+	return r.peak(m, false)
+}
+
+// peak finds the largest gain of m, whose response r is; or, with complement,
+// whose response is 1 less r, for one input and output.
+func (r *response) peak(m *model, complement bool) (value, rad float64, err error) {
 	if !r.stable() {
 		return math.NaN(), math.NaN(), ErrUnstable
 	}
-	p := search{r: r, best: r.gain(math.Inf(1)), where: math.Inf(1)}
+	gain := r.gain
+	if complement {
+		gain = func(nu float64) float64 { return cmplx.Abs(1 - r.at(nu)[0]) }
+	}
+	p := search{gain: gain, best: gain(math.Inf(1)), where: math.Inf(1)}
 	p.try(0)
 	for i, re := range r.re {
-		p.try(math.Abs(r.im[i]))
-		p.try(math.Hypot(re, r.im[i]))
+		if r.im[i] >= 0 {
+			p.try(r.im[i])
+			p.try(math.Hypot(re, r.im[i]))
+		}
 	}
 	for range 40 {
 		p.climb()
@@ -159,12 +198,12 @@ func transpose(m dense) dense {
 
 // search keeps the largest gain seen.
 type search struct {
-	r           *response
+	gain        func(nu float64) float64
 	best, where float64
 }
 
 func (p *search) try(nu float64) float64 {
-	g := p.r.gain(nu)
+	g := p.gain(nu)
 	if g > p.best || math.IsNaN(g) {
 		p.best, p.where = g, nu
 	}
@@ -217,6 +256,9 @@ func (p *search) narrow(a, c, b, ga, gb float64) {
 			}
 		}
 		g := p.try(nu)
+		if math.Abs(g-gc) < 1e-13*gc {
+			return
+		}
 		switch {
 		case g > gc && nu > c:
 			a, ga, c, gc = c, gc, nu, g

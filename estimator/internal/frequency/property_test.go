@@ -200,6 +200,30 @@ func TestMarginsByEigenvalues(t *testing.T) {
 	t.Logf("%d loops, %d with a phase margin", loops, finite)
 }
 
+func TestPeakGainsByRow(t *testing.T) {
+	for seed := range uint64(20) {
+		r := rand.New(rand.NewPCG(seed, 13))
+		n, out := 1+r.IntN(6), 1+r.IntN(4)
+		sys := System{A: gaussian(r, n, n), B: gaussian(r, n, 2), C: gaussian(r, out, n), D: gaussian(r, out, 2), Period: 0.1}
+		setLimit(t, sys.A, 0.95, true)
+		values, rads, err := PeakGains(sys)
+		if err != nil || len(values) != out || len(rads) != out {
+			t.Fatal(values, rads, err)
+		}
+		for i, v := range values {
+			one := sys
+			one.C = blas64.General{Rows: 1, Cols: n, Stride: n, Data: sys.C.Data[i*n:]}
+			one.D = blas64.General{Rows: 1, Cols: 2, Stride: 2, Data: sys.D.Data[i*2:]}
+			if want, _, err := PeakGain(one); err != nil || math.Abs(v-want) > 1e-12*want {
+				t.Errorf("seed %d, output %d: %v, want %v, %v", seed, i, v, want, err)
+			}
+		}
+	}
+	if _, _, err := PeakGains(System{}); !errors.Is(err, ErrShape) {
+		t.Error(err)
+	}
+}
+
 func first(m blas64.General) float64 {
 	if m.Rows == 0 {
 		return 0

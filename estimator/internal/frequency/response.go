@@ -71,6 +71,15 @@ func newResponse(m *model) (*response, error) {
 	return r, nil
 }
 
+// row is the response of output i alone, on the same workspace.
+func (r *response) row(i int) *response {
+	one := *r
+	one.out = 1
+	one.c, one.d = dense{1, r.n, r.c.row(i)}, dense{1, r.in, r.d.row(i)}
+	one.g = r.g[:r.in]
+	return &one
+}
+
 // stable says whether all eigenvalues lie to the left by more than rounding.
 func (r *response) stable() bool {
 	for i, re := range r.re {
