@@ -57,7 +57,14 @@ func (d *Designer) Against(real *Model, design *Design) (*Mismatch, error) {
 			real = &bare
 		}
 	}
-	return free.against(real, design, own, mine)
+	out, l, err := free.against(real, design, own, mine)
+	if err != nil || !out.Stable || free != d {
+		return out, err
+	}
+	judged := &Design{Loop: &Loop{Stable: true, Poles: out.Poles, Input: -1, DelayMarginSamples: -1}}
+	d.loopMargins(judged, l)
+	out.Loop, out.Warnings = judged.Loop, judged.Warnings
+	return out, nil
 }
 
 // withoutControl is the designer with a controller that does nothing.
@@ -73,24 +80,24 @@ func (d *Designer) withoutControl() *Designer {
 	return &c
 }
 
-func (d *Designer) against(real *Model, design *Design, own, mine []int) (*Mismatch, error) {
+func (d *Designer) against(real *Model, design *Design, own, mine []int) (*Mismatch, *broken, error) {
 	_, inputs := real.B.Dims()
 	l, err := d.openLoop(real, design)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	a, inverse, err := l.closed(all(inputs))
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	var form schur.Form
 	if err := form.Factor(raw(a)); err != nil {
-		return nil, fmt.Errorf("plant and estimator: %w", err)
+		return nil, nil, fmt.Errorf("plant and estimator: %w", err)
 	}
 	out := &Mismatch{Poles: append([]complex128(nil), form.Eigenvalues()...)}
 	out.Stable = stable(out.Poles, d.model.Discrete())
 	if !out.Stable {
-		return out, nil
+		return out, l, nil
 	}
 	// e = x − x̂ of the plant's states; in current form x̂f = x̂ + Lf e_y
 	pick := mat.NewDense(len(own), l.plant+d.n, nil)
@@ -113,12 +120,7 @@ func (d *Designer) against(real *Model, design *Design, own, mine []int) (*Misma
 		}
 	}
 	out.Bias = d.bias(real, l, a, inverse, view, lf)
-	if d.model.K != nil && mat.Norm(d.model.K, 1) > 0 {
-		judged := &Design{Loop: &Loop{Stable: true, Poles: out.Poles, Input: -1, DelayMarginSamples: -1}}
-		d.loopMargins(judged, l)
-		out.Loop, out.Warnings = judged.Loop, judged.Warnings
-	}
-	return out, nil
+	return out, l, nil
 }
 
 // ownGain takes the rows of Lf that belong to the plant's states; nil in

@@ -43,6 +43,10 @@ type Model struct {
 	StateScale  []float64
 	SensorScale []float64
 
+	// SensorStep are the quantisation steps of the sensors, nil or 0 without. They
+	// are in R already; a warning compares the two.
+	SensorStep []float64
+
 	// Roles has one entry per state; nil means that all are plant states.
 	Roles []Role
 

@@ -44,6 +44,21 @@ func (d *Designer) warn(out *Design) {
 	if zeroNoise(m.R) {
 		say("a sensor has no noise at all: the figures promise more than a real sensor gives")
 	}
+	for j, step := range m.SensorStep {
+		// step/√12 is the standard deviation that quantising adds; where it is most of
+		// R, the sensor's error is no white noise.
+		if v := m.R.At(j, j); m.Discrete() && j < d.p && step > 0 && step*step/12 > 0.8*v {
+			say("%s resolves more coarsely than its noise: its error is a staircase, not the white noise that these figures assume", name(m.SensorNames, "y", j))
+		}
+	}
+	if m.Discrete() {
+		for _, v := range out.Wanted {
+			if real(v) < 0 && imag(v) == 0 {
+				say("the pole at z = %s is at the sampling limit: its error changes sign with every sample", formatPole(v))
+				break
+			}
+		}
+	}
 	if mat.Norm(m.Q, 1) == 0 {
 		say("there is no process noise: the best estimator would in time stop listening to the sensors")
 	}

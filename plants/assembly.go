@@ -175,6 +175,7 @@ func (b *assembly) model() (*estimator.Model, error) {
 		}
 		m.SensorNames = append(m.SensorNames, p.Sensors[si].Name)
 		m.SensorScale = append(m.SensorScale, p.Sensors[si].Scale)
+		m.SensorStep = append(m.SensorStep, p.Sensors[si].Resolution)
 	}
 	for _, u := range p.Inputs {
 		m.InputNames = append(m.InputNames, u.Name)
