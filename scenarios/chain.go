@@ -40,6 +40,16 @@ func bounds(r *plants.Range) (low, high float64) {
 	return r.Low, r.High
 }
 
+// free reports a sensor that shows every value as it is.
+func (s *sensor) free() bool {
+	return s.resolution == 0 && s.wrap == 0 && math.IsInf(s.low, -1) && math.IsInf(s.high, 1)
+}
+
+// free reports an actuator that does whatever it is told.
+func (a *actuator) free() bool {
+	return a.resolution == 0 && math.IsInf(a.low, -1) && math.IsInf(a.high, 1)
+}
+
 // read turns an absolute value into a reading: saturation, then quantisation.
 func (s *sensor) read(v float64) float64 {
 	if v < s.low {

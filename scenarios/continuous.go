@@ -23,8 +23,9 @@ type holding struct {
 	n, m, p, nt int
 	// steps has the matrix of [x; x̂] and its held inputs [r; η; c] per set of
 	// lost sensors; v holds what it multiplies.
-	steps map[uint32]flat
-	v, to []float64
+	steps   map[uint32]*packed
+	v, to   []float64
+	nothing []float64
 }
 
 // take sets up the steps for a gain.
@@ -32,19 +33,17 @@ func (h *holding) take(r *Runner, l *mat.Dense) error {
 	h.n, h.m, h.p, h.nt = r.n, r.m, r.p, r.nt
 	size := h.nt + h.n + h.m + h.p + h.nt
 	if h.v == nil {
-		h.v, h.to = make([]float64, size), make([]float64, h.nt+h.n)
+		h.v, h.to, h.nothing = make([]float64, size), make([]float64, h.nt+h.n), make([]float64, h.nt+h.n)
 	}
-	h.steps = map[uint32]flat{}
+	h.steps = map[uint32]*packed{}
 	for _, lost := range r.faults.lostSets() {
 		step, err := h.exponential(r, l, lost)
 		if err != nil {
 			return err
 		}
-		h.steps[lost] = step
+		h.steps[lost] = new(packed)
+		h.steps[lost].pack(step)
 	}
-	clear(h.v)
-	copy(h.v, r.startReal)
-	copy(h.v[h.nt:], r.startEst)
 	return nil
 }
 
@@ -111,34 +110,34 @@ func (h *holding) exponential(r *Runner, gain *mat.Dense, lost uint32) (flat, er
 }
 
 // continuous runs some steps.
-func (r *Runner) continuous(run *Run, w window, k0, count int) {
+func (r *Runner) continuous(w window, k0, count int) {
 	h := &r.hold
 	z := h.nt + h.n
 	held := h.v[z:]
-	v := r.est.v
 	for i := range count {
-		k := k0 + i
-		copy(r.x, h.v[:h.nt])
-		copy(v, h.v[h.nt:z])
+		x, v := r.row(i)
 		r.control(w.d[i*r.m:], v)
-		copy(r.x[r.nt:], v[r.n:r.n+r.m])
-		r.innovate(run, w.g[i*r.p:], k, v)
-		r.record(run, k, v)
+		copy(x[r.nt:], v[r.n:r.n+r.m])
+		g := w.g[i*r.p : (i+1)*r.p]
+		r.innovate(g, k0+i, i, x, v)
 
+		copy(h.v, x[:h.nt])
+		copy(h.v[h.nt:], v[:h.n])
 		for j, u := range v[r.n : r.n+r.m] {
 			held[j] = u
 			if r.closed {
 				held[j] += r.command[j]
 			}
 		}
-		for j, e := range r.e {
-			held[r.m+j] = e + r.want[j] - r.y[j]
+		for j, e := range v[r.n+r.m:] {
+			held[r.m+j] = e + r.want[j] - (r.y[j] - g[j])
 		}
 		copy(held[r.m+r.p:], w.c[i*r.nt:(i+1)*r.nt])
-		h.steps[r.faults.lost(k)].mul(h.to, h.v)
+		h.steps[r.faults.lost(k0+i)].mulAdd(h.to, h.v, h.nothing)
+		nextX, nextV := r.row(i + 1)
 		for j := range r.nt {
-			h.v[j] = h.to[j] + w.f[i*r.nt+j]
+			nextX[j] = h.to[j] + w.f[i*r.nt+j]
 		}
-		copy(h.v[h.nt:z], h.to[h.nt:])
+		copy(nextV, h.to[h.nt:])
 	}
 }

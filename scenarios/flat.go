@@ -31,18 +31,25 @@ func (f flat) put(i, j int, m *mat.Dense) {
 	}
 }
 
-// mul writes f·v into dst. Products are rounded on their own, so that a run is
-// the same on every machine.
-func (f flat) mul(dst, v []float64) {
-	v = v[:f.cols]
-	for i := range dst[:f.rows] {
-		row := f.a[i*len(v):][:len(v)]
-		var s float64
-		for j, x := range v {
-			s += float64(row[j] * x)
+// without leaves out the columns from cols on where all of them are zero.
+func (f flat) without(cols int) flat {
+	for i := range f.rows {
+		for _, v := range f.row(i)[cols:] {
+			if v != 0 {
+				return f
+			}
 		}
-		dst[i] = s
 	}
+	return subFlat(f, 0, cols)
+}
+
+// subFlat copies some columns.
+func subFlat(f flat, from, count int) flat {
+	out := newFlat(f.rows, count)
+	for i := range f.rows {
+		copy(out.row(i), f.row(i)[from:])
+	}
+	return out
 }
 
 // root is a lower triangular matrix with root·rootᵀ = s for a covariance s, by

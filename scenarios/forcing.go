@@ -5,10 +5,6 @@ import (
 	"math"
 )
 
-// chunk is the number of steps between two looks at the context and for
-// divergence.
-const chunk = 256
-
 // maxKept bounds the values of forcing that are kept from run to run, so that
 // the same noise is not drawn again while a pole is dragged.
 const maxKept = 1 << 22

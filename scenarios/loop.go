@@ -2,115 +2,159 @@ package scenarios
 
 import "math"
 
+// chunk is the number of steps between two looks at the context and for
+// divergence.
+const chunk = 128
+
+// rows holds the signals of one chunk, a row per step, before they are laid out
+// as lists. The state of the next step is written straight into the next row.
+type rows struct {
+	real      []float64 // (chunk+1)×(nt+m): state and input of the real plant
+	estimated []float64 // (chunk+1)×(n+m+p): state, input and innovation
+	read      []float64 // chunk×p
+}
+
 // prediction runs some steps of the prediction form: u[k] = drive − K x̂[k|k−1].
-func (r *Runner) prediction(run *Run, w window, k0, count int) {
-	v := r.est.v
+func (r *Runner) prediction(w window, k0, count int) {
 	for i := range count {
+		x, v := r.row(i)
 		r.control(w.d[i*r.m:], v)
-		copy(r.x[r.nt:], v[r.n:r.n+r.m])
-		r.innovate(run, w.g[i*r.p:], k0+i, v)
-		copy(v[r.n+r.m:], r.e)
-		r.record(run, k0+i, v)
-		r.est.advance()
-		r.advance(w.f[i*r.nt:])
+		copy(x[r.nt:], v[r.n:r.n+r.m])
+		r.innovate(w.g[i*r.p:], k0+i, i, x, v)
+		nextX, nextV := r.row(i + 1)
+		r.est.advance(nextV, v)
+		r.ahead.mulAdd(nextX, x, w.f[i*r.nt:])
 	}
 }
 
 // current runs some steps of the current form: u[k] = drive − K x̂[k|k]. A command
 // that depends on the sample cannot act on it: with direct feedthrough in a
 // closed loop the sample and its expectation see the command before.
-func (r *Runner) current(run *Run, w window, k0, count int) {
-	v := r.est.v
+func (r *Runner) current(w window, k0, count int) {
 	for i := range count {
+		x, v := r.row(i)
+		u := v[r.n : r.n+r.m]
 		if !r.closed {
 			r.control(w.d[i*r.m:], v)
 		}
-		copy(r.x[r.nt:], v[r.n:r.n+r.m])
-		r.innovate(run, w.g[i*r.p:], k0+i, v)
-		r.est.correct(r.e)
+		copy(x[r.nt:], u)
+		r.innovate(w.g[i*r.p:], k0+i, i, x, v)
+		r.est.correct(v)
 		if r.closed {
 			r.control(w.d[i*r.m:], v)
-			copy(r.x[r.nt:], v[r.n:r.n+r.m])
+			copy(x[r.nt:], u)
 		}
-		r.record(run, k0+i, v)
-		r.est.advance()
-		r.advance(w.f[i*r.nt:])
+		nextX, nextV := r.row(i + 1)
+		copy(nextV[r.n:], u)
+		r.est.advance(nextV, v)
+		r.ahead.mulAdd(nextX, x, w.f[i*r.nt:])
 	}
 }
 
-// control writes what the actuators do into the estimator's input.
+// row i of the chunk.
+func (r *Runner) row(i int) (x, v []float64) {
+	a, b := r.nt+r.m, r.n+r.m+r.p
+	return r.rows.real[i*a : (i+1)*a], r.rows.estimated[i*b : (i+1)*b]
+}
+
+// control writes what the actuators do into the input of a row.
 func (r *Runner) control(drive, v []float64) {
 	u := v[r.n : r.n+r.m]
 	if r.closed {
-		r.k.mul(r.command, v)
+		r.k.mulAdd(r.command, v, r.nothing)
+		for j := range u {
+			u[j] = drive[j] - r.command[j]
+		}
+	} else {
+		copy(u, drive)
+	}
+	if r.freeInputs {
+		return
 	}
 	for j := range u {
-		c := drive[j]
-		if r.closed {
-			c -= r.command[j]
-		}
-		u[j] = r.actuators[j].apply(c)
+		u[j] = r.actuators[j].apply(u[j])
 	}
 }
 
-// innovate reads the sensors and compares them with what is expected. The real
-// state with its input is in r.x, the estimate with its input in v.
-func (r *Runner) innovate(run *Run, g []float64, k int, v []float64) {
-	r.look.mul(r.y, r.x)
-	r.expect.mul(r.want, v)
+// innovate reads the sensors at step k, row i of the chunk, and compares them
+// with what is expected.
+func (r *Runner) innovate(g []float64, k, i int, x, v []float64) {
+	e, read := v[r.n+r.m:], r.rows.read[i*r.p:(i+1)*r.p]
+	r.look.mulAdd(r.y, x, g)
+	r.expect.mulAdd(r.want, v, r.nothing)
 	faulty := k >= r.faults.from && k < r.faults.to
-	for i := range r.sensors {
-		s := &r.sensors[i]
-		value := s.operating + (r.y[i] + g[i])
-		if faulty {
-			run.Measured[i][k], r.e[i] = r.fault(s, k, i, value, r.want[i])
-			continue
+	for j := range r.sensors {
+		s := &r.sensors[j]
+		value := s.operating + r.y[j]
+		switch {
+		case r.freeSensors:
+			read[j] = value
+			e[j] = value - s.operating - r.want[j]
+		case faulty:
+			read[j], e[j] = r.fault(s, k, j, value)
+		default:
+			s.last = s.read(value)
+			read[j] = s.last
+			e[j] = s.wrapped(s.last - s.operating - r.want[j])
 		}
-		reading := s.read(value)
-		s.last = reading
-		run.Measured[i][k] = reading
-		r.e[i] = s.wrapped(reading - s.operating - r.want[i])
 	}
 }
 
 // fault reads a sensor while something may be wrong with it.
-func (r *Runner) fault(s *sensor, k, i int, value, expected float64) (reading, e float64) {
-	add, frozen, lost := r.faults.state(k, i)
+func (r *Runner) fault(s *sensor, k, j int, value float64) (reading, e float64) {
+	add, frozen, lost := r.faults.state(k, j)
 	if !frozen || k == 0 {
 		s.last = s.read(value + add)
 	}
 	if lost {
 		return math.NaN(), 0
 	}
-	return s.last, s.wrapped(s.last - s.operating - expected)
+	return s.last, s.wrapped(s.last - s.operating - r.want[j])
 }
 
-// advance takes the real plant to the next step.
-func (r *Runner) advance(f []float64) {
-	next := r.xNext[:r.nt]
-	r.ahead.mul(next, r.x)
-	for i := range next {
-		r.x[i] = next[i] + f[i]
-	}
-}
-
-// record writes down step k.
-func (r *Runner) record(run *Run, k int, v []float64) {
-	own := len(run.True)
-	for i, at := range r.series {
-		if at < own {
-			run.True[at][k] = r.realOp[i] + r.x[i]
-		} else {
-			run.Others[at-own][k] = r.realOp[i] + r.x[i]
+// write lays a chunk out as lists and makes its last state the first of the
+// next chunk. It reports whether all values are within their bounds.
+func (r *Runner) write(run *Run, k0, count int) bool {
+	ok := true
+	a, b := r.nt+r.m, r.n+r.m+r.p
+	list := func(to, from []float64, stride int, operating, bound float64) {
+		to = to[k0 : k0+count]
+		at := 0
+		within := true
+		for k := range to {
+			v := operating + from[at]
+			to[k] = v
+			at += stride
+			if !(math.Abs(v) <= bound) {
+				within = false
+			}
 		}
+		ok = ok && within
+	}
+	for i, place := range r.series {
+		to := run.True
+		bound := r.realBound[place]
+		if place >= len(run.True) {
+			to, place = run.Others, place-len(run.True)
+		}
+		list(to[place], r.rows.real[i:], a, r.realOp[i], bound)
 	}
 	for i, op := range r.estimateOp {
-		run.Estimate[i][k] = op + v[i]
+		list(run.Estimate[i], r.rows.estimated[i:], b, op, r.estBound[i])
 	}
-	for j, u := range v[r.n : r.n+r.m] {
-		run.Inputs[j][k] = r.actuators[j].operating + u
+	for j := range run.Inputs {
+		list(run.Inputs[j], r.rows.estimated[r.n+j:], b, r.actuators[j].operating, math.MaxFloat64)
 	}
-	for i, e := range r.e {
-		run.Innovations[i][k] = e
+	for j := range run.Innovations {
+		list(run.Innovations[j], r.rows.estimated[r.n+r.m+j:], b, 0, math.MaxFloat64)
 	}
+	for j := range run.Measured {
+		to := run.Measured[j][k0 : k0+count]
+		for k := range to {
+			to[k] = r.rows.read[k*r.p+j]
+		}
+	}
+	copy(r.rows.real[:a], r.rows.real[count*a:])
+	copy(r.rows.estimated[:b], r.rows.estimated[count*b:])
+	return ok
 }

@@ -43,15 +43,19 @@ type Runner struct {
 	sensors   []sensor
 	actuators []actuator
 
-	k      flat // m×n
-	ahead  flat // (nt)×(nt+m): A B of the real plant
-	look   flat // p×(nt+m): C D
-	expect flat // p×(n+m): C D of the design
+	// Matrices of the inner loop; the columns of a D that is zero are left out.
+	k      packed // m×n
+	ahead  packed // nt×(nt+m): A B of the real plant
+	look   packed // p×(nt+m): C D
+	expect packed // p×(n+m): C D of the design
+	// freeInputs and freeSensors have neither range nor resolution; the sensors
+	// have no wrap and no fault either.
+	freeInputs, freeSensors bool
 
-	x, xNext []float64 // real state, then the input
-	e, want  []float64 // innovation; what the estimator expects of the sensors
-	y        []float64 // sensors before what is added
-
+	rows    rows
+	y, want []float64 // sensors as deviations; what the estimator expects of them
+	nothing []float64
+	ab, cd  flat // of the real plant
 	command []float64
 	est     estimate
 	hold    holding
@@ -173,9 +177,7 @@ func (r *Runner) RunInto(ctx context.Context, g Gain, run *Run) error {
 			}
 		}
 	}
-	clear(r.x)
-	copy(r.x, r.startReal)
-	r.est.begin(r.startEst)
+	r.begin()
 	for k := 0; k < len(r.time); k += chunk {
 		if err := ctx.Err(); err != nil {
 			return err
@@ -184,19 +186,28 @@ func (r *Runner) RunInto(ctx context.Context, g Gain, run *Run) error {
 		w := r.forcing.next(k, count)
 		switch {
 		case r.model.Period == 0:
-			r.continuous(run, w, k, count)
+			r.continuous(w, k, count)
 		case g.Form == estimator.Current:
-			r.current(run, w, k, count)
+			r.current(w, k, count)
 		default:
-			r.prediction(run, w, k, count)
+			r.prediction(w, k, count)
 		}
-		if end := run.beyond(k, k+count, r.realBound, r.estBound); end < k+count {
-			run.cut(end)
+		if !r.write(run, k, count) {
+			run.cut(run.beyond(k, k+count, r.realBound, r.estBound))
 			run.Diverged = true
 			return nil
 		}
 	}
 	return nil
+}
+
+// begin writes the states at t = 0 into the first row.
+func (r *Runner) begin() {
+	x, v := r.row(0)
+	clear(x)
+	clear(v)
+	copy(x, r.startReal)
+	copy(v, r.startEst)
 }
 
 // takeGain checks a gain and sets up the estimator for it.

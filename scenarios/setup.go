@@ -137,29 +137,35 @@ func (r *Runner) room(file string) error {
 // matrices lays out what the loops multiply with.
 func (r *Runner) matrices() {
 	t, m := r.real, r.model
-	r.ahead, r.look = newFlat(r.nt, r.nt+r.m), newFlat(r.p, r.nt+r.m)
-	r.ahead.put(0, 0, t.a)
-	r.ahead.put(0, r.nt, t.b)
-	r.look.put(0, 0, t.c)
-	r.look.put(0, r.nt, t.d)
-	r.expect = newFlat(r.p, r.n+r.m)
-	r.expect.put(0, 0, m.C)
-	r.expect.put(0, r.n, m.D)
-	r.k = newFlat(r.m, r.n)
-	r.k.put(0, 0, m.K)
-	r.x, r.xNext = make([]float64, r.nt+r.m), make([]float64, r.nt+r.m)
-	r.e, r.want, r.y = make([]float64, r.p), make([]float64, r.p), make([]float64, r.p)
-	r.command = make([]float64, r.m)
-	r.est = newEstimate(m)
-}
-
-// subFlat copies some columns.
-func subFlat(f flat, from, count int) flat {
-	out := newFlat(f.rows, count)
-	for i := range f.rows {
-		copy(out.row(i), f.row(i)[from:])
+	r.ab, r.cd = newFlat(r.nt, r.nt+r.m), newFlat(r.p, r.nt+r.m)
+	r.ab.put(0, 0, t.a)
+	r.ab.put(0, r.nt, t.b)
+	r.cd.put(0, 0, t.c)
+	r.cd.put(0, r.nt, t.d)
+	expect := newFlat(r.p, r.n+r.m)
+	expect.put(0, 0, m.C)
+	expect.put(0, r.n, m.D)
+	k := newFlat(r.m, r.n)
+	k.put(0, 0, m.K)
+	r.ahead.pack(r.ab)
+	r.look.pack(r.cd.without(r.nt))
+	r.expect.pack(expect.without(r.n))
+	r.k.pack(k)
+	r.rows = rows{
+		real:      make([]float64, (chunk+1)*(r.nt+r.m)),
+		estimated: make([]float64, (chunk+1)*(r.n+r.m+r.p)),
+		read:      make([]float64, chunk*r.p),
 	}
-	return out
+	r.y, r.want, r.command = make([]float64, r.p), make([]float64, r.p), make([]float64, r.m)
+	r.nothing = make([]float64, max(r.p, r.m))
+	r.est = newEstimate(m)
+	r.freeInputs, r.freeSensors = true, len(r.faults.spans) == 0
+	for i := range r.actuators {
+		r.freeInputs = r.freeInputs && r.actuators[i].free()
+	}
+	for i := range r.sensors {
+		r.freeSensors = r.freeSensors && r.sensors[i].free()
+	}
 }
 
 // force collects what acts from outside.
@@ -188,8 +194,8 @@ func (r *Runner) force(s *Scenario) {
 		shift[j] = r.plant.Inputs[j].Operating - t.plant.Inputs[i].Operating
 	}
 	x.c0, x.g0 = make([]float64, r.nt), make([]float64, r.p)
-	addMul(x.c0, subFlat(r.ahead, r.nt, r.m), shift)
-	addMul(x.g0, subFlat(r.look, r.nt, r.m), shift)
+	addMul(x.c0, subFlat(r.ab, r.nt, r.m), shift)
+	addMul(x.g0, subFlat(r.cd, r.nt, r.m), shift)
 	for k, i := range t.sensors {
 		x.g0[k] += t.plant.Sensors[i].Operating - r.sensors[k].operating
 	}

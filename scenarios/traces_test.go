@@ -72,11 +72,14 @@ func (c *traceCase) replay(form estimator.Form) float64 {
 	} else {
 		s.takePrediction(dense(c.L))
 	}
-	expect := newFlat(p, n+inputs)
-	expect.put(0, 0, m.C)
-	expect.put(0, n, m.D)
-	s.begin(c.Xhat0)
-	worst, e := 0.0, make([]float64, p)
+	cd := newFlat(p, n+inputs)
+	cd.put(0, 0, m.C)
+	cd.put(0, n, m.D)
+	var expect packed
+	expect.pack(cd)
+	v, next := make([]float64, n+inputs+p), make([]float64, n+inputs+p)
+	copy(v, c.Xhat0)
+	worst, e := 0.0, v[n+inputs:]
 	note := func(have []float64, all [][]float64, k int) {
 		largest := 0.0
 		for _, row := range all {
@@ -89,21 +92,20 @@ func (c *traceCase) replay(form estimator.Form) float64 {
 		}
 	}
 	for k := range c.Y {
-		note(s.v[:n], want.Predicted, k)
-		copy(s.v[n:], c.U[k])
-		expect.mul(e, s.v)
+		note(v, want.Predicted, k)
+		copy(v[n:], c.U[k])
+		expect.mulAdd(e, v, make([]float64, p))
 		for i := range e {
 			e[i] = c.Y[k][i] - e[i]
 		}
 		note(e, want.Innovation, k)
 		if form == estimator.Current {
-			s.correct(e)
-			note(s.v[:n], want.Filtered, k)
-		} else {
-			copy(s.v[n+inputs:], e)
+			s.correct(v)
+			note(v, want.Filtered, k)
 		}
-		s.advance()
+		s.advance(next, v)
+		copy(v, next[:n])
 	}
-	note(s.v[:n], want.Predicted, len(c.Y))
+	note(v, want.Predicted, len(c.Y))
 	return worst
 }
