@@ -76,9 +76,11 @@ func stdBand(std float64, rho []float64, samples float64) Band {
 	return Band{std * math.Sqrt(chiSquareQuantile(lower95, degrees)), std * math.Sqrt(chiSquareQuantile(upper95, degrees))}
 }
 
-// correlationBand is for the autocorrelation at lag j ≥ 1 over N samples, by
-// Bartlett's formula (1946): its variance is
-// (1/N) Σ_{m ≥ 1} (ρ_{m+j} + ρ_{m−j} − 2 ρⱼ ρₘ)².
+// correlationBand is for the autocorrelation at lag j ≥ 1 over N samples with the
+// mean removed. Its variance is by Bartlett's formula (1946),
+// (1/N) Σ_{m ≥ 1} (ρ_{m+j} + ρ_{m−j} − 2 ρⱼ ρₘ)². Its centre is ρⱼ but for what a
+// slow estimator makes felt, of order 1/N: the removed mean, fewer pairs, and the
+// quotient of two random figures (Marriott & Pope 1954).
 func correlationBand(rho []float64, j int, samples float64) Band {
 	if samples <= float64(j) {
 		return noBand
@@ -89,13 +91,23 @@ func correlationBand(rho []float64, j int, samples float64) Band {
 		}
 		return 0
 	}
-	sum, here := 0.0, at(j)
-	for m := 1; m < len(rho)+j; m++ {
-		d := at(m+j) + at(m-j) - 2*here*at(m)
-		sum += d * d
+	here := at(j)
+	variance, mean, own, cross := 0.0, 0.0, 0.0, 0.0
+	for m := 1 - len(rho) - j; m < len(rho)+j; m++ {
+		if m > 0 {
+			d := at(m+j) + at(m-j) - 2*here*at(m)
+			variance += d * d / samples
+		}
+		mean += math.Max(0, 1-math.Abs(float64(m))/samples) * at(m) / samples
+		own += 2 * at(m) * at(m) / samples
+		cross += 2 * at(m) * at(m+j) / samples
 	}
-	w := normal95 * math.Sqrt(sum/samples)
-	return Band{math.Max(here-w, -1), math.Min(here+w, 1)}
+	centre := here
+	if mean < 0.5 {
+		centre = (here*(1-float64(j)/samples)-mean)/(1-mean) + here*own - cross
+	}
+	w := normal95 * math.Sqrt(variance)
+	return Band{math.Max(centre-w, -1), math.Min(centre+w, 1)}
 }
 
 // ljungBox is the statistic of Ljung & Box 1978 over 20 lags and its level under

@@ -16,6 +16,8 @@ var (
 	errBinary = errors.New("bytes that are no text")
 )
 
+var quoteMark = []byte{'"'}
+
 // splitter cuts a stream into the records and fields of RFC 4180. Lines may end
 // in LF or CRLF; empty lines and a byte order mark are passed over. It holds one record at a time.
 type splitter struct {
@@ -27,6 +29,7 @@ type splitter struct {
 
 	line   int // where the present record starts, from 1
 	lines  int // lines passed so far
+	quotes int // in the present record
 	fields [][]byte
 	plain  []byte // fields with their quotes taken off
 }
@@ -86,7 +89,7 @@ func (s *splitter) next() ([][]byte, error) {
 		if len(record) == 0 {
 			continue
 		}
-		if bytes.IndexByte(record, '"') >= 0 {
+		if s.quotes > 0 {
 			return s.quoted(record)
 		}
 		s.fields = s.fields[:0]
@@ -107,25 +110,26 @@ func (s *splitter) next() ([][]byte, error) {
 // inside quotes does not end it.
 func (s *splitter) record() ([]byte, error) {
 	s.line = s.lines + 1
-	from, open := s.lo, false
+	s.quotes = 0
+	from := s.lo
 	for {
 		i := bytes.IndexByte(s.buf[from:s.hi], '\n')
 		if i < 0 {
-			open = open != (bytes.Count(s.buf[from:s.hi], []byte{'"'})%2 == 1)
+			s.quotes += bytes.Count(s.buf[from:s.hi], quoteMark)
 			done := s.hi - s.lo
 			if s.fill() {
 				from = s.lo + done
 				continue
 			}
-			return s.last(open)
+			return s.last()
 		}
 		s.lines++
-		open = open != (bytes.Count(s.buf[from:from+i], []byte{'"'})%2 == 1)
+		s.quotes += bytes.Count(s.buf[from:from+i], quoteMark)
 		from += i + 1
 		if from-s.lo > maxRecord {
 			return nil, errLong
 		}
-		if !open {
+		if s.quotes%2 == 0 {
 			record := s.buf[s.lo : from-1]
 			s.lo = from
 			return bytes.TrimSuffix(record, []byte{'\r'}), nil
@@ -134,7 +138,7 @@ func (s *splitter) record() ([]byte, error) {
 }
 
 // last returns what stands behind the last line end.
-func (s *splitter) last(open bool) ([]byte, error) {
+func (s *splitter) last() ([]byte, error) {
 	if s.failed != nil {
 		return nil, s.failed
 	}
@@ -144,7 +148,7 @@ func (s *splitter) last(open bool) ([]byte, error) {
 		return nil, io.EOF
 	case len(record) > maxRecord:
 		return nil, errLong
-	case open:
+	case s.quotes%2 == 1:
 		return nil, errQuote
 	}
 	s.lo = s.hi

@@ -23,8 +23,9 @@ type promise struct {
 }
 
 const (
-	// deadAt is where an autocorrelation counts as died out.
-	deadAt = 1e-9
+	// deadAt is where an autocorrelation counts as died out, beyond the lags that
+	// are shown.
+	deadAt = 1e-6
 	// maxLags and maxWork bound how far an autocorrelation is followed.
 	maxLags = 200000
 	maxWork = 3e8
@@ -59,7 +60,7 @@ func promiseOf(m *estimator.Model, l, f *mat.Dense, cov mat.Matrix, r mat.Matrix
 	// By Cayley and Hamilton, n zeros in a row are zeros for ever.
 	quiet, most := 0, min(maxLags, int(maxWork)/(n*n*p))
 	next := mat.NewDense(n, p, nil)
-	for j := 0; j < most && quiet <= n; j++ {
+	for j := 0; j < most && (quiet <= n || j < lags); j++ {
 		g := mat.NewDense(p, p, nil)
 		g.Mul(m.C, &x)
 		pr.gamma = append(pr.gamma, g)
@@ -70,7 +71,7 @@ func promiseOf(m *estimator.Model, l, f *mat.Dense, cov mat.Matrix, r mat.Matrix
 		next.Mul(f, &x)
 		x.Copy(next)
 	}
-	pr.gamma = pr.gamma[:len(pr.gamma)-min(quiet, len(pr.gamma))]
+	pr.gamma = pr.gamma[:max(len(pr.gamma)-quiet, min(len(pr.gamma), lags))]
 	return pr
 }
 

@@ -78,6 +78,7 @@ func Open(ctx context.Context, src io.ReadSeeker, l *Layout, o Options) (*Log, e
 	if err := r.open(src, l, o); err != nil {
 		return nil, err
 	}
+	r.check = true
 	var p pace
 	for {
 		if r.count%4096 == 0 && ctx.Err() != nil {
@@ -94,7 +95,11 @@ func Open(ctx context.Context, src io.ReadSeeker, l *Layout, o Options) (*Log, e
 	}
 	p.settle()
 	if r.count < 2 {
-		return nil, r.fault("", fmt.Sprintf("%d rows below the header", r.count), "expected at least 2")
+		rows := fmt.Sprintf("%d rows", r.count)
+		if r.count == 1 {
+			rows = "1 row"
+		}
+		return nil, r.fault("", rows+" below the header", "expected at least 2")
 	}
 	if err := g.checkPace(&p); err != nil {
 		return nil, err
@@ -127,7 +132,7 @@ func (g *Log) checkPace(p *pace) error {
 		step = want
 	}
 	if !(p.longest.span/step <= maxGap) {
-		return g.file.fault(fmt.Sprintf("line %d", p.longest.line), fmt.Sprintf("a gap of %g s", p.longest.span), fmt.Sprintf("expected at most %d sample periods; cut the log there", maxGap))
+		return g.file.fault(fmt.Sprintf("line %d", p.longest.line), fmt.Sprintf("a gap of %.6g s", p.longest.span), fmt.Sprintf("expected at most %d sample periods; cut the log there", maxGap))
 	}
 	if g.opt.Resample {
 		return nil
@@ -154,6 +159,7 @@ func (g *Log) Samples() (Source, error) {
 	if _, err := g.src.Seek(g.start, io.SeekStart); err != nil {
 		return nil, fmt.Errorf("reading a log again: %w", err)
 	}
+	g.file.check = false
 	if err := g.file.open(g.src, g.layout, g.opt); err != nil {
 		return nil, err
 	}
@@ -177,8 +183,8 @@ func (p *paced) Next() (*Sample, error) {
 		return nil, err
 	}
 	s.Missing = 0
-	if d := s.T - p.last; p.begun && d > 1.5*p.period {
-		s.Missing = int(math.Min(periodsIn(d, p.period), maxGap)) - 1
+	if p.begun {
+		s.Missing = int(periodsIn(s.T-p.last, p.period)) - 1
 	}
 	p.last, p.begun = s.T, true
 	return s, nil

@@ -33,11 +33,12 @@ var tens = [...]float64{1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 
 
 // number reads a decimal number: digits with a point, a sign and an exponent, as
 // strconv.ParseFloat does, but neither hexadecimal nor underscores nor infinity.
-// An empty field and NaN, in any case, give NaN. Space around it is no matter.
+// An empty field and NaN, in any case, give NaN. Space around it is no matter. With
+// rough true, only whether it is a number counts, not which.
 //
 // Up to 15 digits and a power of ten that is exact need one rounding only
 // (Clinger 1990); the rest is strconv's.
-func number(b []byte) (float64, bool) {
+func number(b []byte, rough bool) (float64, bool) {
 	b = trimSpace(b)
 	if len(b) == 0 {
 		return math.NaN(), true
@@ -87,6 +88,9 @@ func number(b []byte) (float64, bool) {
 			return 0, false
 		}
 		exponent += e
+	}
+	if rough && exponent > -200 && exponent < 200 && len(b) < 60 {
+		return float64(mantissa), true
 	}
 	if digits > 19 || mantissa >= 1<<53 || exponent < -22 || exponent > 22 {
 		f, err := strconv.ParseFloat(string(b), 64)

@@ -50,7 +50,7 @@ func (p *pace) add(t float64, line int) {
 	}
 }
 
-// settle takes the median and counts what came before.
+// settle takes the median, the lower of two, and counts what came before.
 func (p *pace) settle() {
 	if p.median > 0 || len(p.first) == 0 {
 		return
@@ -60,7 +60,7 @@ func (p *pace) settle() {
 		spans[i] = d.span
 	}
 	slices.Sort(spans)
-	p.median = (spans[len(spans)/2] + spans[(len(spans)-1)/2]) / 2
+	p.median = spans[(len(spans)-1)/2]
 	for _, d := range p.first {
 		p.count(d)
 	}
@@ -73,14 +73,18 @@ func (p *pace) count(d interval) {
 	}
 	k := periodsIn(d.span, p.median)
 	p.periods += k
-	p.missing += int64(min(k, maxGap)) - 1
+	p.missing += int64(k) - 1
 	rest := d.span - k*p.median
 	p.low, p.high = math.Min(p.low, rest), math.Max(p.high, rest)
 }
 
-// periodsIn is the whole number of sample periods that an interval stands for.
+// periodsIn is the whole number of sample periods that an interval stands for, at
+// most maxGap.
 func periodsIn(span, period float64) float64 {
-	return math.Max(1, math.Round(span/period))
+	if k := math.Round(span / period); k < maxGap {
+		return math.Max(1, k)
+	}
+	return maxGap
 }
 
 // period is the mean over all sample periods.

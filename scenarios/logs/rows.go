@@ -70,6 +70,7 @@ type rows struct {
 	references []column
 	slot       []int // per column, its place in references
 
+	check bool // nothing but times is read, the rest is checked
 	now   Sample
 	count int64
 	lost  []int64 // per sensor
@@ -82,7 +83,7 @@ type rows struct {
 func (r *rows) open(src io.Reader, l *Layout, o Options) error {
 	r.layout, r.opt = l, o
 	if o.InputLag < -maxLag || o.InputLag > maxLag {
-		return r.fault("input lag", fmt.Sprintf("%d rows", o.InputLag), fmt.Sprintf("expected at most %d", maxLag))
+		return r.fault("input lag", fmt.Sprintf("%d rows", o.InputLag), fmt.Sprintf("expected at most %d either way", maxLag))
 	}
 	r.split.reset(src)
 	header, err := r.split.next()
@@ -128,7 +129,7 @@ func (r *rows) checkHeader(header [][]byte) error {
 	}
 	numeric := true
 	for _, f := range header {
-		if v, ok := number(f); !ok || math.IsNaN(v) {
+		if v, ok := number(f, true); !ok || math.IsNaN(v) {
 			numeric = false
 		}
 	}
@@ -158,7 +159,7 @@ func (r *rows) next() error {
 		if c.kind == passedOver {
 			continue
 		}
-		v, ok := number(fields[i])
+		v, ok := number(fields[i], r.check && c.kind != timeColumn)
 		if !ok {
 			return r.notNumber(c, fields[i])
 		}

@@ -37,7 +37,11 @@ func (s Start) vector(m *estimator.Model) ([]float64, error) {
 	case s.FirstSample:
 		return nil, &plants.Error{Where: "start", Wrong: "both a state and the first sample", Expected: "expected one of them"}
 	case len(s.State) != n && len(s.State) != own:
-		return nil, &plants.Error{Where: "start", Wrong: fmt.Sprintf("%d numbers", len(s.State)), Expected: fmt.Sprintf("expected one per state: %d", own)}
+		numbers := fmt.Sprintf("%d numbers", len(s.State))
+		if len(s.State) == 1 {
+			numbers = "1 number"
+		}
+		return nil, &plants.Error{Where: "start", Wrong: numbers, Expected: fmt.Sprintf("expected one per state: %d", own)}
 	}
 	for i, v := range s.State {
 		if math.IsNaN(v) || math.IsInf(v, 0) {
