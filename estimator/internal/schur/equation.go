@@ -16,7 +16,7 @@ type equation struct {
 	turnedZ  blas64.General
 	r        [2][]float64
 	t, z     blas64.General // the factors in use
-	size     float64        // largest entry of T
+	size     float64        // n times the largest entry of T
 	discrete bool
 }
 
@@ -91,7 +91,7 @@ func (e *equation) prepare(f *Form, discrete, adjoint bool) {
 		}
 		e.t, e.z = e.turnedT, e.turnedZ
 	}
-	e.size = largest(f.t)
+	e.size = float64(n) * largest(f.t)
 }
 
 // turn sets x to Zᵀ (Q + Qᵀ)/2 Z, made symmetric.
@@ -179,6 +179,9 @@ func (e *equation) lyapunovColumn(first, last int) bool {
 		if !sys.solve() {
 			return false
 		}
+		if top == first {
+			sys.symmetrise()
+		}
 		for i := top; i <= bottom; i++ {
 			for j := first; j <= last; j++ {
 				x[j*n+i] = sys.get(i-top, j-first)
@@ -221,6 +224,9 @@ func (e *equation) steinColumn(first, last int) bool {
 		sys.stein(e.t, top, bottom, first, last)
 		if !sys.solve() {
 			return false
+		}
+		if top == first {
+			sys.symmetrise()
 		}
 		for i := top; i <= bottom; i++ {
 			for j := first; j <= last; j++ {

@@ -15,7 +15,6 @@ import (
 	"math"
 
 	"gonum.org/v1/gonum/blas/blas64"
-	"gonum.org/v1/gonum/lapack"
 	"gonum.org/v1/gonum/lapack/gonum"
 )
 
@@ -105,8 +104,7 @@ func (f *Form) reduce() bool {
 	for i := 2; i < n; i++ {
 		clear(f.t.Data[i*n : i*n+i-1])
 	}
-	return impl.Dhseqr(lapack.EigenvaluesAndSchur, lapack.SchurOrig, n, 0, n-1,
-		f.t.Data, n, f.wr, f.wi, f.z.Data, n, f.work, len(f.work)) == 0
+	return f.francis()
 }
 
 // reset sizes the workspace.
@@ -125,13 +123,11 @@ func (f *Form) reset(n int) {
 		return
 	}
 	var need [1]float64
-	length := max(1, 11*n)
+	length := n
 	impl.Dgehrd(n, 0, n-1, f.t.Data, n, f.tau, need[:], -1)
 	length = max(length, int(need[0]))
 	impl.Dorghr(n, 0, n-1, f.z.Data, n, f.tau, need[:], -1)
 	length = max(length, int(need[0]))
-	impl.Dhseqr(lapack.EigenvaluesAndSchur, lapack.SchurOrig, n, 0, n-1,
-		f.t.Data, n, f.wr, f.wi, f.z.Data, n, need[:], -1)
 	f.work = make([]float64, max(length, int(need[0])))
 }
 

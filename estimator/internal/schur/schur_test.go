@@ -3,6 +3,7 @@ package schur_test
 import (
 	"errors"
 	"math"
+	"math/cmplx"
 	"math/rand/v2"
 	"testing"
 
@@ -298,20 +299,90 @@ func stable(n int) *mat.Dense {
 	return m
 }
 
-func TestEquationsDoNotAllocate(t *testing.T) {
+func TestNoAllocationAfterFirstUse(t *testing.T) {
 	for _, n := range []int{1, 4, 6, 10, 20} {
 		a := stable(n)
 		q, p := mat.NewDense(n, n, nil), mat.NewDense(n, n, nil)
 		q.Mul(a, a.T())
 		var f schur.Form
-		must(t, f.Factor(a.RawMatrix()))
 		if got := testing.AllocsPerRun(20, func() {
+			must(t, f.Factor(a.RawMatrix()))
 			must(t, f.Lyapunov(p.RawMatrix(), q.RawMatrix()))
 			must(t, f.LyapunovAdjoint(p.RawMatrix(), q.RawMatrix()))
 			must(t, f.Stein(p.RawMatrix(), q.RawMatrix()))
 			must(t, f.SteinAdjoint(p.RawMatrix(), q.RawMatrix()))
+			if _, err := f.Uncertainty(); err != nil {
+				t.Fatal(err)
+			}
 		}); got != 0 {
 			t.Errorf("n = %d: %g allocations", n, got)
+		}
+	}
+}
+
+// Matrices of small whole numbers are often exactly singular, defective or
+// split in blocks, where rounding decides what an eigenvalue is. Whatever is
+// answered must still solve the equation.
+func TestWholeNumbers(t *testing.T) {
+	r := rand.New(rand.NewPCG(1, 2))
+	solved := 0
+	for range 2000 {
+		n := 2 + r.IntN(19)
+		fill := r.Float64()
+		a, q, p := mat.NewDense(n, n, nil), mat.NewDense(n, n, nil), mat.NewDense(n, n, nil)
+		for i := range n {
+			for j := range n {
+				if r.Float64() < fill {
+					a.Set(i, j, float64(r.IntN(3)-1))
+				}
+				q.Set(i, j, 1)
+			}
+		}
+		var f schur.Form
+		must(t, f.Factor(a.RawMatrix()))
+		z := dense(f.Z())
+		var back mat.Dense
+		back.Mul(z, dense(f.T()))
+		back.Mul(&back, z.T())
+		if e := distance(&back, a); e > 2e-14 {
+			t.Fatalf("Z T Zᵀ is off by %g for\n%v", e, mat.Formatted(a))
+		}
+		if f.Lyapunov(p.RawMatrix(), q.RawMatrix()) == nil {
+			solved++
+			if e := residual(a, p, q, false); e > 1e-13 {
+				t.Fatalf("Lyapunov: residual %g for\n%v", e, mat.Formatted(a))
+			}
+		}
+		if f.Stein(p.RawMatrix(), q.RawMatrix()) == nil {
+			if e := residual(a, p, q, true); e > 1e-13 {
+				t.Fatalf("Stein: residual %g for\n%v", e, mat.Formatted(a))
+			}
+		}
+	}
+	if solved < 500 {
+		t.Errorf("only %d solved", solved)
+	}
+}
+
+// The eigenvalues of a cyclic shift are the roots of unity: plain shifts of
+// the iteration leave it as it is.
+func TestCyclicShift(t *testing.T) {
+	for n := 1; n <= 53; n++ {
+		a := mat.NewDense(n, n, nil)
+		for i := range n {
+			a.Set(i, (i+1)%n, 1)
+		}
+		var f schur.Form
+		must(t, f.Factor(a.RawMatrix()))
+		for k := range n {
+			want := cmplx.Rect(1, 2*math.Pi*float64(k)/float64(n))
+			off := math.Inf(1)
+			for _, v := range f.Eigenvalues() {
+				off = min(off, cmplx.Abs(v-want))
+			}
+			if off > 1e-13 {
+				t.Errorf("n = %d: %v is missed by %g", n, want, off)
+			}
 		}
 	}
 }

@@ -31,9 +31,20 @@ func (s *small) set(i, j int, v float64) {
 
 func (s *small) get(i, j int) float64 { return s.rhs[2*i+j] }
 
+// symmetrise averages the off-diagonal entries of a solved diagonal block. The
+// difference is rounding that the equation does not see, but that the columns
+// to come would take for part of the solution.
+func (s *small) symmetrise() {
+	if s.size == 4 {
+		v := s.rhs[1]/2 + s.rhs[2]/2
+		s.rhs[1], s.rhs[2] = v, v
+	}
+}
+
 // lyapunov fills in the operator X → T₁ X + X T₂ᵀ of the diagonal blocks
 // T₁ = top..bottom and T₂ = first..last. A pivot counts as zero where it is
-// below the rounding of the whole of t, whose largest entry is size.
+// below the rounding of the whole of t: ε size, with size n times its largest
+// entry.
 func (s *small) lyapunov(t blas64.General, top, bottom, first, last int, size float64) {
 	n := t.Stride
 	s.tiny = eps * size
