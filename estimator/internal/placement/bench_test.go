@@ -96,3 +96,39 @@ func BenchmarkRobustWarm(b *testing.B) {
 		})
 	}
 }
+
+func BenchmarkLeastNoise(b *testing.B) {
+	for _, start := range []string{"cold", "warm"} {
+		for _, n := range []int{4, 6, 10} {
+			b.Run(fmt.Sprint(start, "/n=", n), func(b *testing.B) {
+				a, c, poles := plant(n, 2, 3, 0.6)
+				w, r, l := zeros(n, n), zeros(2, 2), zeros(n, 2)
+				weights := make([]float64, n)
+				for i := range n {
+					w.Data[i*n+i], weights[i] = 1, 1
+				}
+				r.Data[0], r.Data[3] = 0.1, 0.2
+				there := append([]complex128(nil), poles...)
+				there[0] *= 1.02
+				if imag(there[0]) != 0 {
+					there[1] *= 1.02
+				}
+				var s placement.Solver
+				var warm *placement.Warm
+				if start == "warm" {
+					warm = new(placement.Warm)
+				}
+				b.ReportAllocs()
+				for i := 0; b.Loop(); i++ {
+					list := poles
+					if i%2 == 1 {
+						list = there
+					}
+					if _, err := s.LeastNoise(l, a, c, w, r, weights, list, false, warm); err != nil {
+						b.Fatal(err)
+					}
+				}
+			})
+		}
+	}
+}

@@ -41,7 +41,7 @@ type stopping struct {
 func (r *robust) descend(rule stopping, carried bool) (f float64, steps int, done bool) {
 	m := &r.descent
 	m.reset(r.free, len(r.frames))
-	f = r.measure(rule.squarings)
+	f = r.value(rule.squarings)
 	if r.free == 0 || math.IsInf(f, 1) {
 		return f, 0, r.free == 0
 	}
@@ -123,7 +123,7 @@ func (r *robust) search(squarings int, f, slope, reach float64) (t, next float64
 	t = min(1, reach)
 	for range 25 {
 		r.move(m.saved, m.d, t)
-		next = r.measure(squarings)
+		next = r.value(squarings)
 		if !(next <= f+1e-4*t*slope) {
 			high = t
 		} else {
@@ -145,7 +145,7 @@ func (r *robust) search(squarings int, f, slope, reach float64) (t, next float64
 	}
 	if low > 0 {
 		r.move(m.saved, m.d, low)
-		next = r.measure(squarings)
+		next = r.value(squarings)
 		r.pullBack(m.gNext)
 		return low, next, true
 	}

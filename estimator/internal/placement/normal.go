@@ -64,6 +64,7 @@ func (r *robust) normalVectors(warm *Warm) {
 		}
 		return 0
 	})
+	basis := slices.Clone(r.groups[0].t) // any basis of the whole space
 	at := 0
 	for _, i := range order {
 		g := &r.groups[i]
@@ -82,6 +83,7 @@ func (r *robust) normalVectors(warm *Warm) {
 			}
 			at += 2
 		}
+		complete(g.t, basis, g.m, n, n)
 	}
 }
 

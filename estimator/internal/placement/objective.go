@@ -4,9 +4,19 @@ import "math"
 
 // power is the exponent q of the measure below; squarings of a matrix reach it.
 const (
-	powerRough = 0 // q = 1: the Frobenius condition number
-	powerFine  = 4 // q = 16
+	powerRough = 0  // q = 1: the Frobenius condition number
+	powerFine  = 4  // q = 16
+	powerNoise = -1 // not a power: the noise takes the measure's place
 )
+
+// value is what a descent minimises: the measure below with the given squarings, or
+// the noise.
+func (r *robust) value(squarings int) float64 {
+	if squarings == powerNoise {
+		return r.noise.measure(r)
+	}
+	return r.measure(squarings)
+}
 
 // measure computes f = (log tr Gᑫ + log tr G⁻ᑫ) / 2q with G = XᵀX, q = 2^squarings,
 // and its gradient with respect to X. exp f bounds the 2-norm condition number of

@@ -21,6 +21,7 @@ var (
 	ErrPairs        = errors.New("a complex pole has no conjugate partner")
 	ErrUnobservable = errors.New("the sensors do not see every mode")
 	ErrSensors      = errors.New("the sensors are linearly dependent")
+	ErrUnstable     = errors.New("the noise of an unstable estimator has no limit")
 	ErrNotReached   = errors.New("the poles are not reached in double precision")
 )
 
@@ -30,6 +31,8 @@ type Info struct {
 	// eigenvectors of A − L C; NaN where a wanted multiplicity exceeds the
 	// attainable number of eigenvectors.
 	Condition float64
+	// Cost is Σ weightsᵢ Pᵢᵢ of LeastNoise; 0 from Robust.
+	Cost float64
 	// Iterations counts the steps of the descent, over all starts.
 	Iterations int
 	// Converged is false where the descent was cut short; the gain still gives
@@ -42,6 +45,7 @@ type Info struct {
 type Solver struct {
 	one    single
 	robust robust
+	noise  noise
 	check  checker
 	list   []pole
 	used   []bool
@@ -98,7 +102,8 @@ func finite(g blas64.General) bool {
 }
 
 // pairUp writes the poles to list with each conjugate pair as one entry, in the
-// order given. Partners may differ by 1e-9 relative; their mean counts.
+// order given. Partners may differ by 1e-9 relative; their mean counts. An imaginary
+// part of rounding size counts as zero.
 func (s *Solver) pairUp(poles []complex128) error {
 	s.list = s.list[:0]
 	s.used = grow(s.used, len(poles))
@@ -107,7 +112,7 @@ func (s *Solver) pairUp(poles []complex128) error {
 		if s.used[i] {
 			continue
 		}
-		if imag(v) == 0 {
+		if math.Abs(imag(v)) <= 0x1p-50*math.Abs(real(v)) {
 			s.list = append(s.list, pole{at: complex(real(v), 0)})
 			continue
 		}

@@ -29,6 +29,8 @@ type robust struct {
 	gamma, closed, residual []float64
 	pivot                   []int
 	descent                 descent
+	plain, quietest         []complex128 // frames, while LeastNoise runs
+	noise                   *noise       // set while LeastNoise runs
 }
 
 func (r *robust) reset(n, p int) {

@@ -151,3 +151,24 @@ func TestWarmOfOtherSize(t *testing.T) {
 		}
 	}
 }
+
+// With as many sensors as states a drag keeps the eigenvectors that it started with,
+// even where the poles change their order.
+func TestDragWithFullMeasurement(t *testing.T) {
+	var s placement.Solver
+	a, _, _ := plant(3, 1, 9, 0.6)
+	c := general([][]float64{{1, 0, 0}, {0.5, 1, 0}, {0, 0.3, 1}})
+	var w placement.Warm
+	l, before := zeros(3, 3), zeros(3, 3)
+	for k := range 101 {
+		x := 0.02 * float64(k)
+		if _, err := s.Robust(l, a, c, []complex128{complex(-1-x, 0), -2, -4}, &w); err != nil {
+			t.Fatal(err)
+		}
+		// The change of A − L C is 0.02 along one unit vector; ‖C⁻¹‖ is below 2.
+		if d := distance(l, before); k > 0 && d > 0.04 {
+			t.Errorf("step %d: the gain moves by %g", k, d)
+		}
+		before = copyOf(l)
+	}
+}
