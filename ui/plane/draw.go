@@ -144,8 +144,11 @@ func (p *pen) rays() {
 		}
 		if im := float64(p.w.H/2-top) * p.w.DY; im > 0 {
 			label := strconv.FormatFloat(zeta, 'g', 2, 64)
+			if p.w.W >= 70 {
+				label = "damping " + label
+			}
 			col := p.w.Column(-slope * im)
-			p.text(max(col-1, 0), top, label)
+			p.text(max(col-len(label)+2, 0), top, label)
 		}
 	}
 }

@@ -1,6 +1,8 @@
 package readings
 
 import (
+	"fmt"
+
 	"polewright/ui/canvas"
 	"polewright/ui/theme"
 )
@@ -41,7 +43,12 @@ func Draw(c *canvas.Canvas, x, y, w, h int, f Facts, t *theme.Theme) {
 		at += gap
 	}
 	if hidden {
-		c.Right(x+w, y+h-1, "r shows the rest", theme.Faint)
+		text, ink := "r shows the rest", theme.Faint
+		if f.Design != nil && len(f.Design.Warnings) > 0 {
+			n := len(f.Design.Warnings)
+			text, ink = fmt.Sprintf("%d warning%s, r shows the rest", n, plural(n)), theme.Trouble
+		}
+		c.Right(x+w, y+h-1, text, ink)
 	}
 }
 
@@ -71,7 +78,7 @@ func title(c *canvas.Canvas, x, y, w int, s Section, late bool, g *theme.Glyphs)
 // Draw1 draws one row in w cells: label, value before its unit, and at the right
 // edge the tail.
 func Draw1(c *canvas.Canvas, x, y, w int, r Row, ink theme.Ink, late bool, g *theme.Glyphs) {
-	valueEnd := w - 10
+	valueEnd := w - 11
 	label := theme.Faint
 	if ink == theme.Text && r.Value == "" {
 		label = theme.Text

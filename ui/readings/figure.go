@@ -29,7 +29,7 @@ func Figure(v, ref float64, g *theme.Glyphs) string {
 		return "unlimited"
 	}
 	d := Decimals(ref)
-	if size := math.Abs(v); size != 0 && (size >= 1e6 || size < 10*math.Pow10(-d)) {
+	if size := math.Abs(v); size != 0 && (size >= 1e6 || size < math.Pow10(-d)) {
 		return strconv.FormatFloat(v, 'e', 2, 64)
 	}
 	return strconv.FormatFloat(v, 'f', d, 64)

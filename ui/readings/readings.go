@@ -5,6 +5,7 @@ package readings
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -40,8 +41,8 @@ type Facts struct {
 	Analysis *estimator.Analysis // nil before the first answer
 	Design   *estimator.Design   // nil before the first answer
 	Limits   []Limit
-	State    int  // whose traces are shown
-	Late     bool // the figures are older than asked for
+	Cell     float64 // width of a cell of the plane: places are shown to a tenth of it
+	Late     bool    // the figures are older than asked for
 }
 
 // Row is one figure.
@@ -88,14 +89,18 @@ func held(f Facts, g *theme.Glyphs) Section {
 	case h.Here > 1:
 		s.Note = fmt.Sprintf("%d poles here", h.Here)
 	case h.OnFloor:
-		s.Note = "on the floor's"
+		s.Note = "at a floor pole"
 	}
 	d := poles.Describe(h.At, period)
-	ref, slow := scales(f)
+	fast, slow := scales(f)
+	ref := min(10*f.Cell, fast)
+	if f.Plane == targets.Z {
+		ref = slow
+	}
 	place, unit := "z = 0, no s", ""
 	if p, ok := targets.Shown(h.At, f.Plane, period); ok {
 		if f.Plane == targets.Z {
-			place = Place(p, h.Pair, 0.1, g)
+			place = Place(p, h.Pair, min(10*f.Cell, 0.1), g)
 		} else {
 			place, unit = Place(p, h.Pair, ref, g), "rad/s"
 		}
@@ -263,7 +268,7 @@ func limits(f Facts, g *theme.Glyphs) Section {
 
 func loop(f Facts, g *theme.Glyphs) Section {
 	l := f.Design.Loop
-	s := Section{Title: "loop with the controller", Figures: true}
+	s := Section{Title: "margins of the loop", Figures: true}
 	if !l.Stable {
 		s.Note = "unstable"
 	}
@@ -271,16 +276,17 @@ func loop(f Facts, g *theme.Glyphs) Section {
 		if math.IsInf(v, 0) {
 			return "none"
 		}
-		return Fixed(v, 1, g)
+		return fmt.Sprintf("%+.1f", v)
 	}
 	s.Rows = []Row{
-		{Label: "phase margin", Value: Fixed(l.PhaseMargin, 1, g), Unit: "deg"},
-		{Label: "gain margin", Value: db(l.GainMarginBelow) + " " + db(l.GainMarginAbove), Unit: "dB"},
-		{Label: "delay margin", Value: Fixed(l.DelayMargin*1000, 2, g), Unit: "ms"},
+		{Label: "phase", Value: Fixed(l.PhaseMargin, 1, g), Unit: "deg"},
+		{Label: "gain", Value: db(l.GainMarginBelow) + " " + db(l.GainMarginAbove), Unit: "dB"},
+		{Label: "delay", Value: Fixed(l.DelayMargin*1000, 2, g), Unit: "ms"},
 		{Label: "sensitivity", Value: Fixed(l.SensitivityPeak, 2, g), Unit: "peak"},
 	}
 	if l.DelayMarginSamples >= 0 {
-		s.Rows[2].Tail = fmt.Sprintf("%d samples", l.DelayMarginSamples)
+		samples := Row{Value: strconv.Itoa(l.DelayMarginSamples), Unit: "samples"}
+		s.Rows = slices.Insert(s.Rows, 3, samples)
 	}
 	return s
 }

@@ -134,8 +134,11 @@ func (m *Model) showState(step int) tea.Cmd {
 	if m.mode == traces.Innovation {
 		n = p
 	}
-	m.trace = ((m.trace+step)%n + n) % n
+	if step != 0 {
+		m.trace = ((m.trace+step)%n + n) % n
+	}
 	m.newRun()
+	m.dirty |= tracesRegion
 	return nil
 }
 

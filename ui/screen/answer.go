@@ -61,6 +61,9 @@ func (m *Model) answer(a *desk.Answer) tea.Cmd {
 	if a.Stage >= desk.Traced {
 		m.run, m.runGen = a.Run, a.Gen
 		m.newRun()
+		if !m.cfg.Calm || first || !m.resting {
+			m.dirty |= tracesRegion
+		}
 	}
 	if a.Gen == m.gen {
 		m.upToDate(a)
@@ -76,13 +79,15 @@ func (m *Model) answer(a *desk.Answer) tea.Cmd {
 
 // upToDate notes that the newest request is answered, as far as the stage goes.
 func (m *Model) upToDate(a *desk.Answer) {
+	if m.late {
+		m.dirty |= tracesRegion
+	}
 	m.late, m.failure = false, nil
 	if a.Stage >= desk.Traced {
 		m.pending = time.Time{}
 	}
 	m.now.answer, m.now.limits = a, m.limits
 	m.now.run = a.Run
-	m.dirty |= tracesRegion
 	if m.keepWanted && a.Stage >= desk.Traced {
 		m.keepWanted = false
 		m.keep()
@@ -171,7 +176,6 @@ func (m *Model) newRun() {
 			m.axes[key] = traces.Axes(curves)
 		}
 	}
-	m.dirty |= tracesRegion
 }
 
 // settleAxes fits the axes that no longer serve.

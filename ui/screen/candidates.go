@@ -91,6 +91,7 @@ func (m *Model) recall(i int) tea.Cmd {
 		if c.Run != nil {
 			m.run, m.runGen = c.Run, m.gen
 			m.newRun()
+			m.dirty |= tracesRegion
 		}
 	}
 	m.say("candidate " + c.Letter)

@@ -203,6 +203,7 @@ func (m *Model) restore() tea.Cmd {
 	if m.now.run != nil {
 		m.run, m.runGen = m.now.run, m.gen
 		m.newRun()
+		m.dirty |= tracesRegion
 	}
 	return cmd
 }

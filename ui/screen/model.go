@@ -137,7 +137,7 @@ func (m *Model) heldPlace() (complex128, bool) {
 func (m *Model) facts() readings.Facts {
 	f := readings.Facts{
 		Bench: m.cfg.Work.Bench, Plane: m.plane, Analysis: m.analysis, Design: m.shown, Limits: m.limits,
-		State: m.trace, Late: m.failure != nil || m.late && m.shownGen < m.gen,
+		Cell: m.window.DX, Late: m.failure != nil || m.late && m.shownGen < m.gen,
 	}
 	t, fixed, ok := m.heldTarget()
 	if !ok {

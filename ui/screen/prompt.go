@@ -96,6 +96,7 @@ func (m *Model) openPrompt(label, text string, done func(m *Model, text string) 
 // promptKey gives a key to the prompt.
 func (m *Model) promptKey(name string, text rune) tea.Cmd {
 	m.dirty |= statusRegion
+	m.say("")
 	p := *m.prompt
 	switch {
 	case name == "esc":

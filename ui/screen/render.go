@@ -41,7 +41,8 @@ func (m *Model) refresh() {
 		return
 	}
 	if m.lay.tooSmall {
-		m.frame = fmt.Sprintf("This terminal is %dx%d; polewright needs at least %dx%d.", m.w, m.h, leastWidth, leastHeight)
+		text := fmt.Sprintf("This terminal is %dx%d; polewright needs at least %dx%d.", m.w, m.h, leastWidth, leastHeight)
+		m.frame = strings.Join(canvas.Wrap(text, m.w), "\n")
 		m.dirty = 0
 		return
 	}
@@ -215,7 +216,7 @@ func sensor(names []string, i int) string {
 func (m *Model) status() string {
 	c, g := m.line(), &m.theme.Glyphs
 	switch {
-	case m.prompt != nil && m.message == "" || m.prompt != nil && !m.trouble:
+	case m.prompt != nil:
 		m.drawPrompt(c)
 	case m.question != nil:
 		c.Text(0, 0, canvas.Cut(m.question.text, m.w, g.Ellipsis), theme.Title)
@@ -228,8 +229,8 @@ func (m *Model) status() string {
 	}
 	first := c.Lines(m.theme, true)[0]
 	c = m.line()
-	if m.prompt != nil && m.trouble && m.message != "" {
-		m.drawPrompt(c)
+	if m.prompt != nil && m.message != "" { // why what was typed is refused
+		c.Text(0, 0, canvas.Cut(m.message, m.w, g.Ellipsis), theme.Trouble)
 	} else {
 		m.hints(c)
 	}
@@ -250,7 +251,7 @@ func (m *Model) drawPrompt(c *canvas.Canvas) {
 // hints are the keys that serve now, as many as fit.
 func (m *Model) hints(c *canvas.Canvas) {
 	type hint struct{ key, does string }
-	list := []hint{{"Tab", "next"}, {m.theme.Glyphs.Arrows, "move"}, {"=", "place"}, {"f", "floor"}, {"u", "undo"}, {"a", "keep"}, {"v", "compare"}, {"z", "plane"}, {"s", "save"}, {"?", "help"}}
+	list := []hint{{"Tab", "next"}, {m.theme.Glyphs.Arrows, "move"}, {"=", "place"}, {"u", "undo"}, {"?", "help"}, {"a", "keep"}, {"v", "compare"}, {"s", "save"}, {"z", "plane"}, {"f", "floor"}, {"p", "patterns"}, {"< >", "speed"}, {"r", "readings"}}
 	switch {
 	case m.prompt != nil:
 		list = []hint{{"Enter", "takes it"}, {"Esc", "leaves it"}}

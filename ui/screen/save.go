@@ -65,11 +65,11 @@ func (m *Model) savedResult(msg savedMsg) tea.Cmd {
 	quit := m.quitAfterSave
 	switch {
 	case errors.Is(msg.err, errExists):
-		text := filepath.Base(msg.file) + " exists already"
+		text := filepath.Base(msg.file) + " exists"
 		if msg.file == m.file {
 			text = filepath.Base(msg.file) + " was changed by someone else"
 		}
-		m.question = &question{text: text + ".  r replace it   a another name   n leave it", choices: map[string]func(m *Model) tea.Cmd{
+		m.question = &question{text: text + ".  r replace   a another name   n leave", choices: map[string]func(m *Model) tea.Cmd{
 			"n": stay,
 			"r": func(m *Model) tea.Cmd { m.file = ""; return m.write(msg.file, true) },
 			"a": func(m *Model) tea.Cmd { m.file = ""; return m.save() },

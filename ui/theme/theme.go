@@ -63,13 +63,14 @@ func New(o Options) *Theme {
 	r.SetHasDarkBackground(o.Dark)
 	r.SetColorProfile([]termenv.Profile{termenv.Ascii, termenv.ANSI, termenv.ANSI256, termenv.TrueColor}[min(o.Depth, True)])
 	// Blue and orange stay apart in every common kind of colour blindness. The
-	// greys keep a contrast of 4.5 against black and against white (computed by
-	// the rule of WCAG 2.1).
-	faint := lipgloss.CompleteColor{TrueColor: "#767676", ANSI256: "243", ANSI: "8"}
+	// greys, #767676 and #808080, keep a contrast of 4.5 against white and against
+	// black (by the rule of WCAG 2.1); as numbers of the fixed palette they take
+	// fewer bytes, and there are many of them.
+	faint := lipgloss.CompleteColor{TrueColor: "243", ANSI256: "243", ANSI: "8"}
 	hold := lipgloss.CompleteColor{TrueColor: "#00598f", ANSI256: "25", ANSI: "4"}
 	trouble := lipgloss.CompleteColor{TrueColor: "#a34700", ANSI256: "130", ANSI: "1"}
 	if o.Dark {
-		faint.TrueColor, faint.ANSI256 = "#808080", "244"
+		faint.TrueColor, faint.ANSI256 = "244", "244"
 		hold = lipgloss.CompleteColor{TrueColor: "#62b8f0", ANSI256: "75", ANSI: "14"}
 		trouble = lipgloss.CompleteColor{TrueColor: "#f0a030", ANSI256: "214", ANSI: "11"}
 	}

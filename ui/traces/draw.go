@@ -141,10 +141,11 @@ func plot(c *canvas.Canvas, x, top, width, rows int, p Panel, g *theme.Glyphs) {
 			col := 0
 			for _, ch := range line {
 				if ch != ' ' {
-					free := c.At(x+1+col, top+r) == ' '
-					if i < last || p.Mode != Both || free || col%2 == 0 {
-						c.Set(x+1+col, top+r, ch, in)
+					at, row := x+1+col, top+r
+					if under := c.At(at, row); i == last && p.Mode == Both && under != ' ' && col%2 == 1 {
+						ch = under // shared: both show, in one ink
 					}
+					c.Set(at, row, ch, in)
 				}
 				col++
 			}

@@ -23,7 +23,7 @@ var Marks = []struct {
 	{plane.Fixed, "fixed", "poles that no gain can move: the sensors do not see them"},
 	{plane.Plant, "plant", "the plant's own poles"},
 	{plane.Floor, "floor", "poles of the floor, the best linear estimator if the noise figures are true"},
-	{plane.Controller, "loop", "poles of plant and controller together, as the state feedback alone places them"},
+	{plane.Controller, "control", "poles of plant and controller together, as the state feedback alone places them"},
 }
 
 // Help lists every key, the marks, and the cautions.

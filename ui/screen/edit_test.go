@@ -1,0 +1,311 @@
+package screen_test
+
+import (
+	"errors"
+	"fmt"
+	"io/fs"
+	"math/cmplx"
+	"strings"
+	"testing"
+	"time"
+
+	tea "github.com/charmbracelet/bubbletea"
+
+	"polewright/estimator"
+	"polewright/ui/desk"
+	"polewright/ui/screen"
+)
+
+var (
+	errExist = fmt.Errorf("there is such a file: %w", fs.ErrExist)
+	errTest  = errors.New("no such pattern")
+)
+
+func near(a, b complex128) bool { return cmplx.Abs(a-b) < 1e-9 }
+
+func (r *rig) wantPoles(want ...complex128) {
+	r.t.Helper()
+	got := r.work().Poles
+	if len(got) != len(want) {
+		r.t.Fatalf("%d poles, expected %d", len(got), len(want))
+	}
+	for i := range got {
+		if !near(got[i], want[i]) {
+			r.t.Errorf("pole %d at %v, expected %v", i, got[i], want[i])
+		}
+	}
+}
+
+func (r *rig) wantShown(text string) {
+	r.t.Helper()
+	if !strings.Contains(r.m.View(), text) {
+		r.t.Errorf("%q is not on the screen:\n%s", text, r.m.View())
+	}
+}
+
+func TestMoveAsksForTheMovedPoles(t *testing.T) {
+	r := start(t)
+	before := len(r.asked)
+	r.press("tab", "left")
+	if len(r.asked) != before+1 {
+		t.Fatalf("%d requests for one move", len(r.asked)-before)
+	}
+	q := r.last()
+	if len(q.Poles) != 3 || q.Poles[2] == z(-12) || real(q.Poles[2]) >= real(z(-12)) {
+		t.Errorf("asked for %v", q.Poles)
+	}
+	if q.From == nil || q.Gain != nil {
+		t.Error("a move must continue from the design shown")
+	}
+	if q.Gen <= r.asked[before-1].Gen {
+		t.Error("the number of the request did not grow")
+	}
+}
+
+func TestSeveralLettersAreSeveralKeys(t *testing.T) {
+	one, many := start(t), start(t)
+	one.press("h", "h", "k")
+	many.press("hhk")
+	many.wantPoles(one.work().Poles...)
+}
+
+func TestHeldKeyIsOneUndoStep(t *testing.T) {
+	r := start(t)
+	r.press("left")
+	r.clock = r.clock.Add(500 * time.Millisecond) // the keyboard's first delay
+	r.hold("left", 20)
+	r.press("u")
+	r.wantPoles(z(-8+6i), z(-8-6i), z(-12))
+	r.press("U")
+	if near(r.work().Poles[0], z(-8+6i)) {
+		t.Error("redo did nothing")
+	}
+	r.press("left") // a new step, a second later
+	r.press("u", "u")
+	r.wantPoles(z(-8+6i), z(-8-6i), z(-12))
+}
+
+func TestUndoUsesTheStoredGain(t *testing.T) {
+	r := start(t)
+	stored := r.work().Gain
+	r.press("left")
+	r.reply(desk.Traced)
+	r.press("u")
+	if r.last().Gain != stored {
+		t.Error("undo placed the poles anew")
+	}
+	if r.work().Gain != stored {
+		t.Error("the stored gain is not what is in hand")
+	}
+}
+
+func TestTypedPlace(t *testing.T) {
+	r := start(t)
+	r.press("z") // the plant is continuous: the s-plane was shown; now z
+	r.press("z", "=")
+	r.press("-", "5", "+-", "2", "i", "enter")
+	r.wantPoles(z(-5+2i), z(-5-2i), z(-12))
+	r.press("=", "-", "7", "enter")
+	r.wantShown("a pair is held")
+	r.press("esc")
+	r.timeout()
+	r.press("tab", "=", "10@1", "enter")
+	r.wantShown("no other real pole")
+}
+
+// timeout lets the escape key act.
+func (r *rig) timeout() {
+	r.clock = r.clock.Add(60 * time.Millisecond)
+	time.Sleep(60 * time.Millisecond)
+	r.run()
+}
+
+func TestPatternAndFloor(t *testing.T) {
+	r := start(t)
+	r.press("p", "slow", "enter")
+	r.wantPoles(0.9, 0.92, 0.94)
+	r.press("p", "nothing", "enter")
+	r.wantShown("no such pattern")
+	r.press("ctrl+c", "n", "f")
+	r.wantPoles(analysis.Floor.Poles...)
+	if r.last().Gain != analysis.Floor.Gain {
+		t.Error("the floor is its own gain, not one placed at its poles")
+	}
+}
+
+func TestFirstPolesComeFromTheFirstAnswer(t *testing.T) {
+	r := newRig(t, nil)
+	if r.last().Poles != nil || r.last().Gain != nil {
+		t.Fatal("the first request should leave the choice to the background")
+	}
+	r.press("left")
+	r.wantShown("no poles yet")
+	r.reply(desk.Judged)
+	r.wantPoles(analysis.Floor.Poles...)
+}
+
+func TestOldAnswersAreDropped(t *testing.T) {
+	r := start(t)
+	r.press("left")
+	older := r.last()
+	r.press("left")
+	newer := r.last()
+	r.send(screen.AnswerMsg{Answer: answer(newer, desk.Traced)})
+	frame := r.m.View()
+	r.send(screen.AnswerMsg{Answer: answer(older, desk.Traced)})
+	if r.m.View() != frame {
+		t.Error("an older answer changed the screen")
+	}
+	r.send(screen.AnswerMsg{Answer: desk.Answer{Gen: newer.Gen + 7, Design: answer(newer, desk.Judged).Design}})
+	if r.m.View() != frame {
+		t.Error("an answer to nothing changed the screen")
+	}
+}
+
+func TestLateFiguresAreDimmedNotBlanked(t *testing.T) {
+	r := start(t, colour)
+	r.press("left")
+	soon := r.m.View()
+	r.clock = r.clock.Add(150 * time.Millisecond)
+	time.Sleep(110 * time.Millisecond)
+	r.run()
+	late := r.m.View()
+	if late == soon {
+		t.Fatal("nothing was dimmed")
+	}
+	if strip(late) != strip(soon) {
+		t.Error("dimming changed what is written")
+	}
+	r.reply(desk.Traced)
+	if strings.Count(r.m.View(), "0.454") == 0 && r.m.View() == late {
+		t.Error("the answer did not arrive")
+	}
+}
+
+func TestFailedDesignKeepsTheFiguresAndSaysWhy(t *testing.T) {
+	r := start(t)
+	r.press("left")
+	r.send(screen.AnswerMsg{Answer: desk.Answer{Gen: r.last().Gen, Err: errors.New("the poles coincide")}})
+	r.wantShown("no design: the poles coincide")
+	r.wantShown("settle")
+}
+
+func TestCandidates(t *testing.T) {
+	r := start(t)
+	r.press("a")
+	r.wantShown("kept as A")
+	r.press("left", "a")
+	r.wantShown("as soon as")
+	r.reply(desk.Judged)
+	r.reply(desk.Traced)
+	if w := r.work(); len(w.Candidates) != 2 || w.Candidates[1].Letter != "B" || w.Current != "B" {
+		t.Fatalf("candidates %v, current %q", w.Candidates, w.Current)
+	}
+	gain := r.work().Candidates[0].Design.Gain
+	r.press("1")
+	r.wantPoles(z(-8+6i), z(-8-6i), z(-12))
+	if r.last().Gain != gain || r.work().Current != "A" {
+		t.Error("recall must take the stored gain")
+	}
+	r.press("v", "l", "x", "y")
+	if w := r.work(); len(w.Candidates) != 1 || w.Candidates[0].Letter != "A" {
+		t.Fatalf("after deleting B: %v", w.Candidates)
+	}
+	r.press("q") // leaves the view, not the program
+	r.run()
+	if r.quit {
+		t.Error("q inside a view quit")
+	}
+	r.press("2")
+	r.wantShown("no candidate 2")
+}
+
+func TestFormIsAskedFor(t *testing.T) {
+	r := start(t)
+	r.press("c")
+	if r.last().Form != estimator.Current || r.last().Gain != nil {
+		t.Errorf("asked for %v", r.last())
+	}
+	r.wantShown("current form")
+}
+
+func TestSaveAndQuit(t *testing.T) {
+	r := start(t)
+	r.press("q")
+	r.run()
+	if !r.quit {
+		t.Fatal("nothing is unsaved: q must quit")
+	}
+	r = start(t)
+	r.press("left", "q")
+	r.run()
+	if r.quit {
+		t.Fatal("quit with unsaved work")
+	}
+	r.press("n", "ctrl+s")
+	r.wantShown("Test hoist.session.json")
+	r.press("enter")
+	r.run()
+	if _, ok := r.saved["Test hoist.session.json"]; !ok {
+		t.Fatalf("saved %v", r.saved)
+	}
+	r.wantShown("saved Test hoist.session.json")
+	r.press("left", "s")
+	r.run()
+	r.press("ctrl+c")
+	r.run()
+	if !r.quit {
+		t.Error("all is saved: quit must not ask")
+	}
+}
+
+func TestSaveNeverReplacesUnasked(t *testing.T) {
+	r := start(t)
+	r.exist["Test hoist.session.json"] = true
+	r.press("left", "s", "enter")
+	r.run()
+	r.wantShown("exists")
+	if len(r.saved) > 0 {
+		t.Fatal("replaced unasked")
+	}
+	r.press("n", "s", "enter")
+	r.run()
+	r.press("r")
+	r.run()
+	if len(r.saved) != 1 {
+		t.Error("not replaced when told to")
+	}
+	r.press("left", "q", "s")
+	r.run()
+	if !r.quit {
+		t.Error("s at the question should save and quit")
+	}
+}
+
+func TestPasteOutsideAPromptDoesNothing(t *testing.T) {
+	r := start(t)
+	frame := r.m.View()
+	r.send(tea.KeyMsg{Type: tea.KeyRunes, Runes: []rune("hhhhq"), Paste: true})
+	if r.m.View() != frame {
+		t.Error("a paste was taken for keys")
+	}
+	r.press("=")
+	r.send(tea.KeyMsg{Type: tea.KeyRunes, Runes: []rune("-5±2i\x1b\n"), Paste: true})
+	r.press("enter")
+	r.wantPoles(z(-5+2i), z(-5-2i), z(-12))
+}
+
+func TestTinyAndUnknownSizes(t *testing.T) {
+	r := start(t)
+	r.send(tea.WindowSizeMsg{Width: 59, Height: 30})
+	if v := r.m.View(); !strings.Contains(v, "at least") || strings.Contains(v, "\n") {
+		t.Errorf("too small: %q", v)
+	}
+	for w := 1; w < 30; w += 7 {
+		r.send(tea.WindowSizeMsg{Width: w, Height: 3})
+	}
+	r.send(tea.WindowSizeMsg{})
+	if n := strings.Count(r.m.View(), "\n") + 1; n != 24 {
+		t.Errorf("%d lines for an unknown size, expected 24", n)
+	}
+}
