@@ -40,23 +40,22 @@ func (d *Designer) Judge(g Given) (*Design, error) {
 			return nil, fmt.Errorf("the gain: %w", ErrNotFinite)
 		}
 	}
-	var ls, lf *mat.Dense
+	l, lf := g.L, g.Lf
+	if !d.model.Discrete() {
+		lf = nil
+	}
 	switch {
-	case g.Lf != nil && d.model.Discrete():
-		lf = d.scaleGain(g.Lf)
-		ls = new(mat.Dense)
-		ls.Mul(d.a, lf)
-		if g.L != nil {
-			product := ls
-			ls = d.scaleGain(g.L)
-			product.Sub(product, ls)
-			if mat.Norm(product, 2) > 1e-6*mat.Norm(ls, 2) {
-				return nil, fmt.Errorf("the two gains are no pair, A Lf is not L: %w", ErrMethod)
-			}
+	case lf != nil:
+		product := new(mat.Dense)
+		product.Mul(d.model.A, lf)
+		if l == nil {
+			l = product
+			break
 		}
-	case g.L != nil:
-		ls = d.scaleGain(g.L)
-	default:
+		if product.Sub(product, l); mat.Norm(d.scaleGain(product), 2) > 1e-6*mat.Norm(d.scaleGain(l), 2) {
+			return nil, fmt.Errorf("the two gains are no pair, A Lf is not L: %w", ErrMethod)
+		}
+	case l == nil:
 		return nil, fmt.Errorf("no gain was given, expected %d×%d: %w", d.n, d.p, ErrShape)
 	}
 	var wanted []complex128
@@ -67,25 +66,30 @@ func (d *Designer) Judge(g Given) (*Design, error) {
 		}
 		wanted = append(movable, d.pair.fixed...)
 	}
-	return d.judge(ls, lf, wanted)
+	return d.judge(l, lf, wanted)
 }
 
-// judge examines the scaled gain ls. lf is its current form where it is known,
-// wanted the poles asked for where there are any.
-func (d *Designer) judge(ls, lf *mat.Dense, wanted []complex128) (*Design, error) {
-	out := &Design{Form: d.opt.Form, Method: d.opt.Method, WorstError: math.NaN()}
-	if lf == nil && d.model.Discrete() {
-		lf = d.currentGain(ls)
-		if lf == nil && d.opt.Form == Current {
-			return nil, fmt.Errorf("no current-form gain Lf solves A Lf = L: %w", ErrMethod)
-		}
-	}
-	out.Gain = d.unscaleGain(ls)
-	if !finite(out.Gain) {
+// judge examines a gain in the user's units, as it is stored: judging a stored
+// gain again gives the same figures. current is its current form where that is
+// known, wanted the poles asked for where there are any.
+func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design, error) {
+	if !finite(gain) {
 		return nil, fmt.Errorf("the gain for these poles: %w", ErrNotFinite)
 	}
-	if lf != nil {
-		out.GainCurrent = d.unscaleGain(lf)
+	out := &Design{Form: d.opt.Form, Method: d.opt.Method, WorstError: math.NaN()}
+	out.Gain = mat.DenseCopyOf(gain)
+	ls := d.scaleGain(gain)
+	var lf *mat.Dense
+	switch {
+	case current != nil:
+		out.GainCurrent = mat.DenseCopyOf(current)
+		lf = d.scaleGain(current)
+	case d.model.Discrete():
+		if lf = d.currentGain(ls); lf != nil {
+			out.GainCurrent = d.unscaleGain(lf)
+		} else if d.opt.Form == Current {
+			return nil, fmt.Errorf("no current-form gain Lf solves A Lf = L: %w", ErrMethod)
+		}
 	}
 	out.GainNorm = mat.Norm(out.Gain, 2)
 

@@ -96,10 +96,10 @@ func (d *Designer) Place(wanted []complex128, prev *Design) (*Design, error) {
 	}
 	var lf *mat.Dense
 	if d.opt.Form == Current {
-		lf = mat.DenseCopyOf(ls)
-		ls.Mul(d.a, lf)
+		lf = d.unscaleGain(ls)
+		ls.Mul(d.a, mat.DenseCopyOf(ls))
 	}
-	out, err := d.judge(ls, lf, append(movable, d.pair.fixed...))
+	out, err := d.judge(d.unscaleGain(ls), lf, append(movable, d.pair.fixed...))
 	if err != nil {
 		return nil, err
 	}

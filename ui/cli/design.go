@@ -102,6 +102,14 @@ func figure(v float64) string {
 	return fmt.Sprintf("%.5g", v)
 }
 
+// with is a figure with its unit where it is a number.
+func with(v float64, unit string) string {
+	if math.IsNaN(v) || math.IsInf(v, 0) {
+		return figure(v)
+	}
+	return figure(v) + " " + unit
+}
+
 func (t *task) print(w io.Writer, limits []scenarios.LimitResult) error {
 	tw := tabwriter.NewWriter(w, 0, 8, 2, ' ', 0)
 	line := func(format string, args ...any) { fmt.Fprintf(tw, format+"\n", args...) }
@@ -204,9 +212,9 @@ func (t *task) printLoop(line func(string, ...any)) {
 	}
 	line("")
 	line("loop margins at the plant input\t%s", worstInput(t.Model, l))
-	line("gain\t%s dB to %s dB", figure(l.GainMarginBelow), figure(l.GainMarginAbove))
-	line("phase\t%s deg", figure(l.PhaseMargin))
-	line("delay\t%s s", figure(l.DelayMargin))
+	line("gain\t%s to %s", with(l.GainMarginBelow, "dB"), with(l.GainMarginAbove, "dB"))
+	line("phase\t%s", with(l.PhaseMargin, "deg"))
+	line("delay\t%s", with(l.DelayMargin, "s"))
 	line("sensitivity peak\t%s", figure(l.SensitivityPeak))
 	for i, s := range l.InputStd {
 		line("noise on %s\t%s", t.Model.InputNames[i], figure(s))
