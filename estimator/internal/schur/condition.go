@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/cmplx"
 
+	"gonum.org/v1/gonum/blas"
 	"gonum.org/v1/gonum/blas/blas64"
 	"gonum.org/v1/gonum/lapack"
 )
@@ -14,9 +15,10 @@ type condition struct {
 	left, right blas64.General // Dtrevc3's packing: real column, or real and imaginary
 	radius      []float64      // see Uncertainty
 	group       []int          // index of a group's first eigenvalue
-	v           blas64.General // the matrix whose singular values decide
-	s           []float64
+	v           blas64.General // its rows are the vectors whose singular values decide
 	work        []float64
+
+	diagonal, above, tauQ, tauP, one []float64 // of the bidiagonal form
 
 	// For a repeated eigenvalue, 2n×2n where it is complex, else n×n.
 	wide, wideVT, wideS []float64
@@ -110,10 +112,7 @@ func (f *Form) VectorCondition() (float64, error) {
 			filled += added
 		}
 	}
-	if !impl.Dgesvd(lapack.SVDNone, lapack.SVDNone, f.n, f.n, c.v.Data, f.n, c.s, nil, 1, nil, 1, c.work, len(c.work)) {
-		return math.NaN(), ErrNoConvergence
-	}
-	return c.s[0] / c.s[f.n-1], nil
+	return c.ratio(f.n)
 }
 
 func (c *condition) prepare(n int) {
@@ -121,8 +120,11 @@ func (c *condition) prepare(n int) {
 		return
 	}
 	c.left, c.right, c.v = square(n), square(n), square(n)
-	c.radius, c.s = make([]float64, n), make([]float64, n)
+	c.radius = make([]float64, n)
 	c.group = make([]int, n)
+	for _, s := range []*[]float64{&c.diagonal, &c.above, &c.tauQ, &c.tauP, &c.one} {
+		*s = make([]float64, n)
+	}
 	c.work = make([]float64, 10*n) // the least for Dgesvd of 2n×2n; Dtrevc3 needs 3n
 }
 
@@ -172,7 +174,7 @@ func (c *condition) membership(f *Form, g int) (size, partner int) {
 }
 
 // simple writes the left eigenvector of one simple eigenvalue, or of a simple
-// pair, to the columns of v from filled on, and returns how many. A pair v, v̄
+// pair, to the rows of v from filled on, and returns how many. A pair v, v̄
 // becomes √2 Re v, √2 Im v: [v v̄] times a unitary matrix.
 func (c *condition) simple(f *Form, j, filled int) int {
 	n := f.n
@@ -183,15 +185,27 @@ func (c *condition) simple(f *Form, j, filled int) int {
 	}
 	if imag(f.values[j]) == 0 {
 		for i := range n {
-			c.v.Data[i*n+filled] = real(y(i)) / norm
+			c.v.Data[filled*n+i] = real(y(i)) / norm
 		}
 		return 1
 	}
 	for i := range n {
-		c.v.Data[i*n+filled] = math.Sqrt2 * real(y(i)) / norm
-		c.v.Data[i*n+filled+1] = math.Sqrt2 * imag(y(i)) / norm
+		c.v.Data[filled*n+i] = math.Sqrt2 * real(y(i)) / norm
+		c.v.Data[(filled+1)*n+i] = math.Sqrt2 * imag(y(i)) / norm
 	}
 	return 2
+}
+
+// ratio returns the largest over the least singular value of v, which it
+// overwrites: bidiagonal form, then the QR iteration. Asking for one column of
+// singular vectors keeps Dbdsqr from a path that allocates.
+func (c *condition) ratio(n int) (float64, error) {
+	impl.Dgebrd(n, n, c.v.Data, n, c.diagonal, c.above, c.tauQ, c.tauP, c.work, len(c.work))
+	clear(c.one)
+	if !impl.Dbdsqr(blas.Upper, n, 1, 0, 0, c.diagonal, c.above, c.one, 1, nil, 1, nil, 1, c.work) {
+		return math.NaN(), ErrNoConvergence
+	}
+	return c.diagonal[0] / c.diagonal[n-1], nil
 }
 
 func frobenius(m blas64.General) float64 {

@@ -8,8 +8,8 @@ import (
 )
 
 // repeated writes an orthonormal basis of the left eigenspace of the group of
-// size copies that starts at g to the columns of v from filled on. It returns
-// how many columns it wrote: 0 where the eigenspace is too small. A complex
+// size copies that starts at g to the rows of v from filled on. It returns
+// how many rows it wrote: 0 where the eigenspace is too small. A complex
 // group stands for itself and its conjugate.
 func (c *condition) repeated(f *Form, g, size int, isReal bool, filled int) (int, error) {
 	mean, spread := c.mean(f, g, size)
@@ -39,7 +39,7 @@ func (c *condition) repeatedReal(f *Form, mean float64, size, filled int, limit 
 	}
 	for k := range size {
 		for i := range n {
-			c.v.Data[i*n+filled+k] = vt[(n-size+k)*n+i]
+			c.v.Data[(filled+k)*n+i] = vt[(n-size+k)*n+i]
 		}
 	}
 	return size, nil
@@ -82,8 +82,8 @@ func (c *condition) repeatedComplex(f *Form, mean complex128, size, filled int, 
 	orthonormal(c.basis[:2*size], size)
 	for k := range size {
 		for i, v := range c.basis[k] {
-			c.v.Data[i*n+filled+2*k] = math.Sqrt2 * real(v)
-			c.v.Data[i*n+filled+2*k+1] = math.Sqrt2 * imag(v)
+			c.v.Data[(filled+2*k)*n+i] = math.Sqrt2 * real(v)
+			c.v.Data[(filled+2*k+1)*n+i] = math.Sqrt2 * imag(v)
 		}
 	}
 	return 2 * size, nil

@@ -311,7 +311,7 @@ func TestNoAllocationAfterFirstUse(t *testing.T) {
 			must(t, f.LyapunovAdjoint(p.RawMatrix(), q.RawMatrix()))
 			must(t, f.Stein(p.RawMatrix(), q.RawMatrix()))
 			must(t, f.SteinAdjoint(p.RawMatrix(), q.RawMatrix()))
-			if _, err := f.Uncertainty(); err != nil {
+			if _, err := f.VectorCondition(); err != nil {
 				t.Fatal(err)
 			}
 		}); got != 0 {
