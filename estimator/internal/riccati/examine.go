@@ -131,7 +131,11 @@ func correlation(x *mat.Dense) (*mat.SymDense, []int) {
 	for a, i := range kept {
 		for b := a; b < len(kept); b++ {
 			j := kept[b]
-			s.SetSym(a, b, x.At(i, j)/math.Sqrt(x.At(i, i))/math.Sqrt(x.At(j, j)))
+			v := x.At(i, j) / math.Sqrt(x.At(i, i)) / math.Sqrt(x.At(j, j))
+			if math.Abs(v) > 1e100 {
+				return nil, nil
+			}
+			s.SetSym(a, b, v)
 		}
 	}
 	return s, kept

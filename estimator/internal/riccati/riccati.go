@@ -131,11 +131,20 @@ func (p *problem) read(a, c, w, r blas64.General) error {
 				x.Set(i, j, v)
 			}
 		}
+		if size := mat.Max(absolute(x)); size > 0 && (size > 1e100 || size < 1e-100) {
+			return fmt.Errorf("the largest entry of %s has the size %.1g, too far from 1 to work with", m.name, size)
+		}
 		*m.to = x
 	}
 	symmetrise(p.w)
 	symmetrise(p.r)
 	return nil
+}
+
+func absolute(x *mat.Dense) *mat.Dense {
+	var out mat.Dense
+	out.Apply(func(_, _ int, v float64) float64 { return math.Abs(v) }, x)
+	return &out
 }
 
 func symmetrise(x *mat.Dense) {

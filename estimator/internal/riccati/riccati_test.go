@@ -226,3 +226,45 @@ func TestRefuses(t *testing.T) {
 		}
 	}
 }
+
+// Numbers of any size give an answer that meets its definition, or an error;
+// nothing panics.
+func TestAnySize(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		n, p := rapid.IntRange(1, 4).Draw(t, "n"), rapid.IntRange(1, 2).Draw(t, "p")
+		draw := func(r, c int) *mat.Dense {
+			m := mat.NewDense(r, c, nil)
+			wild := rapid.Bool().Draw(t, "wild")
+			unit := math.Pow(10, float64(rapid.IntRange(-110, 110).Draw(t, "unit")))
+			for i := range r {
+				for j := range c {
+					v := float64(rapid.IntRange(-9, 9).Draw(t, "entry")) * unit
+					if wild {
+						v = rapid.Float64().Draw(t, "entry")
+					}
+					m.Set(i, j, v)
+				}
+			}
+			return m
+		}
+		a, c, w, r := draw(n, n), draw(p, n), draw(n, n), draw(p, p)
+		if rapid.Bool().Draw(t, "squares") {
+			var ww, rr mat.Dense
+			ww.Mul(w, w.T())
+			rr.Mul(r, r.T())
+			w, r = &ww, &rr
+		}
+		s, err := run(rapid.Bool().Draw(t, "discrete"), a, c, w, r)
+		if err != nil {
+			return
+		}
+		for _, m := range []*mat.Dense{s.P, s.L} {
+			if norm := mat.Norm(m, 1); math.IsNaN(norm) || math.IsInf(norm, 0) {
+				t.Fatalf("%v", mat.Formatted(m))
+			}
+		}
+		if !(s.Residual < 1e-6) {
+			t.Fatalf("residual %g", s.Residual)
+		}
+	})
+}
