@@ -21,7 +21,8 @@ type System struct {
 var (
 	// ErrShape is returned where the matrices do not fit each other.
 	ErrShape = errors.New("frequency: the matrices do not fit each other")
-	// ErrNotFinite is returned for NaN, infinities and a bad period.
+	// ErrNotFinite is returned for NaN, infinities, a bad period, and where
+	// numbers beyond 1e120 come up.
 	ErrNotFinite = errors.New("frequency: a value is not finite")
 	// ErrUnstable is returned where the system (or the closed loop) has an
 	// eigenvalue on or beyond the stability limit.

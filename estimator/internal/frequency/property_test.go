@@ -201,11 +201,11 @@ func TestMarginsByEigenvalues(t *testing.T) {
 }
 
 func TestPeakGainsByRow(t *testing.T) {
-	for seed := range uint64(20) {
+	for seed := range uint64(60) {
 		r := rand.New(rand.NewPCG(seed, 13))
-		n, out := 1+r.IntN(6), 1+r.IntN(4)
+		n, out := 1+r.IntN(18), 1+r.IntN(4) // certified and scanned
 		sys := System{A: gaussian(r, n, n), B: gaussian(r, n, 2), C: gaussian(r, out, n), D: gaussian(r, out, 2), Period: 0.1}
-		setLimit(t, sys.A, 0.95, true)
+		setLimit(t, sys.A, 1-0.3*math.Pow(10, -3*r.Float64()), true)
 		values, rads, err := PeakGains(sys)
 		if err != nil || len(values) != out || len(rads) != out {
 			t.Fatal(values, rads, err)
@@ -214,7 +214,7 @@ func TestPeakGainsByRow(t *testing.T) {
 			one := sys
 			one.C = blas64.General{Rows: 1, Cols: n, Stride: n, Data: sys.C.Data[i*n:]}
 			one.D = blas64.General{Rows: 1, Cols: 2, Stride: 2, Data: sys.D.Data[i*2:]}
-			if want, _, err := PeakGain(one); err != nil || math.Abs(v-want) > 1e-12*want {
+			if want, _, err := PeakGain(one); err != nil || math.Abs(v-want) > 1e-9*want {
 				t.Errorf("seed %d, output %d: %v, want %v, %v", seed, i, v, want, err)
 			}
 		}

@@ -11,11 +11,27 @@ import (
 
 var impl lapackgonum.Implementation
 
+// tame refuses entries so large that the balancing of package lapack never ends
+// (it does not survive an overflow of a norm), and drops those so small that its
+// powers of two underflow.
+func tame(a dense) error {
+	const huge = 1e120
+	for i, v := range a.v {
+		if !(math.Abs(v) < huge) {
+			return ErrNotFinite
+		}
+		if math.Abs(v) < 1/huge {
+			a.v[i] = 0
+		}
+	}
+	return nil
+}
+
 // eigenvalues returns those of a, which is overwritten. It balances first.
 func eigenvalues(a dense) (re, im []float64, err error) {
 	n := a.r
-	if most := a.largest(); math.IsNaN(most) || math.IsInf(most, 0) {
-		return nil, nil, ErrNotFinite
+	if err := tame(a); err != nil {
+		return nil, nil, err
 	}
 	re, im = make([]float64, n), make([]float64, n)
 	work := make([]float64, max(1, 40*n))
@@ -42,6 +58,9 @@ type response struct {
 func newResponse(m *model) (*response, error) {
 	n := m.n
 	r := &response{n: n, in: m.b.c, out: m.c.r, h: m.a.clone(), b: m.b.clone(), c: m.c.clone(), d: m.d}
+	if err := tame(r.h); err != nil {
+		return nil, err
+	}
 	scale := make([]float64, n)
 	impl.Dgebal(lapack.Scale, n, r.h.v, n, scale)
 	for i, f := range scale {
