@@ -15,6 +15,9 @@ import (
 // least 90.7 % and at most 98.7 % in all but one of 1000 tests of one figure
 // (binomial, ± 3.3 standard deviations of 1.26 %).
 func TestLevels(t *testing.T) {
+	if testing.Short() {
+		t.Skip("900 replays")
+	}
 	const runs, steps = 300, 2000
 	m := tracker()
 	l := layoutOf(m)

@@ -149,7 +149,7 @@ func Replay(ctx context.Context, log Recording, q Request) (*Result, error) {
 	}
 	r.starting = q.Start.FirstSample
 	for {
-		if r.index%4096 == 0 && ctx.Err() != nil {
+		if r.clock.index%4096 == 0 && ctx.Err() != nil {
 			return nil, ctx.Err()
 		}
 		s, err := source.Next()
@@ -184,12 +184,46 @@ type run struct {
 
 	references []comparison
 
-	index    int64
-	first    int64   // samples before it stay out of the statistics
-	from     float64 // and so do times before this one
+	clock    clock
 	starting bool
 	line     int
 	row      Row
+}
+
+// clock knows which samples are late enough for the statistics.
+type clock struct {
+	index int64
+	first int64   // samples before it stay out
+	from  float64 // and so do times before this one
+}
+
+func newClock(v *Survey, skip *float64) clock {
+	if skip != nil {
+		return clock{from: v.Start + *skip}
+	}
+	return clock{first: v.Samples / 10, from: math.Inf(-1)}
+}
+
+// late takes the next sample.
+func (c *clock) late(s *Sample) bool {
+	c.index++
+	return c.index > c.first && s.T >= c.from
+}
+
+// settleSamples is a settle time in samples; NaN is none.
+func settleSamples(settle, period float64) int {
+	if !(settle > 0) {
+		return 0
+	}
+	return int(math.Min(math.Ceil(settle/period-1e-9), math.MaxInt32))
+}
+
+func wraps(l *Layout) []float64 {
+	list := make([]float64, len(l.Sensors))
+	for i, s := range l.Sensors {
+		list[i] = s.Wrap
+	}
+	return list
 }
 
 // judged is a filter with the statistics of its innovations.
@@ -202,11 +236,7 @@ type judged struct {
 
 func newJudged(m *estimator.Model, g *Gain, wrap []float64) *judged {
 	_, _, p := m.Dims()
-	j := &judged{f: newFilter(m, *g, wrap), sensors: make([]series, p)}
-	if g.Settle > 0 {
-		j.settle = int(math.Min(math.Ceil(g.Settle/m.Period-1e-9), math.MaxInt32))
-	}
-	return j
+	return &judged{f: newFilter(m, *g, wrap), sensors: make([]series, p), settle: settleSamples(g.Settle, m.Period)}
 }
 
 // comparison collects estimate − reference.
@@ -239,21 +269,14 @@ func (s *sum) value() float64 {
 }
 
 func newRun(l *Layout, v *Survey, q *Request) *run {
-	wrap := make([]float64, len(l.Sensors))
-	for i, s := range l.Sensors {
-		wrap[i] = s.Wrap
-	}
+	wrap := wraps(l)
 	r := &run{
 		layout: l, survey: v, q: q, main: newJudged(q.Model, &q.Gain, wrap),
-		white: make([]float64, len(l.Sensors)),
-		first: v.Samples / 10, from: math.Inf(-1),
+		white: make([]float64, len(l.Sensors)), clock: newClock(v, q.Skip),
 		row: Row{Estimate: make([]float64, len(l.States))},
 	}
 	if q.Floor != nil {
 		r.floor = newJudged(q.Model, q.Floor, wrap)
-	}
-	if q.Skip != nil {
-		r.first, r.from = 0, v.Start+*q.Skip
 	}
 	r.promise, _ = newPromise(q.Model, q.Gain.L)
 	for _, ref := range v.References {
@@ -278,7 +301,7 @@ func (r *run) step(s *Sample) error {
 			}
 		}
 	}
-	late := r.index >= r.first && s.T >= r.from
+	late := r.clock.late(s)
 	counts := r.main.step(s, late)
 	if r.floor != nil {
 		r.floor.step(s, late)
@@ -299,8 +322,7 @@ func (r *run) step(s *Sample) error {
 		}
 	}
 	r.main.f.advance()
-	r.index++
-	if r.index%1024 == 0 {
+	if r.clock.index%1024 == 0 {
 		return r.bounded()
 	}
 	return nil

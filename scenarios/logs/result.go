@@ -1,6 +1,12 @@
 package logs
 
-import "math"
+import (
+	"math"
+
+	"gonum.org/v1/gonum/mat"
+
+	"polewright/estimator"
+)
 
 // Result is what a replay comes to; its JSON is part of `replay --json`. A figure
 // that is not defined is null there, and Warnings says why. Lists per sensor are in
@@ -26,6 +32,11 @@ type Result struct {
 
 	References []Comparison `json:"reference"`
 	Warnings   []string     `json:"warnings"`
+
+	// What NoiseFigures works on.
+	model   *estimator.Model
+	gain    *mat.Dense
+	moments []moments
 }
 
 // Innovation is one sensor's innovations of the gain, beside what this gain should
@@ -73,14 +84,16 @@ type Comparison struct {
 func (r *run) result() *Result {
 	v := r.survey
 	out := &Result{
-		Samples: r.index, Missing: v.Missing, Held: v.Held, Lost: append([]int64{}, v.Lost...),
+		Samples: r.clock.index, Missing: v.Missing, Held: v.Held, Lost: append([]int64{}, v.Lost...),
 		Period: Number(v.Period), Jitter: Number(v.Jitter), Resampled: v.Resampled,
 		NISMean: Number(math.NaN()), NISLow: Number(math.NaN()), NISHigh: Number(math.NaN()),
 		Whiteness: []Whiteness{}, References: []Comparison{}, Warnings: []string{},
+		model: r.q.Model, gain: r.q.Gain.L,
 	}
 	for i := range r.main.sensors {
 		m := r.main.sensors[i].finish()
 		out.Counted = m.count
+		out.moments = append(out.moments, m)
 		out.Innovations = append(out.Innovations, r.innovation(i, &m))
 	}
 	if r.promise != nil && r.promise.root != nil && out.Counted > 0 {
