@@ -8,25 +8,22 @@ import (
 )
 
 // Draw draws the readings into w by h cells at (x, y). Where they do not fit,
-// first the blank lines go, then what stands last; the bottom line says so.
+// first the blank lines go, then what stands last; the last row says so.
 func Draw(c *canvas.Canvas, x, y, w, h int, f Facts, t *theme.Theme) {
 	g := &t.Glyphs
 	sections := Sections(f, g)
-	rows := 0
+	rows := 1 // the last one is kept for what is not in sight
 	for _, s := range sections {
 		rows += 1 + len(s.Rows)
 	}
 	gap := 0
-	if rows+len(sections)-1 <= h {
+	if rows+len(sections) <= h {
 		gap = 1
 	}
-	at, end := y, y+h
-	if rows > h {
-		end--
-	}
+	at, end := y, y+h-1
 	hidden := false
 	for k, s := range sections {
-		if at >= end || at == end-1 && len(s.Rows) > 0 {
+		if at >= end-1 {
 			hidden = true
 			break
 		}
@@ -37,18 +34,24 @@ func Draw(c *canvas.Canvas, x, y, w, h int, f Facts, t *theme.Theme) {
 				hidden = true
 				break
 			}
-			Draw1(c, x, at, w, r, rowInk(s, f.Late, k == 0 && r.Label == string(byte(f.Plane))), s.Figures && f.Late, g)
+			drawRow(c, x, at, w, r, rowInk(s, f.Late, k == 0 && r.Label == string(byte(f.Plane))), s.Figures && f.Late, g)
 			at++
 		}
 		at += gap
 	}
-	if hidden {
-		text, ink := "r shows the rest", theme.Faint
-		if f.Design != nil && len(f.Design.Warnings) > 0 {
-			n := len(f.Design.Warnings)
-			text, ink = fmt.Sprintf("%d warning%s, r shows the rest", n, plural(n)), theme.Trouble
-		}
-		c.Right(x+w, y+h-1, text, ink)
+	more(c, x+w, y+h-1, f, hidden)
+}
+
+// more says on the last row what the view of all readings has.
+func more(c *canvas.Canvas, right, y int, f Facts, hidden bool) {
+	if f.Design == nil {
+		return
+	}
+	switch n := len(f.Design.Warnings); {
+	case n > 0:
+		c.Right(right, y, fmt.Sprintf("%d warning%s, r shows all", n, plural(n)), theme.Trouble)
+	case hidden:
+		c.Right(right, y, "r shows the rest", theme.Faint)
 	}
 }
 
@@ -75,10 +78,10 @@ func title(c *canvas.Canvas, x, y, w int, s Section, late bool, g *theme.Glyphs)
 	c.Right(x+w, y, note, ink)
 }
 
-// Draw1 draws one row in w cells: label, value before its unit, and at the right
+// drawRow draws one row in w cells: label, value before its unit, and at the right
 // edge the tail.
-func Draw1(c *canvas.Canvas, x, y, w int, r Row, ink theme.Ink, late bool, g *theme.Glyphs) {
-	valueEnd := w - 11
+func drawRow(c *canvas.Canvas, x, y, w int, r Row, ink theme.Ink, late bool, g *theme.Glyphs) {
+	valueEnd := w - 11 - max(min(w-34, 8), 0)
 	label := theme.Faint
 	if ink == theme.Text && r.Value == "" {
 		label = theme.Text

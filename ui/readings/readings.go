@@ -293,14 +293,10 @@ func loop(f Facts, g *theme.Glyphs) Section {
 
 func gain(f Facts, g *theme.Glyphs) Section {
 	d := f.Design
-	s := Section{Title: "gain", Figures: true, Rows: []Row{
+	return Section{Title: "gain", Figures: true, Rows: []Row{
 		{Label: "norm", Value: Figure(d.GainNorm, d.GainNorm, g)},
 		{Label: "conditioning", Value: Fixed(d.EigenvectorCondition, 1, g)},
 	}}
-	if n := len(d.Warnings); n > 0 {
-		s.Rows = append(s.Rows, Row{Label: fmt.Sprintf("%d warning%s", n, plural(n)), Tail: "r shows", Ink: theme.Trouble})
-	}
-	return s
 }
 
 func plural(n int) string {

@@ -18,8 +18,8 @@ import (
 // as it stands, nothing is optimised anew behind the user's back.
 func (m *Model) request() desk.Request {
 	r := desk.Request{Gen: m.gen, Form: m.now.form, Method: m.now.method, Gain: m.now.gain}
-	if a := m.now.answer; a != nil && a.Design != nil {
-		r.Gain = a.Design.Gain
+	if m.now.design != nil {
+		r.Gain = m.now.design.Gain
 	}
 	if r.Gain != nil {
 		return r
@@ -86,8 +86,7 @@ func (m *Model) upToDate(a *desk.Answer) {
 	if a.Stage >= desk.Traced {
 		m.pending = time.Time{}
 	}
-	m.now.answer, m.now.limits = a, m.limits
-	m.now.run = a.Run
+	m.now.design, m.now.limits, m.now.run, m.now.traced = a.Design, m.limits, a.Run, a.Stage >= desk.Traced
 	if m.keepWanted && a.Stage >= desk.Traced {
 		m.keepWanted = false
 		m.keep()

@@ -23,7 +23,7 @@ func (m *Model) keepWhenReady() tea.Cmd {
 		m.refuse("there is no design to keep: " + m.failure.Error())
 	case m.freeLetter() == "":
 		m.refuse("all letters A to Z are taken; v and x delete a candidate")
-	case m.now.answer == nil || m.now.answer.Stage < desk.Traced:
+	case !m.now.traced:
 		m.keepWanted = true
 		m.say("kept as soon as its figures are there")
 	default:
@@ -51,9 +51,8 @@ func (m *Model) keep() {
 	if letter == "" {
 		return
 	}
-	a := m.now.answer
 	c := desk.Candidate{Letter: letter, Form: m.now.form, Method: m.now.method, Poles: m.now.set.Poles(),
-		Design: a.Design, Limits: a.Limits, Run: a.Run}
+		Design: m.now.design, Limits: results(m.now.limits), Run: m.now.run}
 	m.candidates = append(m.candidates[:len(m.candidates):len(m.candidates)], c)
 	m.current = letter
 	m.revision++
@@ -137,11 +136,15 @@ func (m *Model) columns() []views.Column {
 		out = append(out, views.Column{Name: name, Poles: set, Form: c.Form, Design: c.Design, Limits: c.Limits})
 	}
 	if m.current == "" && m.shown != nil && len(out) > 0 {
-		var limits []scenarios.LimitResult
-		for _, l := range m.limits {
-			limits = append(limits, l.LimitResult)
-		}
-		out = append(out, views.Column{Name: "in hand", Poles: m.now.set, Form: m.now.form, Design: m.shown, Limits: limits})
+		out = append(out, views.Column{Name: "in hand", Poles: m.now.set, Form: m.now.form, Design: m.shown, Limits: results(m.limits)})
+	}
+	return out
+}
+
+func results(list []readings.Limit) []scenarios.LimitResult {
+	var out []scenarios.LimitResult
+	for _, l := range list {
+		out = append(out, l.LimitResult)
 	}
 	return out
 }

@@ -101,8 +101,8 @@ func (m Model) Work() desk.Work {
 	w.File, w.Form, w.Method = m.file, m.now.form, m.now.method
 	w.Poles = m.now.set.Poles()
 	w.Gain = m.now.gain
-	if a := m.now.answer; a != nil && a.Design != nil {
-		w.Gain = a.Design.Gain
+	if m.now.design != nil {
+		w.Gain = m.now.design.Gain
 	}
 	w.Candidates = append([]desk.Candidate(nil), m.candidates...)
 	w.Current = m.current

@@ -39,9 +39,12 @@ func (m *Model) repeated(name string) bool {
 func (m *Model) change(next state, held string) tea.Cmd {
 	if !m.repeated(held) {
 		m.past = append(m.past[:len(m.past):len(m.past)], m.now)
+		if k := len(m.past) - 1 - runsKept; k >= 0 {
+			m.past[k].run, m.past[k].traced = nil, false
+		}
 	}
 	m.future = nil
-	next.answer, next.run, next.limits = nil, nil, nil
+	next.design, next.run, next.limits, next.traced = nil, nil, nil, false
 	m.now = next
 	return m.changed()
 }
@@ -194,12 +197,11 @@ func (m *Model) redo() tea.Cmd {
 // all are there; else it asks for them, with the stored gain if there is one.
 func (m *Model) restore() tea.Cmd {
 	m.now.held = min(m.now.held, max(m.holdable()-1, 0))
-	a := m.now.answer
 	cmd := m.changed()
-	if a == nil || a.Design == nil {
+	if m.now.design == nil {
 		return cmd
 	}
-	m.shown, m.shownGen, m.limits = a.Design, m.gen, m.now.limits
+	m.shown, m.shownGen, m.limits = m.now.design, m.gen, m.now.limits
 	if m.now.run != nil {
 		m.run, m.runGen = m.now.run, m.gen
 		m.newRun()

@@ -24,11 +24,17 @@ type state struct {
 	held   int // index into the targets, behind them the fixed poles
 	form   estimator.Form
 	method estimator.Method
-	gain   *mat.Dense   // judged as it stands, in place of placing the poles; else nil
-	answer *desk.Answer // to exactly this state, nil until it came
-	run    *scenarios.Run
+	gain   *mat.Dense // judged as it stands, in place of placing the poles; else nil
+	// What was found for exactly this state, nil until it came.
+	design *estimator.Design
 	limits []readings.Limit
+	run    *scenarios.Run
+	traced bool // all is there
 }
+
+// runsKept bounds the states before this one that keep their run, which is the
+// large part of a state: an older one is run again when it is gone back to.
+const runsKept = 20
 
 // axisKey names a trace whose axis is kept.
 type axisKey struct {
