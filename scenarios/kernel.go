@@ -35,8 +35,21 @@ func (p *packed) mulAdd(dst, v, add []float64) {
 	a := p.a
 	for len(dst) >= 4 {
 		s0, s1, s2, s3 := add[0], add[1], add[2], add[3]
-		for _, x := range v {
-			c := (*[4]float64)(a)
+		rest := v
+		for len(rest) >= 2 {
+			c, x, y := (*[8]float64)(a), rest[0], rest[1]
+			s0 += float64(c[0] * x)
+			s1 += float64(c[1] * x)
+			s2 += float64(c[2] * x)
+			s3 += float64(c[3] * x)
+			s0 += float64(c[4] * y)
+			s1 += float64(c[5] * y)
+			s2 += float64(c[6] * y)
+			s3 += float64(c[7] * y)
+			a, rest = a[8:], rest[2:]
+		}
+		if len(rest) == 1 {
+			c, x := (*[4]float64)(a), rest[0]
 			s0 += float64(c[0] * x)
 			s1 += float64(c[1] * x)
 			s2 += float64(c[2] * x)

@@ -89,7 +89,7 @@ func (r *Runner) innovate(g []float64, k, i int, x, v []float64) {
 		switch {
 		case r.freeSensors:
 			read[j] = value
-			e[j] = value - s.operating - r.want[j]
+			e[j] = r.y[j] - r.want[j]
 		case faulty:
 			read[j], e[j] = r.fault(s, k, j, value)
 		default:
@@ -132,12 +132,7 @@ func (r *Runner) write(run *Run, k0, count int) bool {
 		ok = ok && within
 	}
 	for i, place := range r.series {
-		to := run.True
-		bound := r.realBound[place]
-		if place >= len(run.True) {
-			to, place = run.Others, place-len(run.True)
-		}
-		list(to[place], r.rows.real[i:], a, r.realOp[i], bound)
+		list(r.realList(run, place), r.rows.real[i:], a, r.realOp[i], r.realBound[place])
 	}
 	for i, op := range r.estimateOp {
 		list(run.Estimate[i], r.rows.estimated[i:], b, op, r.estBound[i])
@@ -157,4 +152,12 @@ func (r *Runner) write(run *Run, k0, count int) bool {
 	copy(r.rows.real[:a], r.rows.real[count*a:])
 	copy(r.rows.estimated[:b], r.rows.estimated[count*b:])
 	return ok
+}
+
+// realList is the list of a state of the real plant.
+func (r *Runner) realList(run *Run, place int) []float64 {
+	if place < len(run.True) {
+		return run.True[place]
+	}
+	return run.Others[place-len(run.True)]
 }

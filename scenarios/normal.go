@@ -71,28 +71,25 @@ var normalTable = sync.OnceValue(func() *ziggurat {
 	return z
 })
 
-// normal is one standard normal value.
+// normal is one standard normal value. The lowest 8 bits of a word choose the
+// layer, the highest 54 a value from −2^53 to 2^53 − 1.
 func (s *stream) normal(z *ziggurat) float64 {
 	for {
 		u := s.pcg.Uint64()
 		i := u & (layers - 1)
-		bits := u >> 11 // 53 bits; the lowest 8 of the word choose the layer, the next the sign
-		x := float64(bits) * z.step[i]
-		negative := u&layers != 0
-		if bits >= z.inside[i] {
-			ok := false
-			if x, ok = s.edgeOfLayer(z, int(i), x); !ok {
-				continue
-			}
+		value := int64(u) >> 10
+		sign := value >> 63
+		x := float64(value) * z.step[i]
+		if uint64((value^sign)-sign) < z.inside[i] {
+			return x
 		}
-		if negative {
-			return -x
+		if edge, ok := s.edgeOfLayer(z, int(i), math.Abs(x)); ok {
+			return math.Copysign(edge, x)
 		}
-		return x
 	}
 }
 
-// edgeOfLayer decides about a value that may lie above the curve. In the lowest
+// edgeOfLayer decides about a value x ≥ 0 that may lie above the curve. In the lowest
 // layer it draws from the tail (Marsaglia 1964).
 func (s *stream) edgeOfLayer(z *ziggurat, i int, x float64) (float64, bool) {
 	if i == 0 {

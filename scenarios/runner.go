@@ -53,6 +53,7 @@ type Runner struct {
 	freeInputs, freeSensors bool
 
 	rows    rows
+	plain   bool      // never fuse
 	y, want []float64 // sensors as deviations; what the estimator expects of them
 	nothing []float64
 	ab, cd  flat // of the real plant
@@ -184,21 +185,27 @@ func (r *Runner) RunInto(ctx context.Context, g Gain, run *Run) error {
 		}
 		count := min(chunk, len(r.time)-k)
 		w := r.forcing.next(k, count)
-		switch {
-		case r.model.Period == 0:
-			r.continuous(w, k, count)
-		case g.Form == estimator.Current:
-			r.current(w, k, count)
-		default:
-			r.prediction(w, k, count)
-		}
-		if !r.write(run, k, count) {
+		if !r.steps(run, w, k, count, g.Form) {
 			run.cut(run.beyond(k, k+count, r.realBound, r.estBound))
 			run.Diverged = true
 			return nil
 		}
 	}
 	return nil
+}
+
+// steps runs one chunk and writes it down. It reports whether all values are
+// within their bounds.
+func (r *Runner) steps(run *Run, w window, k, count int, form estimator.Form) bool {
+	switch {
+	case r.model.Period == 0:
+		r.continuous(w, k, count)
+	case form == estimator.Current:
+		r.current(w, k, count)
+	default:
+		r.prediction(w, k, count)
+	}
+	return r.write(run, k, count)
 }
 
 // begin writes the states at t = 0 into the first row.
