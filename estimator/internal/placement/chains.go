@@ -9,13 +9,14 @@ import (
 
 // chains writes a gain for poles that have no independent eigenvectors, such as
 // more copies of one pole than there are sensors (the Jordan chains of Klein &
-// Moore 1977). It allocates; such lists are rare.
-func chains(dst, a, c blas64.General, list []pole) error {
+// Moore 1977). It allocates; such lists are rare. Independent eigenvectors are
+// looked for only in blocks of at most limit states.
+func chains(dst, a, c blas64.General, list []pole, limit int) error {
 	am, cm, l := new(mat.Dense), new(mat.Dense), new(mat.Dense)
 	am.SetRawMatrix(a)
 	cm.SetRawMatrix(c)
 	l.SetRawMatrix(dst)
-	k, err := assign(mat.DenseCopyOf(am.T()), mat.DenseCopyOf(cm.T()), list)
+	k, err := assign(mat.DenseCopyOf(am.T()), mat.DenseCopyOf(cm.T()), list, limit)
 	if err != nil {
 		return err
 	}
@@ -26,21 +27,24 @@ func chains(dst, a, c blas64.General, list []pole) error {
 // assign returns K that gives m − b K the listed eigenvalues. Where the rest has
 // independent eigenvectors it chooses them as Robust does; else it takes one pole
 // with one eigenvector off by an orthogonal change of coordinates and goes on with
-// the block that is left, which is controllable as well (Varga 1981).
-func assign(m, b *mat.Dense, list []pole) (*mat.Dense, error) {
+// the block that is left, which is controllable as well (Varga 1981). After a search
+// in vain the next one waits until half the block is done.
+func assign(m, b *mat.Dense, list []pole, limit int) (*mat.Dense, error) {
 	b1, turn, err := compress(b)
 	if err != nil {
 		return nil, err
 	}
 	n, r := b1.Dims()
 	var k *mat.Dense
-	switch {
-	case r == 1:
+	if r == 1 {
 		k, err = assignSingle(m, b1, list)
-	default:
-		k = assignVectors(m, b1, list)
+	} else {
+		if n <= limit && (r == n || mostCopies(list) <= r) {
+			k = assignVectors(m, b1, list)
+			limit = n / 2
+		}
 		if k == nil {
-			k, err = deflate(m, b1, list)
+			k, err = deflate(m, b1, list, limit)
 		}
 	}
 	if err != nil {
@@ -95,9 +99,7 @@ func assignVectors(m, b *mat.Dense, list []pole) *mat.Dense {
 	if !r.load(mat.DenseCopyOf(m.T()).RawMatrix(), mat.DenseCopyOf(b.T()).RawMatrix()) {
 		return nil
 	}
-	if r.gather(list) > p {
-		return nil
-	}
+	r.gather(list)
 	if n == p {
 		r.normalVectors(nil)
 	} else if _, ok := r.choose(nil); !ok {
@@ -113,7 +115,7 @@ func assignVectors(m, b *mat.Dense, list []pole) *mat.Dense {
 // deflate places one pole of the list and leaves the others to assign. More than p
 // copies of a pole take the whole null space at once, which leaves the shortest
 // chains.
-func deflate(m, b *mat.Dense, list []pole) (*mat.Dense, error) {
+func deflate(m, b *mat.Dense, list []pole, limit int) (*mat.Dense, error) {
 	n, p := b.Dims()
 	i := hardest(list)
 	r := robust{}
@@ -143,13 +145,21 @@ func deflate(m, b *mat.Dense, list []pole) (*mat.Dense, error) {
 	t.Mul(m, q2)
 	m2.Mul(q2.T(), &t)
 	b2.Mul(q2.T(), b)
-	k2, err := assign(&m2, &b2, rest)
+	k2, err := assign(&m2, &b2, rest, limit)
 	if err != nil {
 		return nil, err
 	}
 	more.Mul(k2, q2.T())
 	k.Add(k, &more)
 	return k, nil
+}
+
+func mostCopies(list []pole) int {
+	most := 0
+	for _, p := range list {
+		most = max(most, multiplicity(list, p.at))
+	}
+	return most
 }
 
 func without(list []pole, at complex128, copies int) []pole {

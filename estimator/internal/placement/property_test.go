@@ -136,6 +136,7 @@ func TestRepeatedPoles(t *testing.T) {
 		{"indices 3 and 1, all equal", uneven, ends, []complex128{-1, -1, -1, -1}, 3, false},
 		{"three copies of a pair", six, sixC, []complex128{-1 + 1i, -1 - 1i, -1 + 1i, -1 - 1i, -1 + 1i, -1 - 1i}, 2, false},
 		{"six copies", six, sixC, []complex128{-2, -2, -2, -2, -2, -2}, 4, false},
+		{"nearly equal", chain, both, []complex128{-4, -4 - 1e-7, -4 + 1e-7, -4 - 2e-7}, 3, false},
 		{"poles of the plant", uneven, ends, []complex128{0, 0, -1, -2}, 1, true},
 	}
 	for _, c := range cases {

@@ -118,7 +118,8 @@ func axpy(dst []float64, t float64, x []float64) {
 // lags behind its optimum); an empty warm or nil means a cold start. The call leaves its own choice in warm.
 //
 // Errors: ErrShape, ErrNotFinite, ErrPairs, ErrSensors, ErrUnobservable,
-// ErrNotReached. After an error the contents of dst and warm are unspecified.
+// ErrNotReached, where dst holds the best gain found. After the other errors the
+// contents of dst and warm are unspecified.
 func (s *Solver) Robust(dst, a, c blas64.General, poles []complex128, warm *Warm) (Info, error) {
 	if err := checkInput(dst, a, c, poles); err != nil {
 		return Info{}, err
@@ -149,17 +150,44 @@ func (s *Solver) Robust(dst, a, c blas64.General, poles []complex128, warm *Warm
 			if r.reached(dst, a, c) {
 				return info, nil
 			}
-			return info, s.check.eigenvalues(dst, a, c, s.list)
+			return s.rescue(dst, a, c, warm, info)
 		}
 	}
 	if warm != nil {
 		warm.clear()
 	}
-	info := Info{Condition: math.NaN(), Converged: true}
-	if err := chains(dst, a, c, s.list); err != nil {
+	limit := r.n
+	if most <= r.p {
+		limit = r.n / 2
+	}
+	if err := chains(dst, a, c, s.list, limit); err != nil {
 		return Info{}, err
 	}
-	return info, s.check.eigenvalues(dst, a, c, s.list)
+	return Info{Condition: math.NaN(), Converged: true}, s.check.eigenvalues(dst, a, c, s.list)
+}
+
+// rescue replaces a gain whose poor eigenvectors cost more than six digits of the
+// poles, as for a cluster of more than p nearly equal ones, by the gain for long
+// chains where that one comes ten times closer.
+func (s *Solver) rescue(dst, a, c blas64.General, warm *Warm, info Info) (Info, error) {
+	err := s.check.eigenvalues(dst, a, c, s.list)
+	missed := s.check.missed
+	if err == nil && missed <= 1e-6 {
+		return info, nil
+	}
+	n, p := a.Rows, c.Rows
+	other := matrix(n, p, make([]float64, n*p))
+	if chains(other, a, c, s.list, n/2) != nil || s.check.eigenvalues(other, a, c, s.list) != nil ||
+		err == nil && s.check.missed > 0.1*missed {
+		return info, err
+	}
+	for i := range n {
+		copy(dst.Data[i*dst.Stride:i*dst.Stride+p], other.Data[i*p:i*p+p])
+	}
+	if warm != nil {
+		warm.clear()
+	}
+	return Info{Condition: math.NaN(), Iterations: info.Iterations, Converged: true}, nil
 }
 
 // unique serves one sensor, which leaves no choice.
@@ -174,122 +202,6 @@ func (s *Solver) unique(dst, a, c blas64.General, most int, warm *Warm) (Info, e
 		info.Condition = r.condition()
 	}
 	return info, s.singleGain(dst, a, c)
-}
-
-// A warm descent may turn the eigenvectors by restless + follow times the relative
-// movement of the poles, in radians. So the gain stays continuous where the valley
-// that it follows ends: the fall into the next one is spread over several calls.
-const (
-	restless = 1e-3
-	follow   = 4.0
-)
-
-// worstCondition is where eigenvectors count as dependent.
-const worstCondition = 1e10
-
-// choose finds the eigenvectors. It reports false where no independent ones were
-// found.
-func (r *robust) choose(warm *Warm) (Info, bool) {
-	r.nullSpaces()
-	r.start = grow(r.start, len(r.frames))
-	moved := warm.moved(r.groups)
-	if ok, carried := warm.project(r); ok {
-		rule := nearby
-		rule.travel = restless + follow*moved
-		f, steps, done := r.descend(rule, carried)
-		if f < math.Log(worstCondition) {
-			return Info{Condition: r.condition(), Iterations: steps, Converged: done}, true
-		}
-	}
-	if !warm.Empty() {
-		r.nullSpaces()
-	}
-	return r.cold()
-}
-
-const starts = 4
-
-// How far the descents go: from a start to the right valley, down that valley, and
-// from an earlier choice.
-var (
-	rough  = stopping{squarings: powerRough, steps: 30, gradient: 1e-2, drop: 1e-2}
-	fine   = stopping{squarings: powerFine, steps: 200, gradient: 1e-6, drop: 1e-5}
-	nearby = stopping{squarings: powerFine, steps: 60, gradient: 1e-6, drop: 1e-9}
-)
-
-// cold descends from several starts on the rough measure, then polishes the best.
-func (r *robust) cold() (Info, bool) {
-	info := Info{}
-	best := math.Inf(1)
-	seed := uint64(1)
-	r.basis = append(r.basis[:0], r.frames...)
-	for range starts {
-		copy(r.frames, r.basis)
-		r.scatter(&seed)
-		_, steps, _ := r.descend(rough, false)
-		info.Iterations += steps
-		if f := r.measure(powerFine); f < best {
-			best = f
-			copy(r.start, r.frames)
-		}
-		if r.free == 0 {
-			break
-		}
-	}
-	if math.IsInf(best, 1) {
-		return info, false
-	}
-	copy(r.frames, r.start)
-	f, steps, done := r.descend(fine, false)
-	info.Iterations += steps
-	info.Converged = done
-	info.Condition = r.condition()
-	return info, f < math.Log(worstCondition)
-}
-
-// scatter mixes each frame by random numbers.
-func (r *robust) scatter(seed *uint64) {
-	n, p := r.n, r.p
-	draw := func() float64 { // Knuth's 64-bit linear congruential generator (MMIX)
-		*seed = *seed*6364136223846793005 + 1442695040888963407
-		return float64(*seed>>11)/(1<<52) - 1
-	}
-	r.descent.reset(r.free, len(r.frames))
-	old := r.descent.saved
-	copy(old, r.frames)
-	for i := range r.groups {
-		g := &r.groups[i]
-		from := old[i*n*p : (i+1)*n*p]
-		clear(g.t)
-		for j := range p {
-			for l := range p {
-				y := complex(draw(), 0)
-				if g.pair {
-					y += complex(0, draw())
-				}
-				for k, v := range from[l*n : l*n+n] {
-					g.t[j*n+k] += y * v
-				}
-			}
-		}
-		if !orthonormalise(g.t, n) {
-			copy(g.t, from)
-		}
-	}
-}
-
-// condition returns the 2-norm condition number of the present eigenvectors.
-func (r *robust) condition() float64 {
-	n := r.n
-	r.fillX()
-	copy(r.lu, r.xt)
-	impl := gonum.Implementation{}
-	impl.Dgesvd('N', 'N', n, n, r.lu, n, r.gram[:n], nil, 1, nil, 1, r.residual[:1], -1)
-	r.work = grow(r.work, max(n, int(r.residual[0])))
-	if !impl.Dgesvd('N', 'N', n, n, r.lu, n, r.gram[:n], nil, 1, nil, 1, r.work, len(r.work)) {
-		return math.NaN()
-	}
-	return r.gram[0] / r.gram[n-1]
 }
 
 // gain writes L with Lᵀ = Z⁻¹ U₀ᵀ (M − X Λ X⁻¹). It reports false for a singular X.

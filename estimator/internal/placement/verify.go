@@ -13,6 +13,7 @@ import (
 // checker holds a gain against the poles it should give.
 type checker struct {
 	f, wr, wi, tau, scale, work []float64
+	missed                      float64 // of the last check: the largest distance over the largest pole
 	got                         []complex128
 }
 
@@ -22,6 +23,7 @@ type checker struct {
 // an m-fold eigenvalue (Wilkinson 1965).
 func (k *checker) eigenvalues(l, a, c blas64.General, list []pole) error {
 	n := a.Rows
+	k.missed = math.Inf(1)
 	if !finite(l) {
 		return fmt.Errorf("the gain is not finite: %w", ErrNotReached)
 	}
@@ -50,11 +52,14 @@ func (k *checker) eigenvalues(l, a, c blas64.General, list []pole) error {
 		size = norm
 	}
 	if size == 0 {
+		k.missed = 0
 		return nil
 	}
 	m := largestCluster(list, 0.05*size)
 	limit := size * math.Max(1e-3, 10*math.Pow(float64(n)*0x1p-52*norm/size, 1/float64(m)))
-	if worst := k.worst(list); worst > limit {
+	worst := k.worst(list)
+	k.missed = worst / size
+	if worst > limit {
 		return fmt.Errorf("off by %.2g where the largest pole is %.2g (the gain nearly loses a mode): %w", worst, size, ErrNotReached)
 	}
 	return nil

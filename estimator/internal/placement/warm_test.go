@@ -172,3 +172,71 @@ func TestDragWithFullMeasurement(t *testing.T) {
 		before = copyOf(l)
 	}
 }
+
+// A drag allocates nothing once the workspaces are there.
+func TestDragDoesNotAllocate(t *testing.T) {
+	a, c, poles := plant(6, 2, 3, 0.6)
+	there := append([]complex128(nil), poles...)
+	there[0] *= 1.02
+	if imag(there[0]) != 0 {
+		there[1] *= 1.02
+	}
+	l := zeros(6, 2)
+	var s placement.Solver
+	var w placement.Warm
+	k := 0
+	got := testing.AllocsPerRun(50, func() {
+		list := poles
+		if k++; k%2 == 1 {
+			list = there
+		}
+		if _, err := s.Robust(l, a, c, list, &w); err != nil {
+			t.Fatal(err)
+		}
+	})
+	if got > 0 {
+		t.Errorf("%g allocations a step", got)
+	}
+}
+
+// The least-noise gain follows a drag as well.
+func TestDragOfLeastNoise(t *testing.T) {
+	var s placement.Solver
+	for _, seed := range []uint64{1, 2, 3, 4} {
+		const n = 5
+		a, c, poles := plant(n, 2, seed, 0.6)
+		wn, r := zeros(n, n), general([][]float64{{0.1, 0}, {0, 0.3}})
+		weights := make([]float64, n)
+		for i := range n {
+			wn.Data[i*n+i], weights[i] = 1, 1
+		}
+		var w placement.Warm
+		l, before := zeros(n, 2), zeros(n, 2)
+		worst, rise := 0.0, 0.0
+		cost := 0.0
+		for k := range 201 {
+			info, err := s.LeastNoise(l, a, c, wn, r, weights, poles, false, &w)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if k > 0 {
+				worst = math.Max(worst, distance(l, before)/mat.Norm(wrap(before), 2)/0.002)
+				rise = math.Max(rise, math.Abs(info.Cost/cost-1)/0.002)
+			}
+			before, cost = copyOf(l), info.Cost
+			for i, p := range poles { // the pole or pair at the end of the list
+				if i >= n-1 || (imag(poles[n-1]) != 0 && i == n-2) {
+					poles[i] = p * 1.002
+				}
+			}
+		}
+		cold, err := s.LeastNoise(l, a, c, wn, r, weights, poles, false, nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		t.Logf("largest relative jump over relative step: gain %.2f, cost %.2f; at the end %.3f of the cold optimum", worst, rise, cost/cold.Cost)
+		if worst > 25 || rise > 25 {
+			t.Errorf("seed %d: the gain jumps by %g, the cost by %g times the step", seed, worst, rise)
+		}
+	}
+}
