@@ -14,6 +14,9 @@ func (s *Solver) run() error {
 	var k int64
 	largest := math.Sqrt(float64(n)) // of the Frobenius norm, which is submultiplicative
 	j, a := 0, s.place(s.at)
+	if !s.discrete { // F bends little over 8 h = 1/(16 ‖F‖)
+		j = min(3, top)
+	}
 	for count := 0; ; count++ {
 		size := frobenius(s.at)
 		if math.IsNaN(size) || math.IsInf(size, 0) {

@@ -23,8 +23,9 @@ func multiply(n int, c, a, b []float64, add float64) {
 			}
 		}
 		for l, v := range a[i*n : i*n+n] {
-			for k, w := range b[l*n : l*n+n] {
-				row[k] += v * w
+			other := b[l*n : l*n+n][:len(row)]
+			for k := range row {
+				row[k] += v * other[k]
 			}
 		}
 	}

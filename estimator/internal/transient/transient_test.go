@@ -242,6 +242,17 @@ func TestRefuses(t *testing.T) {
 	}
 }
 
+func TestPaddedRows(t *testing.T) {
+	var s Solver
+	nan := math.NaN()
+	f := blas64.General{Rows: 2, Cols: 2, Stride: 3, Data: []float64{0, 7, nan, 0, 0.5}}
+	settle, peak, err := s.Settle(f, 1, nil)
+	want, top, _ := s.Settle(matrix(2, 0, 7, 0, 0.5), 1, nil)
+	if err != nil || settle != want || peak != top || f.Data[1] != 7 {
+		t.Errorf("%v, %v, %v; want %v, %v", settle, peak, err, want, top)
+	}
+}
+
 func TestNoAllocation(t *testing.T) {
 	for _, n := range []int{2, 4, 10} {
 		for _, period := range []float64{0, 0.1} {
