@@ -9,40 +9,6 @@ import (
 	"polewright/estimator/internal/schur"
 )
 
-// scale sets the powers of two by which sensors, noise and states are divided:
-// sensors to noise of about one, W and R so that W is about as large as
-// Cᵀ R⁻¹ C.
-func (p *problem) scale() {
-	p.d, p.e = make([]float64, p.n), make([]float64, p.p)
-	for i := range p.d {
-		p.d[i] = 1
-	}
-	for j := range p.e {
-		p.e[j] = powerOfTwo(math.Sqrt(p.r.At(j, j)))
-		if !(p.r.At(j, j) > 0) {
-			p.e[j] = powerOfTwo(mat.Norm(p.c.RowView(j), 2))
-		}
-	}
-	p.c.Apply(func(i, _ int, v float64) float64 { return v / p.e[i] }, p.c)
-	p.r.Apply(func(i, j int, v float64) float64 { return v / p.e[i] / p.e[j] }, p.r)
-	g := math.Pow(mat.Norm(p.c, 2), 2)
-	p.unit = powerOfTwo(mat.Norm(p.a, 2) / g)
-	if w := mat.Norm(p.w, 2); w > 0 {
-		p.unit = powerOfTwo(math.Sqrt(w / g))
-	}
-	p.w.Scale(1/p.unit, p.w)
-	p.r.Scale(1/p.unit, p.r)
-}
-
-// powerOfTwo rounds a positive number; others become 1.
-func powerOfTwo(v float64) float64 {
-	if !(v > 0) || math.IsInf(v, 0) {
-		return 1
-	}
-	_, e := math.Frexp(v)
-	return math.Ldexp(1, max(-500, min(500, e)))
-}
-
 var errUnsolved = errors.New("the doubling did not converge")
 
 // start returns a covariance whose gain stabilises A − L C. The doubling comes

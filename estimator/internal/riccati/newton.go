@@ -52,36 +52,33 @@ func (n *newton) poles(p *problem, l *mat.Dense) ([]complex128, error) {
 	return append([]complex128(nil), n.form.Eigenvalues()...), nil
 }
 
-// residual returns what is left of the equation, relative to its terms.
+// residual returns the Frobenius norm of what is left of the equation, relative
+// to the products of the norms of its factors.
 func (n *newton) residual(p *problem, x, l *mat.Dense) float64 {
-	var t, u, cp mat.Dense
-	t.Mul(p.a, x)
+	var ap, left, cp, lg mat.Dense
+	a, px := mat.Norm(p.a, 2), mat.Norm(x, 2)
 	size := mat.Norm(p.w, 2)
-	if p.discrete { // A P Aᵀ − L (A P Cᵀ)ᵀ + W − P
-		u.Mul(&t, p.a.T())
-		size += mat.Norm(x, 2)
-	} else { // A P + P Aᵀ − L (P Cᵀ)ᵀ + W
-		u.Add(&t, t.T())
-	}
-	size += mat.Norm(&u, 2)
+	ap.Mul(p.a, x)
 	cp.Mul(p.c, x)
-	if p.discrete {
+	if p.discrete { // A P Aᵀ − L (A P Cᵀ)ᵀ + W − P
+		left.Mul(&ap, p.a.T())
+		left.Sub(&left, x)
 		var moved mat.Dense
 		moved.Mul(&cp, p.a.T())
 		cp.Copy(&moved)
+		size += (1 + a*a) * px
+	} else { // A P + P Aᵀ − L (P Cᵀ)ᵀ + W
+		left.Add(&ap, ap.T())
+		size += 2 * a * px
 	}
-	t.Reset()
-	t.Mul(l, &cp)
-	size += mat.Norm(&t, 2)
-	u.Sub(&u, &t)
-	u.Add(&u, p.w)
-	if p.discrete {
-		u.Sub(&u, x)
-	}
+	lg.Mul(l, &cp)
+	left.Sub(&left, &lg)
+	left.Add(&left, p.w)
+	size += mat.Norm(l, 2) * mat.Norm(&cp, 2)
 	if size == 0 {
 		return 0
 	}
-	return mat.Norm(&u, 2) / size
+	return mat.Norm(&left, 2) / size
 }
 
 // refine takes Newton steps from a stabilising covariance: each solves

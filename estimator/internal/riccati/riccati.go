@@ -1,7 +1,7 @@
 // Package riccati finds the stabilising solutions of the filter Riccati
 // equations, or says in plain words why there is none.
 //
-// Method: scale, decide existence from the modes on and beyond the stability
+// Method: balance, decide existence from the modes on and beyond the stability
 // limit, solve by the structure-preserving doubling of Chu, Fan, Lin & Wang,
 // "Structure-preserving algorithms for periodic discrete-time algebraic Riccati
 // equations", Int. J. Control 77 (2004), in continuous time after the Cayley
@@ -32,8 +32,9 @@ type Solution struct {
 	L *mat.Dense
 	// Poles are the n eigenvalues of A − L C, all strictly stable.
 	Poles []complex128
-	// Residual is the Frobenius norm of what is left of the equation,
-	// relative to the sum of the norms of its terms.
+	// Residual is the Frobenius norm of what is left of the equation, in
+	// balanced coordinates, relative to the size of its terms: ‖A‖ ‖P‖ and so
+	// on.
 	Residual float64
 }
 
@@ -187,7 +188,7 @@ func (p *problem) finish(x *mat.Dense) (*Solution, error) {
 		}
 	}
 	if !(best.residual < 1e-6) {
-		return nil, absent("the Riccati equation is too ill-conditioned to be solved: the residual stays at %.1g of its terms", best.residual)
+		return nil, absent("the Riccati equation is too ill-conditioned to be solved: what is left of it stays at %.1g of its terms", best.residual)
 	}
 	s := &Solution{P: best.p, L: best.l, Poles: poles, Residual: best.residual}
 	s.P.Apply(func(i, j int, v float64) float64 { return v * p.d[i] * p.d[j] * p.unit }, s.P)

@@ -135,7 +135,7 @@ func flaw(discrete bool, a, c, w, r *mat.Dense, s *riccati.Solution) string {
 	} else {
 		rest.Add(&ap, ap.T())
 	}
-	size := mat.Norm(&ap, 2) + mat.Norm(w, 2) + mat.Norm(&rest, 2)
+	size := 2*mat.Norm(a, 2)*mat.Norm(s.P, 2) + mat.Norm(w, 2) + mat.Norm(&rest, 2)
 	lg.Mul(s.L, gain.T())
 	rest.Add(&rest, w)
 	rest.Sub(&rest, &lg)
