@@ -11,19 +11,28 @@ const chunk = 128
 type rows struct {
 	real      []float64 // (chunk+1)×(nt+m): state and input of the real plant
 	estimated []float64 // (chunk+1)×(n+m+p): state, input and innovation
-	read      []float64 // chunk×p
+	read      []float64 // chunk×p: readings, of free sensors without the operating point
 }
 
 // prediction runs some steps of the prediction form: u[k] = drive − K x̂[k|k−1].
 func (r *Runner) prediction(w window, k0, count int) {
+	x, v := r.row(0)
 	for i := range count {
-		x, v := r.row(i)
 		r.control(w.d[i*r.m:], v)
-		copy(x[r.nt:], v[r.n:r.n+r.m])
+		carry(x[r.nt:], v[r.n:])
 		r.innovate(w.g[i*r.p:], k0+i, i, x, v)
 		nextX, nextV := r.row(i + 1)
 		r.est.advance(nextV, v)
 		r.ahead.mulAdd(nextX, x, w.f[i*r.nt:])
+		x, v = nextX, nextV
+	}
+}
+
+// carry copies the few inputs of a row; the call of copy costs more.
+func carry(to, from []float64) {
+	from = from[:len(to)]
+	for j := range to {
+		to[j] = from[j]
 	}
 }
 
@@ -31,23 +40,23 @@ func (r *Runner) prediction(w window, k0, count int) {
 // that depends on the sample cannot act on it: with direct feedthrough in a
 // closed loop the sample and its expectation see the command before.
 func (r *Runner) current(w window, k0, count int) {
+	x, v := r.row(0)
 	for i := range count {
-		x, v := r.row(i)
-		u := v[r.n : r.n+r.m]
 		if !r.closed {
 			r.control(w.d[i*r.m:], v)
 		}
-		copy(x[r.nt:], u)
+		carry(x[r.nt:], v[r.n:])
 		r.innovate(w.g[i*r.p:], k0+i, i, x, v)
 		r.est.correct(v)
 		if r.closed {
 			r.control(w.d[i*r.m:], v)
-			copy(x[r.nt:], u)
+			carry(x[r.nt:], v[r.n:])
 		}
 		nextX, nextV := r.row(i + 1)
-		copy(nextV[r.n:], u)
+		carry(nextV[r.n:r.n+r.m], v[r.n:])
 		r.est.advance(nextV, v)
 		r.ahead.mulAdd(nextX, x, w.f[i*r.nt:])
+		x, v = nextX, nextV
 	}
 }
 
@@ -60,13 +69,15 @@ func (r *Runner) row(i int) (x, v []float64) {
 // control writes what the actuators do into the input of a row.
 func (r *Runner) control(drive, v []float64) {
 	u := v[r.n : r.n+r.m]
+	drive = drive[:len(u)]
 	if r.closed {
-		r.k.mulAdd(r.command, v, r.nothing)
-		for j := range u {
-			u[j] = drive[j] - r.command[j]
+		command := r.command[:len(u)]
+		r.k.mulAdd(command, v, r.nothing)
+		for j, c := range command {
+			u[j] = drive[j] - c
 		}
 	} else {
-		copy(u, drive)
+		carry(u, drive)
 	}
 	if r.freeInputs {
 		return
@@ -79,24 +90,28 @@ func (r *Runner) control(drive, v []float64) {
 // innovate reads the sensors at step k, row i of the chunk, and compares them
 // with what is expected.
 func (r *Runner) innovate(g []float64, k, i int, x, v []float64) {
-	e, read := v[r.n+r.m:], r.rows.read[i*r.p:(i+1)*r.p]
+	e, read := v[r.n+r.m:r.n+r.m+r.p], r.rows.read[i*r.p:(i+1)*r.p]
 	r.look.mulAdd(r.y, x, g)
 	r.expect.mulAdd(r.want, v, r.nothing)
+	if r.freeSensors {
+		y, want := r.y[:len(e)], r.want[:len(e)]
+		for j := range e {
+			e[j] = y[j] - want[j]
+			read[j] = y[j]
+		}
+		return
+	}
 	faulty := k >= r.faults.from && k < r.faults.to
 	for j := range r.sensors {
 		s := &r.sensors[j]
 		value := s.operating + r.y[j]
-		switch {
-		case r.freeSensors:
-			read[j] = value
-			e[j] = r.y[j] - r.want[j]
-		case faulty:
+		if faulty {
 			read[j], e[j] = r.fault(s, k, j, value)
-		default:
-			s.last = s.read(value)
-			read[j] = s.last
-			e[j] = s.wrapped(s.last - s.operating - r.want[j])
+			continue
 		}
+		s.last = s.read(value)
+		read[j] = s.last
+		e[j] = s.wrapped(s.last - s.operating - r.want[j])
 	}
 }
 
@@ -144,9 +159,13 @@ func (r *Runner) write(run *Run, k0, count int) bool {
 		list(run.Innovations[j], r.rows.estimated[r.n+r.m+j:], b, 0, math.MaxFloat64)
 	}
 	for j := range run.Measured {
+		operating := 0.0 // readings are absolute but for free sensors
+		if r.freeSensors {
+			operating = r.sensors[j].operating
+		}
 		to := run.Measured[j][k0 : k0+count]
 		for k := range to {
-			to[k] = r.rows.read[k*r.p+j]
+			to[k] = operating + r.rows.read[k*r.p+j]
 		}
 	}
 	copy(r.rows.real[:a], r.rows.real[count*a:])
