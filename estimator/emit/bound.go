@@ -8,7 +8,8 @@ import (
 
 // bound follows how far the target's rounding can move each state from the
 // design's own numbers. Per step it adds up what rounding the tables and every
-// operation can do (Higham 2002, section 3.1: γ_k = k u / (1 − k u) for a sum
+// operation can do (Higham 2002, "Accuracy and Stability of
+// Numerical Algorithms", section 3.1: γ_k = k u / (1 − k u) for a sum
 // of k terms in any order, fused or not), componentwise and with the actual
 // difference of each rounded table entry. An error made at step i then moves on
 // by the product of the transition matrices since, so the bound at step k is
@@ -162,39 +163,63 @@ func (b *bound) gained(i int, terms float64, eAbs []float64) float64 {
 	return terms*(dotAbs(g, eAbs)+lost) + lost + dotAbs(g, b.eps)
 }
 
-// carryOn moves all past errors one step on, adds the new one and sums up.
-// Errors that have died out to a part in 1e12 of the sum are dropped; the two
-// per cent on the new one outweigh them.
+// mostPast is how many past errors are followed one by one.
+const mostPast = 24
+
+// carryOn moves all past errors one step on, adds the new one and sums up. Where
+// there are many, the older half becomes one error of the size of its sum: still
+// an upper bound, a close one where F has forgotten most of it by then.
 func (b *bound) carryOn() {
 	n := b.p.n
-	fresh := pastError{carry: make([]float64, n*n), delta: make([]float64, n)}
+	fresh := pastError{carry: make([]float64, n*n), delta: append([]float64(nil), b.local...)}
 	for i := range n {
 		fresh.carry[i*n+i] = 1
-		fresh.delta[i] = 1.02 * b.local[i]
-		b.state[i] = fresh.delta[i]
 	}
-	col := make([]float64, n)
-	kept := b.past[:0]
 	for _, e := range b.past {
-		for j := range n {
-			for i := range n {
-				col[i] = e.carry[i*n+j]
-			}
-			for i := range n {
-				e.carry[i*n+j] = dot(b.f[i*n:(i+1)*n], col)
-			}
-		}
-		alive := false
+		b.advance(e.carry)
+	}
+	b.past = append(b.past, fresh)
+	if len(b.past) > mostPast {
+		b.merge(mostPast / 2)
+	}
+	clear(b.state)
+	for _, e := range b.past {
 		for i := range n {
-			part := dotAbs(row(e.carry, i, n), e.delta)
-			b.state[i] += part
-			alive = alive || part > 1e-12*b.state[i]
-		}
-		if alive {
-			kept = append(kept, e)
+			b.state[i] += dotAbs(row(e.carry, i, n), e.delta)
 		}
 	}
-	b.past = append(kept, fresh)
+}
+
+// advance replaces carry by F·carry.
+func (b *bound) advance(carry []float64) {
+	n := b.p.n
+	clear(b.g)
+	for i := range n {
+		to := row(b.g, i, n)
+		for k, f := range row(b.f, i, n) {
+			for j, c := range row(carry, k, n) {
+				to[j] += f * c
+			}
+		}
+	}
+	copy(carry, b.g)
+}
+
+// merge makes one error of the oldest ones.
+func (b *bound) merge(count int) {
+	n := b.p.n
+	sum := make([]float64, n)
+	for _, e := range b.past[:count] {
+		for i := range n {
+			sum[i] += dotAbs(row(e.carry, i, n), e.delta)
+		}
+	}
+	one := b.past[0].carry
+	clear(one)
+	for i := range n {
+		one[i*n+i] = 1
+	}
+	b.past = append([]pastError{{carry: one, delta: sum}}, b.past[count:]...)
 }
 
 func row(v []float64, i, n int) []float64 { return v[i*n : (i+1)*n] }

@@ -14,7 +14,7 @@ func cHeader(p *program) []byte {
 	w.cComment(headNotes(p, "State estimator in C99. Include it where it is used; it needs no library and no other file."))
 	upper := strings.ToUpper(p.prefix)
 	w.line("#ifndef %s_H\n#define %s_H\n", upper, upper)
-	w.line("#if defined(__FAST_MATH__)\n#error \"compile without -ffast-math: samples that are not a number must be told apart\"\n#endif\n")
+	w.line("#if defined(__FAST_MATH__) || (defined(__FINITE_MATH_ONLY__) && __FINITE_MATH_ONLY__ > 0)\n#error \"compile without -ffast-math: samples that are not a number must be told apart\"\n#endif\n")
 	w.line("typedef %s %s_real;\n", p.cType(), p.prefix)
 	w.line("enum {")
 	w.line("    %s_STATES = %d,\n    %s_INPUTS = %d,\n    %s_SENSORS = %d\n};\n", upper, p.n, upper, p.m, upper, p.p)
@@ -81,7 +81,7 @@ typedef struct {
     unsigned char used[$UP_SENSORS]; /* 1: sample used; 0: missing or rejected */
     unsigned char fault; /* 1: a state left +-$LIMIT and all were reset; cleared by init and start */
     $PRE_real x[$UP_STATES]; /* private: deviation from the operating point */
-`, "$AT", at, "$LIMIT", p.cNumber(p.limit()))
+`, "$AT", at, "$LIMIT", p.limitText())
 	if p.m > 0 {
 		w.put(p, "    $PRE_real du[$UP_INPUTS]; /* private: last good input, as deviation */\n")
 	}
@@ -118,7 +118,7 @@ func (w *writer) cMatrix(p *program, name, rows, cols string, v []float64, nc in
 
 func (w *writer) cHelpers(p *program) {
 	w.put(p, `
-/* True for a number within +-$LIMIT; false for NaN and infinities. */
+/* True for a number within the limit; false for NaN and infinities. */
 static inline int $PRE_sound($PRE_real v)
 {
     return v >= -$LIMIT && v <= $LIMIT;
@@ -345,8 +345,8 @@ func (w *writer) cCurrent(p *program) {
 		note = "inputs acting at this sample and samples (absolute)"
 	}
 	w.put(p, `
-/* First half of a sample: $NOTE, and per sensor 1 where it is
- * missing (null: none is). Afterwards estimate is that of this sample, for the
+/* First half of a sample: $NOTE,
+ * and per sensor 1 where it is missing (null: none is). Afterwards estimate is that of this sample, for the
  * controller to use. */
 static inline void $PRE_correct($PRE_estimator *s,$PARAM const $PRE_real y[$UP_SENSORS], const unsigned char *missing)
 {

@@ -25,7 +25,7 @@ func cautionsOf(p *program) []string {
 		"Local codes and licensed practice decide.",
 	}
 	if p.arithmetic == Float {
-		list = append(list, "Single precision: the self-test's tolerance says how far rounding may move each state.")
+		list = append(list, "Single precision: the tolerance of the self-test says how far rounding may move each state.")
 	}
 	if p.hasWrap {
 		list = append(list, "An innovation of a wrapping sensor is taken modulo its period; the state itself is not wrapped and loses digits as it grows.")

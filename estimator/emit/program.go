@@ -55,6 +55,14 @@ func (p *program) limit() float64 {
 	return 1e300
 }
 
+// limitText is the limit as a comment shows it.
+func (p *program) limitText() string {
+	if p.arithmetic == Float {
+		return "1e30"
+	}
+	return "1e300"
+}
+
 // round returns v as the target's arithmetic holds it.
 func (p *program) round(v float64) float64 {
 	if p.arithmetic == Float {

@@ -74,7 +74,7 @@ func (w *writer) stOutputs(p *program) {
 	for _, s := range p.sensors {
 		w.line("    q_%s : BOOL := FALSE; (* TRUE: sample used *)", s.id)
 	}
-	w.line("    fault : BOOL := FALSE; (* a state left +-%s and all were reset; cleared by reset *)", p.stNumber(p.limit()))
+	w.line("    fault : BOOL := FALSE; (* a state left +-%s and all were reset; cleared by reset *)", p.limitText())
 	w.line("END_VAR")
 }
 
@@ -147,17 +147,21 @@ func (w *writer) stBody(p *program) {
 	w.line("ELSE")
 	if p.form == estimator.Current {
 		w.line("    IF do_correct THEN")
-		if p.hasD {
-			w.stTakeInput(p)
-		}
-		w.stInnovate(p)
-		w.stCorrect(p)
-		w.stAccept(p)
-		w.stPublish(p)
+		w.indented(func(w *writer) {
+			if p.hasD {
+				w.stTakeInput(p)
+			}
+			w.stInnovate(p)
+			w.stCorrect(p)
+			w.stAccept(p)
+			w.stPublish(p)
+		})
 		w.line("    END_IF;\n    IF do_predict THEN")
-		w.stTakeInput(p)
-		w.stAdvance(p)
-		w.stAccept(p)
+		w.indented(func(w *writer) {
+			w.stTakeInput(p)
+			w.stAdvance(p)
+			w.stAccept(p)
+		})
 		w.line("    END_IF;")
 	} else {
 		w.stTakeInput(p)

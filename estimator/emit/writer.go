@@ -22,6 +22,15 @@ func (w *writer) lines(block string, pairs ...string) {
 	w.WriteString(strings.NewReplacer(pairs...).Replace(strings.TrimPrefix(block, "\n")))
 }
 
+// indented writes what f writes one level deeper.
+func (w *writer) indented(f func(w *writer)) {
+	var inner writer
+	f(&inner)
+	for l := range strings.Lines(inner.String()) {
+		w.WriteString("    " + l)
+	}
+}
+
 // headNotes are the lines of the comment at the head of a code file.
 func headNotes(p *program, what string) []string {
 	form := "prediction form: the estimate after sample k is of sample k+1"
