@@ -93,8 +93,8 @@ func (r *response) peak(m *model, complement bool) (value, rad float64, err erro
 	if complement {
 		gain = func(nu float64) float64 { return cmplx.Abs(1 - r.at(nu)[0]) }
 	}
-	p := search{gain: gain, best: gain(math.Inf(1)), where: math.Inf(1)}
-	p.try(0)
+	p := search{gain: gain, best: gain(0)}
+	p.try(math.Inf(1))
 	for i, re := range r.re {
 		if r.im[i] >= 0 {
 			p.try(r.im[i])

@@ -289,6 +289,10 @@ func TestClosedForms(t *testing.T) {
 	if err != nil || m.GainAboveDB != inf || m.GainBelowDB != -inf || m.PhaseDeg != inf || m.DelayS != inf || m.SensitivityPeak != 1 {
 		t.Errorf("no loop: %+v, %v", m, err)
 	}
+	// what nothing drives has no gain anywhere
+	if v, w, err := PeakGain(System{A: one(-1), B: one(0), C: one(1)}); v != 0 || w != 0 || err != nil {
+		t.Errorf("no input: %v at %v, %v", v, w, err)
+	}
 	// a resonance w²/(s² + 2ζws + w²) peaks at 1/(2ζ√(1 − ζ²)), at w√(1 − 2ζ²), for any damping
 	for _, z := range []float64{1e-9, 1e-6, 1e-3, 0.1, 0.5, 0.7} {
 		const w = 30.0

@@ -23,7 +23,11 @@ func (s *Solver) run() error {
 			return ErrUnstable
 		}
 		largest = max(largest, size)
-		if size*largest <= Level {
+		bound := largest
+		if len(s.keep) == n { // the peak is that of the whole, which is submultiplicative too
+			bound = min(bound, s.peak*(1+1e-3))
+		}
+		if size*bound <= Level {
 			return nil
 		}
 		if count > most {

@@ -14,7 +14,7 @@ import (
 const Level = 0.02
 
 const (
-	smooth    = 0.05 // largest second difference of a step, relative
+	smooth    = 0.15 // largest second difference of a step, relative
 	tolerance = 1e-5 // relative accuracy of the peak
 	fine      = 3e-3 // bend below which a parabola is as accurate
 	most      = 20000
