@@ -13,7 +13,7 @@ import (
 func TestHostileNumbers(t *testing.T) {
 	sizes := []float64{0, 0, 1, -1, 0.5, 1e-300, -1e300, 5e-324, 1e150, -1e-150, 1e8, -1e-8, math.MaxFloat64}
 	var answers int
-	for seed := range uint64(3000) {
+	for seed := range uint64(1500) {
 		r := rand.New(rand.NewPCG(seed, 17))
 		n, out := 1+r.IntN(4), 1+r.IntN(2)
 		draw := func(a, b int) blas64.General {
@@ -60,7 +60,7 @@ func TestHostileNumbers(t *testing.T) {
 			}
 		}
 	}
-	if answers < 500 {
+	if answers < 250 {
 		t.Errorf("only %d answers", answers)
 	}
 }

@@ -200,6 +200,34 @@ func TestMarginsByEigenvalues(t *testing.T) {
 	t.Logf("%d loops, %d with a phase margin", loops, finite)
 }
 
+// TestNarrowResonance closes the loop around L = g w²/(s² + 2ζws + w²),
+// whose gain passes 1 twice within a sliver around w.
+func TestNarrowResonance(t *testing.T) {
+	const w = 40.0
+	for _, z := range []float64{1e-2, 1e-4, 1e-6} {
+		for _, over := range []float64{1.01, 1.5, 30} { // |L| at its top, nearly
+			g := over * 2 * z
+			sys := System{
+				A: blas64.General{Rows: 2, Cols: 2, Stride: 2, Data: []float64{0, w, -w, -2 * z * w}},
+				B: blas64.General{Rows: 2, Cols: 1, Stride: 1, Data: []float64{0, w}},
+				C: blas64.General{Rows: 1, Cols: 2, Stride: 2, Data: []float64{g, 0}},
+			}
+			// with x = (ν/w)²: (1 − x)² + 4ζ²x = g², and −L = −g/(1 − x + 2ζ√x j)
+			half, rest := 1-2*z*z, math.Sqrt(4*z*z*z*z-4*z*z+g*g)
+			phase, delay := math.Inf(1), math.Inf(1)
+			for _, x := range []float64{half - rest, half + rest} {
+				angle := math.Pi - math.Atan2(2*z*math.Sqrt(x), 1-x)
+				phase, delay = min(phase, angle*180/math.Pi), min(delay, angle/(w*math.Sqrt(x)))
+			}
+			m, err := Margins(sys)
+			tol := 1e-9 + 1e-13/z // the matrix itself fixes the damping no better
+			if err != nil || math.Abs(m.PhaseDeg/phase-1) > tol || math.Abs(m.DelayS/delay-1) > tol || !math.IsInf(m.GainAboveDB, 1) || !math.IsInf(m.GainBelowDB, -1) {
+				t.Errorf("damping %v, %v: %+v, %v; want %v°, %v s", z, over, m, err, phase, delay)
+			}
+		}
+	}
+}
+
 func TestPeakGainsByRow(t *testing.T) {
 	for seed := range uint64(60) {
 		r := rand.New(rand.NewPCG(seed, 13))

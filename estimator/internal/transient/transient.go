@@ -62,7 +62,7 @@ type Solver struct {
 // all, says which rows and columns of Φ the norm looks at. f, n×n, is not
 // changed.
 //
-// Where the transient has more than 20000 steps (damping below about 1e-4), the
+// Where the transient has more than 20000 steps (damping below about 3e-4), the
 // settle time comes from a bisection that takes the envelope over 64 steps as
 // falling.
 func (s *Solver) Settle(f blas64.General, period float64, keep []bool) (settle, peak float64, err error) {
