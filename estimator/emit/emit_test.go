@@ -1,0 +1,315 @@
+package emit_test
+
+import (
+	"bytes"
+	"encoding/csv"
+	"encoding/json"
+	"errors"
+	"flag"
+	"fmt"
+	"math"
+	"os"
+	"path/filepath"
+	"strconv"
+	"strings"
+	"testing"
+
+	"gonum.org/v1/gonum/mat"
+	"pgregory.net/rapid"
+
+	"polewright/estimator"
+	"polewright/estimator/emit"
+)
+
+var update = flag.Bool("update", false, "write the golden files anew")
+
+// everyFile emits a source for every target.
+func everyFile(t testing.TB, src emit.Source) []emit.File {
+	t.Helper()
+	var all []emit.File
+	for target := emit.C99; target <= emit.CSV; target++ {
+		files, err := emit.Emit(src, target)
+		if err != nil {
+			t.Fatal(err)
+		}
+		all = append(all, files...)
+	}
+	return all
+}
+
+func TestGolden(t *testing.T) {
+	for _, f := range everyFile(t, gate()) {
+		path := filepath.Join("testdata", "golden", f.Name)
+		if *update {
+			if err := os.MkdirAll(filepath.Dir(path), 0o755); err != nil {
+				t.Fatal(err)
+			}
+			if err := os.WriteFile(path, f.Text, 0o644); err != nil {
+				t.Fatal(err)
+			}
+		}
+		want, err := os.ReadFile(path)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if !bytes.Equal(f.Text, want) {
+			t.Errorf("%s differs from its golden file; look at it, then run the test with -update", f.Name)
+		}
+	}
+}
+
+func TestSameSourceSameBytes(t *testing.T) {
+	src := randomSource(t, shape{n: 5, m: 2, p: 2, wrap: true, ranges: true}, 4)
+	a, b := everyFile(t, src), everyFile(t, src)
+	for i := range a {
+		if a[i].Name != b[i].Name || !bytes.Equal(a[i].Text, b[i].Text) {
+			t.Errorf("%s differs between two calls", a[i].Name)
+		}
+	}
+}
+
+// Every file says where it comes from, the units and the cautions.
+func TestProvenanceUnitsAndCautions(t *testing.T) {
+	src := gate()
+	for _, f := range everyFile(t, src) {
+		text := strings.Join(strings.Fields(strings.NewReplacer(" * ", " ").Replace(string(f.Text))), " ")
+		for _, want := range []string{
+			src.Plant, src.Candidate, src.PlantSHA256, src.SessionSHA256, src.Version, src.Cautions[0], "low energy", "really applied", "0.0625",
+		} {
+			if !strings.Contains(text, want) {
+				t.Errorf("%s lacks %q", f.Name, want)
+			}
+		}
+		if !strings.Contains(f.Name, "selftest") && !strings.Contains(text, "m/s") {
+			t.Errorf("%s lacks units", f.Name)
+		}
+	}
+}
+
+func TestStabilityCautions(t *testing.T) {
+	src := gate()
+	src.Model.A.Set(0, 0, 1.5) // the plant alone is unstable
+	src.Model.A.Set(1, 1, 0.5)
+	src.L = mat.NewDense(2, 1, []float64{1.2, 0})
+	head := string(emitC(t, src)[0].Text)
+	if !strings.Contains(head, "Without sensor rail encoder the estimate drifts") || strings.Contains(head, "NOT STABLE") {
+		t.Errorf("unstable plant, stable estimator:\n%.1800s", head)
+	}
+	src.L = mat.NewDense(2, 1, []float64{0.1, 0})
+	if head = string(emitC(t, src)[0].Text); !strings.Contains(head, "THE ESTIMATOR IS NOT STABLE") {
+		t.Errorf("unstable estimator:\n%.1800s", head)
+	}
+	src = gate()
+	src.Model.A = mat.NewDense(2, 2, []float64{1.1, 0, 0, 0.9})
+	src.Model.C = mat.NewDense(2, 2, []float64{1, 0, 0, 1})
+	src.L = mat.NewDense(2, 2, []float64{0.6, 0, 0, 0.1})
+	src.Sensors = append(src.Sensors, emit.Signal{Name: "speedo"})
+	src.Model.SensorNames = nil
+	src.Sensors[0].Name = "rail"
+	head = string(emitC(t, src)[0].Text)
+	if !strings.Contains(head, "Losing sensor rail makes") || strings.Contains(head, "Losing sensor speedo") {
+		t.Errorf("sensor sets:\n%.1800s", head)
+	}
+}
+
+func TestJSONReadsBack(t *testing.T) {
+	src := randomSource(t, shape{n: 4, m: 2, p: 2, through: true, ranges: true, wrap: true}, 8)
+	src.Model.StateNames = []string{"µ \u202e \U0001F600", "b", "c", "d"}
+	src.Arithmetic = emit.Float // does not touch the data
+	files, err := emit.Emit(src, emit.JSON)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var doc struct {
+		A, B, C, D  [][]float64
+		Gain        [][]float64
+		GainCurrent [][]float64 `json:"gain_current"`
+		Form        string
+		Period      float64 `json:"period_s"`
+		States      []struct{ Name string }
+		Sensors     []struct {
+			Range []float64
+			Wrap  float64
+		}
+		Cautions []string
+	}
+	if err := json.Unmarshal(files[0].Text, &doc); err != nil {
+		t.Fatal(err)
+	}
+	for _, m := range []struct {
+		got  [][]float64
+		want *mat.Dense
+	}{{doc.A, src.Model.A}, {doc.B, src.Model.B}, {doc.C, src.Model.C}, {doc.D, src.Model.D}, {doc.Gain, src.L}, {doc.GainCurrent, src.Lf}} {
+		for i, row := range m.got {
+			for j, v := range row {
+				if v != m.want.At(i, j) {
+					t.Errorf("%g, want %g", v, m.want.At(i, j))
+				}
+			}
+		}
+	}
+	if doc.Form != "prediction" || doc.Period != 0.005 || doc.States[0].Name != src.Model.StateNames[0] ||
+		doc.Sensors[0].Wrap != 2*math.Pi || doc.Sensors[1].Range[1] != 4.7 || len(doc.Cautions) < 5 {
+		t.Errorf("document %+v", doc)
+	}
+}
+
+func TestCSVReadsBack(t *testing.T) {
+	src := randomSource(t, shape{n: 3, m: 1, p: 2, form: estimator.Current}, 8)
+	src.Model.StateNames = []string{"=1+1", "a,\"b\"", "c\nd"}
+	files, err := emit.Emit(src, emit.CSV)
+	if err != nil {
+		t.Fatal(err)
+	}
+	records, err := csv.NewReader(bytes.NewReader(files[0].Text)).ReadAll()
+	if err != nil {
+		t.Fatal(err)
+	}
+	from := map[string]*mat.Dense{"A": src.Model.A, "B": src.Model.B, "C": src.Model.C, "L": src.L, "Lf": src.Lf}
+	count, names := 0, []string{"'=1+1", "a,\"b\"", "c<U+000A>d"}
+	for _, r := range records {
+		m := from[r[0]]
+		if m == nil {
+			continue
+		}
+		i, _ := strconv.Atoi(r[1])
+		j, _ := strconv.Atoi(r[2])
+		if v, err := strconv.ParseFloat(r[6], 64); err != nil || v != m.At(i-1, j-1) {
+			t.Errorf("%v: want %g", r, m.At(i-1, j-1))
+		}
+		if r[0] == "A" && (r[3] != names[i-1] || r[4] != names[j-1]) {
+			t.Errorf("names %q, %q", r[3], r[4])
+		}
+		count++
+	}
+	if count != 9+3+6+6+6 {
+		t.Errorf("%d entries", count)
+	}
+}
+
+func TestErrors(t *testing.T) {
+	tests := []struct {
+		name  string
+		spoil func(*emit.Source)
+		want  error
+	}{
+		{"no model", func(s *emit.Source) { s.Model = nil }, estimator.ErrShape},
+		{"continuous", func(s *emit.Source) { s.Model.Period = 0 }, emit.ErrContinuous},
+		{"no C", func(s *emit.Source) { s.Model.C = nil }, estimator.ErrShape},
+		{"C of another size", func(s *emit.Source) { s.Model.C = mat.NewDense(1, 3, nil) }, estimator.ErrShape},
+		{"no gain", func(s *emit.Source) { s.L = nil }, estimator.ErrShape},
+		{"no current gain", func(s *emit.Source) { s.Form, s.Lf = estimator.Current, nil }, estimator.ErrShape},
+		{"NaN in A", func(s *emit.Source) { s.Model.A.Set(0, 1, math.NaN()) }, estimator.ErrNotFinite},
+		{"infinite gain", func(s *emit.Source) { s.L.Set(0, 0, math.Inf(1)) }, estimator.ErrNotFinite},
+		{"NaN offset", func(s *emit.Source) { s.States[0].Offset = math.NaN() }, estimator.ErrNotFinite},
+		{"two signals for one", func(s *emit.Source) { s.Inputs = append(s.Inputs, emit.Signal{}) }, estimator.ErrShape},
+		{"names", func(s *emit.Source) { s.Model.StateNames = []string{"a"} }, estimator.ErrShape},
+		{"roles", func(s *emit.Source) { s.Model.Roles = []estimator.Role{0} }, estimator.ErrShape},
+		{"scale", func(s *emit.Source) { s.Model.StateScale = []float64{1, 0} }, emit.ErrValue},
+		{"wrap", func(s *emit.Source) { s.Sensors[0].Wrap = -1 }, emit.ErrValue},
+		{"range", func(s *emit.Source) { s.Sensors[0].Range = []float64{2, 1} }, emit.ErrValue},
+		{"infinite range", func(s *emit.Source) { s.Sensors[0].Range = []float64{0, math.Inf(1)} }, emit.ErrValue},
+		{"too large for float", func(s *emit.Source) { s.Arithmetic = emit.Float; s.Model.B.Set(0, 0, 1e35) }, emit.ErrValue},
+		{"form", func(s *emit.Source) { s.Form = 7 }, emit.ErrTarget},
+		{"arithmetic", func(s *emit.Source) { s.Arithmetic = 7 }, emit.ErrTarget},
+	}
+	for _, test := range tests {
+		src := gate()
+		test.spoil(&src)
+		files, err := emit.Emit(src, emit.C99)
+		if !errors.Is(err, test.want) || files != nil {
+			t.Errorf("%s: error %v, want %v", test.name, err, test.want)
+		}
+	}
+	if _, err := emit.Emit(gate(), 9); !errors.Is(err, emit.ErrTarget) {
+		t.Errorf("target 9: %v", err)
+	}
+	if _, err := emit.ParseTarget("pascal"); !errors.Is(err, emit.ErrTarget) {
+		t.Errorf("pascal: %v", err)
+	}
+	if _, err := emit.ParseArithmetic("half"); !errors.Is(err, emit.ErrTarget) {
+		t.Errorf("half: %v", err)
+	}
+	for target := emit.C99; target <= emit.CSV; target++ {
+		if got, err := emit.ParseTarget(target.String()); err != nil || got != target {
+			t.Errorf("%s: %v, %v", target, got, err)
+		}
+	}
+}
+
+// Whatever the numbers, there is an error or a text without NaN and infinity
+// whose structured text passes its own check.
+func TestExtremeNumbers(t *testing.T) {
+	values := rapid.SampledFrom([]float64{0, 1, -1, 0.5, -0.3, 1e-3, 1e3, 1e12, 1e-12, 1e30, 1e300, -1e300, 1e-300, 5e-324, math.MaxFloat64, math.NaN(), math.Inf(1)})
+	rapid.Check(t, func(t *rapid.T) {
+		n, m, p := rapid.IntRange(1, 4).Draw(t, "n"), rapid.IntRange(0, 2).Draw(t, "m"), rapid.IntRange(1, 3).Draw(t, "p")
+		matrix := func(r, c int) *mat.Dense {
+			if c == 0 {
+				return nil
+			}
+			return mat.NewDense(r, c, rapid.SliceOfN(values, r*c, r*c).Draw(t, "entries"))
+		}
+		src := emit.Source{
+			Model: &estimator.Model{Period: 1, A: matrix(n, n), B: matrix(n, m), C: matrix(p, n), D: matrix(p, m)},
+			Form:  estimator.Form(rapid.IntRange(0, 1).Draw(t, "form")), L: matrix(n, p), Lf: matrix(n, p),
+			Arithmetic: emit.Arithmetic(rapid.IntRange(0, 1).Draw(t, "arithmetic")),
+		}
+		for range p {
+			s := emit.Signal{Offset: values.Draw(t, "offset"), Wrap: values.Draw(t, "wrap")}
+			if rapid.Bool().Draw(t, "ranged") {
+				s.Range = []float64{values.Draw(t, "low"), values.Draw(t, "high")}
+			}
+			src.Sensors = append(src.Sensors, s)
+		}
+		for target := emit.C99; target <= emit.CSV; target++ {
+			files, err := emit.Emit(src, target)
+			if err != nil {
+				continue
+			}
+			for _, f := range files {
+				if bytes.Contains(f.Text, []byte("NaN,")) || bytes.Contains(f.Text, []byte("Inf")) {
+					t.Fatalf("%s holds a number that is none", f.Name)
+				}
+			}
+			if target == emit.StructuredText {
+				if _, err := parseST(string(files[0].Text), nil); err != nil {
+					t.Fatal(err)
+				}
+			}
+		}
+	})
+}
+
+func TestSmallestNumbersCompile(t *testing.T) {
+	src := gate()
+	src.Model.A.Set(1, 0, 5e-324)
+	src.Model.C.Set(0, 1, -1e-310)
+	for _, a := range []emit.Arithmetic{emit.Double, emit.Float} {
+		src.Arithmetic = a
+		for _, cc := range []string{"gcc", "clang"} {
+			path := compiler(t, cc)
+			dir := t.TempDir()
+			build(t, path, filepath.Join(dir, "out"), write(t, dir, emitC(t, src))[1])
+		}
+	}
+}
+
+var sink []emit.File
+
+func BenchmarkEmit(b *testing.B) {
+	for _, n := range []int{4, 8, 20, 50} {
+		src := randomSource(b, shape{n: n, m: 2, p: 2, ranges: true}, 1)
+		for target := emit.C99; target <= emit.CSV; target++ {
+			b.Run(fmt.Sprintf("%s/n=%d", target, n), func(b *testing.B) {
+				b.ReportAllocs()
+				for b.Loop() {
+					files, err := emit.Emit(src, target)
+					if err != nil {
+						b.Fatal(err)
+					}
+					sink = files
+				}
+			})
+		}
+	}
+}
