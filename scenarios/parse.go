@@ -28,6 +28,9 @@ const (
 // With a fuller plant in [truth], the length of initial.true is checked by
 // NewRunner, which has that plant.
 func Parse(file string, data []byte, p *plants.Plant) (*Scenario, error) {
+	if p == nil {
+		return nil, wrong("plant", "missing", "a scenario is read for a plant")
+	}
 	raw, truth, err := decode(file, data, p)
 	if err != nil {
 		return nil, err

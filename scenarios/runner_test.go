@@ -252,3 +252,41 @@ func TestRunRefusesGainsThatDoNotFit(t *testing.T) {
 		}
 	}
 }
+
+func TestPlantWithoutInputs(t *testing.T) {
+	for _, model := range []string{"time = \"discrete\"\nperiod_s = 0.1\nA = [[0.9]]", "time = \"continuous\"\nA = [[-1]]"} {
+		p := plantOf(t, "format = 1\n[model]\n"+model+"\nC = [[1]]\n")
+		s := scenarioOf(t, p, "duration_s = 3\ninitial = { true = [2] }\n[[fault]]\nsensor = \"y1\"\nkind = \"dropout\"\nfrom_s = 1")
+		run := runOf(t, p, s, Gain{L: mat.NewDense(1, 1, []float64{0.5})})
+		last := len(run.T) - 1
+		if run.Diverged || len(run.Inputs) != 0 || !(math.Abs(run.Estimate[0][last]-run.True[0][last]) < 0.2) {
+			t.Errorf("%s: true %g, estimate %g", model, run.True[0][last], run.Estimate[0][last])
+		}
+	}
+}
+
+func TestRunnerRefuses(t *testing.T) {
+	p := plantOf(t, cart)
+	m := modelOf(t, p)
+	s := scenarioOf(t, p, "duration_s = 1")
+	if _, err := NewRunner(p, m, nil, nil); err == nil {
+		t.Error("no scenario")
+	}
+	other := plantOf(t, strings.ReplaceAll(cart, "tacho", "gauge"))
+	if _, err := NewRunner(other, m, s, nil); err == nil || !strings.Contains(err.Error(), `no sensor "tacho"`) {
+		t.Errorf("another plant's model: %v", err)
+	}
+	long := *s
+	long.Duration = 1e12
+	if _, err := NewRunner(p, m, &long, nil); err == nil || err.Error() != "s.toml: duration_s: 1e+12 s in steps of 0.1 s; expected at most 2000000 steps" {
+		t.Errorf("too long: %v", err)
+	}
+	open := *m
+	open.K = nil
+	if _, err := NewRunner(p, &open, s, nil); err == nil {
+		t.Error("a closed loop without a controller")
+	}
+	if _, err := Parse("s.toml", nil, nil); err == nil {
+		t.Error("no plant")
+	}
+}
