@@ -24,7 +24,33 @@ func (p *problem) start() (*mat.Dense, error) {
 		}
 		errors.As(err, &reason)
 	}
+	if x := p.openLoop(); x != nil {
+		return x, nil
+	}
 	return nil, reason
+}
+
+// openLoop returns the covariance without any correction, from which Newton's
+// method starts as well; nil where the plant is not stable by itself.
+func (p *problem) openLoop() *mat.Dense {
+	poles, err := p.work.poles(p, mat.NewDense(p.n, p.p, nil))
+	if err != nil {
+		return nil
+	}
+	for _, v := range poles {
+		if !p.strictly(v, 0) {
+			return nil
+		}
+	}
+	solve := p.work.form.Lyapunov
+	if p.discrete {
+		solve = p.work.form.Stein
+	}
+	x := mat.NewDense(p.n, p.n, nil)
+	if solve(x.RawMatrix(), p.w.RawMatrix()) != nil {
+		return nil
+	}
+	return x
 }
 
 // tryDoubling returns a covariance with a stabilising gain, found with extra

@@ -2,8 +2,10 @@ package riccati_test
 
 import (
 	"errors"
+	"fmt"
 	"math"
 	"math/cmplx"
+	"math/rand/v2"
 	"strings"
 	"testing"
 
@@ -267,4 +269,98 @@ func TestAnySize(t *testing.T) {
 			t.Fatalf("residual %g", s.Residual)
 		}
 	})
+}
+
+// What the states are counted in must not matter: P in other units is
+// S P S, S = diag(units), to a small part of the standard deviations.
+func TestUnitsDoNotMatter(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		n, p := rapid.IntRange(1, 8).Draw(t, "n"), rapid.IntRange(1, 2).Draw(t, "p")
+		seed := rand.New(rand.NewPCG(rapid.Uint64().Draw(t, "seed"), 1))
+		draw := func(r, c int) *mat.Dense {
+			m := mat.NewDense(r, c, nil)
+			for i := range r {
+				for j := range c {
+					m.Set(i, j, seed.NormFloat64()/math.Sqrt(float64(n)))
+				}
+			}
+			return m
+		}
+		a, c, g, r := draw(n, n), draw(p, n), draw(n, n), mat.NewDense(p, p, nil)
+		for j := range p {
+			r.Set(j, j, 1)
+		}
+		var w mat.Dense
+		w.Mul(g, g.T())
+		unit := make([]float64, n)
+		for i := range unit {
+			unit[i] = math.Pow(10, float64(seed.IntN(17)-8))
+		}
+		discrete := rapid.Bool().Draw(t, "discrete")
+		first, err := run(discrete, a, c, &w, r)
+		if err != nil {
+			t.Skip(err)
+		}
+		a.Apply(func(i, j int, v float64) float64 { return v * unit[i] / unit[j] }, a)
+		c.Apply(func(_, j int, v float64) float64 { return v / unit[j] }, c)
+		w.Apply(func(i, j int, v float64) float64 { return v * unit[i] * unit[j] }, &w)
+		second, err := run(discrete, a, c, &w, r)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for i := range n {
+			for j := range n {
+				e := second.P.At(i, j)/unit[i]/unit[j] - first.P.At(i, j)
+				if math.Abs(e) > 1e-6*math.Sqrt(first.P.At(i, i)*first.P.At(j, j)) {
+					t.Fatalf("P(%d,%d) differs by %g", i, j, e)
+				}
+			}
+		}
+	})
+}
+
+// A nearly constant unknown gives a pole close to the limit, p ≈ sqrt(w r) and
+// l ≈ sqrt(w/r): the closed forms of the scalar equations.
+func TestSlowUnknown(t *testing.T) {
+	for _, w := range []float64{1e-4, 1e-10, 1e-16, 1e-20} {
+		c := equation{"", false, []float64{0}, []float64{1}, []float64{w}, []float64{1}, ""}
+		s, err := c.solve()
+		if err != nil || math.Abs(s.P.At(0, 0)/math.Sqrt(w)-1) > 1e-14 {
+			t.Errorf("continuous, w = %g: %v, %v", w, s, err)
+		}
+		c.a, c.discrete = []float64{1}, true
+		s, err = c.solve()
+		if want := (w + math.Sqrt(w*w+4*w)) / 2; err != nil || math.Abs(s.P.At(0, 0)/want-1) > 1e-8 {
+			t.Errorf("discrete, w = %g: %v, want %g, %v", w, s, want, err)
+		}
+	}
+}
+
+var sink float64
+
+func BenchmarkRiccati(b *testing.B) {
+	for _, n := range []int{4, 6, 10, 20, 50} {
+		a, c, w := mat.NewDense(n, n, nil), mat.NewDense(1, n, nil), mat.NewDense(n, n, nil)
+		for i := range n {
+			a.Set(i, i, -0.1*float64(i+1)/float64(n))
+			w.Set(i, i, 1)
+			if i > 0 {
+				a.Set(i, i-1, -a.At(i, i))
+			}
+		}
+		c.Set(0, n-1, 1)
+		r := mat.NewDense(1, 1, []float64{1})
+		for name, discrete := range map[string]bool{"Continuous": false, "Discrete": true} {
+			b.Run(fmt.Sprintf("%s/n=%d", name, n), func(b *testing.B) {
+				b.ReportAllocs()
+				for b.Loop() {
+					s, err := run(discrete, a, c, w, r)
+					if err != nil {
+						b.Fatal(err)
+					}
+					sink += s.Residual
+				}
+			})
+		}
+	}
 }

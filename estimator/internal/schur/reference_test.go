@@ -83,3 +83,42 @@ func distance(x, y mat.Matrix) float64 {
 	}
 	return math.Inf(1)
 }
+
+// The optimum of each case lists its gain, its condition number in mpmath, and
+// its poles; a repeated pole counts with an orthonormal basis.
+func TestReferenceConditions(t *testing.T) {
+	data, err := os.ReadFile("testdata/robust.json")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var file struct {
+		Cases []struct {
+			Name    string      `json:"name"`
+			A       [][]float64 `json:"A"`
+			C       [][]float64 `json:"C"`
+			Optimum struct {
+				L    [][]float64 `json:"L"`
+				Cond float64     `json:"cond2_left"`
+			} `json:"optimum_estimate"`
+		}
+	}
+	if err := json.Unmarshal(data, &file); err != nil {
+		t.Fatal(err)
+	}
+	if len(file.Cases) < 16 {
+		t.Fatalf("only %d cases", len(file.Cases))
+	}
+	for _, c := range file.Cases {
+		var m mat.Dense
+		m.Mul(rows(c.Optimum.L), rows(c.C))
+		m.Sub(rows(c.A), &m)
+		var f schur.Form
+		must(t, f.Factor(m.RawMatrix()))
+		got, err := f.VectorCondition()
+		if e := math.Abs(got/c.Optimum.Cond - 1); err != nil || !(e < 1e-9) {
+			t.Errorf("%s: %.12g, want %.12g (%v)", c.Name, got, c.Optimum.Cond, err)
+		} else {
+			t.Logf("%s: error %.2g", c.Name, e)
+		}
+	}
+}
