@@ -42,16 +42,25 @@ func PeakGains(sys System) (values, rads []float64, err error) {
 	if err != nil {
 		return nil, nil, err
 	}
-	if m.n > certified {
-		return r.scanned(m)
+	if !r.stable() {
+		return nil, nil, ErrUnstable
 	}
-	for i := range m.c.r {
+	values, rads = make([]float64, r.out), make([]float64, r.out)
+	r.scan(values, rads)
+	for i := range values {
+		p := search{gain: r.row(i).gain, best: values[i], where: rads[i]}
+		if m.n > certified {
+			rads[i] = m.rad(rads[i])
+			if math.IsNaN(p.best) || math.IsInf(p.best, 0) {
+				return nil, nil, ErrNotFinite
+			}
+			continue
+		}
 		one := &model{n: m.n, period: m.period, a: m.a, b: m.b, c: dense{1, m.n, m.c.row(i)}, d: dense{1, m.b.c, m.d.row(i)}}
-		v, w, err := r.row(i).peak(one, false)
+		values[i], rads[i], err = p.certify(one)
 		if err != nil {
 			return nil, nil, fmt.Errorf("output %d: %w", i+1, err)
 		}
-		values, rads = append(values, v), append(rads, w)
 	}
 	return values, rads, nil
 }
@@ -94,15 +103,17 @@ func (r *response) peak(m *model, complement bool) (value, rad float64, err erro
 		gain = func(nu float64) float64 { return cmplx.Abs(1 - r.at(nu)[0]) }
 	}
 	p := search{gain: gain, best: gain(0)}
-	p.try(math.Inf(1))
-	for i, re := range r.re {
-		if r.im[i] >= 0 {
-			p.try(r.im[i])
-			p.try(math.Hypot(re, r.im[i]))
-		}
+	for _, nu := range r.poleGrid() {
+		p.try(nu)
 	}
+	p.climb()
+	return p.certify(m)
+}
+
+// certify looks for gains of m above the best known, until a level just above
+// it has no crossing.
+func (p *search) certify(m *model) (value, rad float64, err error) {
 	for range 40 {
-		p.climb()
 		nus, err := m.crossings(p.best * (1 + 1e-9))
 		if err != nil {
 			return math.NaN(), math.NaN(), err
@@ -118,6 +129,7 @@ func (r *response) peak(m *model, complement bool) (value, rad float64, err erro
 		if !(p.best > before*(1+1e-9)) {
 			break
 		}
+		p.climb()
 	}
 	if math.IsNaN(p.best) || math.IsInf(p.best, 0) {
 		return math.NaN(), math.NaN(), ErrNotFinite

@@ -37,22 +37,6 @@ func (r *response) poleGrid() []float64 {
 	return append(list, math.Inf(1))
 }
 
-// scanned is PeakGains by scan.
-func (r *response) scanned(m *model) (values, rads []float64, err error) {
-	if !r.stable() {
-		return nil, nil, ErrUnstable
-	}
-	values, rads = make([]float64, r.out), make([]float64, r.out)
-	r.scan(values, rads)
-	for i, v := range values {
-		if math.IsNaN(v) || math.IsInf(v, 0) {
-			return nil, nil, ErrNotFinite
-		}
-		rads[i] = m.rad(rads[i])
-	}
-	return values, rads, nil
-}
-
 // scan fills the largest gain of each output and where it is, from one pass
 // over poleGrid and a climb from every local maximum that comes near the best.
 func (r *response) scan(values, nus []float64) {
