@@ -12,21 +12,18 @@ import (
 type small struct {
 	m    [4][4]float64
 	rhs  [4]float64
-	used [4]bool
 	list [4]int
 	size int
 	// tiny is the size at or below which a pivot counts as zero.
 	tiny float64
 }
 
+// set adds unknown (i, j), with v on its right side.
 func (s *small) set(i, j int, v float64) {
 	k := 2*i + j
 	s.rhs[k] = v
-	if !s.used[k] {
-		s.used[k] = true
-		s.list[s.size] = k
-		s.size++
-	}
+	s.list[s.size] = k
+	s.size++
 }
 
 func (s *small) get(i, j int) float64 { return s.rhs[2*i+j] }
