@@ -209,3 +209,6 @@ func replay(t testing.TB, log logs.Recording, q logs.Request) *logs.Result {
 	}
 	return r
 }
+
+// denseOf is a matrix of zeros.
+func denseOf(rows, cols int) *mat.Dense { return mat.NewDense(rows, cols, nil) }

@@ -78,7 +78,6 @@ func Open(ctx context.Context, src io.ReadSeeker, l *Layout, o Options) (*Log, e
 	if err := r.open(src, l, o); err != nil {
 		return nil, err
 	}
-	r.check = true
 	var p pace
 	for {
 		if r.count%4096 == 0 && ctx.Err() != nil {
@@ -159,7 +158,6 @@ func (g *Log) Samples() (Source, error) {
 	if _, err := g.src.Seek(g.start, io.SeekStart); err != nil {
 		return nil, fmt.Errorf("reading a log again: %w", err)
 	}
-	g.file.check = false
 	if err := g.file.open(g.src, g.layout, g.opt); err != nil {
 		return nil, err
 	}

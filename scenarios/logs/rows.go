@@ -70,7 +70,6 @@ type rows struct {
 	references []column
 	slot       []int // per column, its place in references
 
-	check bool // nothing but times is read, the rest is checked
 	now   Sample
 	count int64
 	lost  []int64 // per sensor
@@ -129,7 +128,7 @@ func (r *rows) checkHeader(header [][]byte) error {
 	}
 	numeric := true
 	for _, f := range header {
-		if v, ok := number(f, true); !ok || math.IsNaN(v) {
+		if v, ok := number(f); !ok || math.IsNaN(v) {
 			numeric = false
 		}
 	}
@@ -159,7 +158,7 @@ func (r *rows) next() error {
 		if c.kind == passedOver {
 			continue
 		}
-		v, ok := number(fields[i], r.check && c.kind != timeColumn)
+		v, ok := number(fields[i])
 		if !ok {
 			return r.notNumber(c, fields[i])
 		}

@@ -25,6 +25,27 @@ func (t *total) add(v float64) {
 
 func (t *total) value() float64 { return t.sum + t.rest }
 
+// sum adds many terms: plainly in blocks, the blocks compensated.
+type sum struct {
+	part  float64
+	terms int
+	whole total
+}
+
+func (s *sum) add(v float64) {
+	s.part += v
+	if s.terms++; s.terms == blockSize {
+		s.whole.add(s.part)
+		s.part, s.terms = 0, 0
+	}
+}
+
+func (s *sum) value() float64 {
+	s.whole.add(s.part)
+	s.part, s.terms = 0, 0
+	return s.whole.value()
+}
+
 // series collects the mean, the variance and the autocovariances of one signal
 // without keeping it. A sample that is left out breaks the signal: pairs are
 // counted within unbroken runs only.

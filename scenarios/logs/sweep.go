@@ -50,9 +50,11 @@ func Sweep(ctx context.Context, log Recording, q Request, gains []Gain) ([]Point
 		return nil, err
 	}
 	s := newSweep(l, log.Survey(), &q, gains, longest, x)
-	for {
-		if s.clock.index%4096 == 0 && ctx.Err() != nil {
-			return nil, ctx.Err()
+	for work := pollEvery; ; {
+		if work >= pollEvery {
+			if work = 0; ctx.Err() != nil {
+				return nil, ctx.Err()
+			}
 		}
 		sample, err := source.Next()
 		if err == io.EOF {
@@ -62,7 +64,43 @@ func Sweep(ctx context.Context, log Recording, q Request, gains []Gain) ([]Point
 			return nil, err
 		}
 		s.step(sample)
+		work += len(gains) * (1 + sample.Missing)
 	}
+}
+
+// FloorFamily are the floor gains of a model as its assumed process noise goes
+// through factors times Q: the curve of the best linear estimators, from slow to
+// fast. A factor without a floor is left out; used has those that stand behind the
+// gains.
+func FloorFamily(ctx context.Context, m *estimator.Model, factors []float64) (gains []Gain, used []float64, err error) {
+	if err := m.Check(); err != nil {
+		return nil, nil, err
+	}
+	for _, factor := range factors {
+		if ctx.Err() != nil {
+			return nil, nil, ctx.Err()
+		}
+		if !(factor >= 0) || math.IsInf(factor, 0) {
+			return nil, nil, fmt.Errorf("a factor of %g on the process noise: %w", factor, estimator.ErrNoise)
+		}
+		family := *m
+		family.Q = mat.NewSymDense(m.Q.SymmetricDim(), nil)
+		family.Q.ScaleSym(factor, m.Q)
+		d, err := estimator.NewDesigner(&family, estimator.Options{})
+		if err != nil {
+			return nil, nil, fmt.Errorf("the floor at %g times the process noise: %w", factor, err)
+		}
+		floor := d.Analysis().Floor
+		if floor == nil {
+			continue
+		}
+		design, err := d.Judge(estimator.Given{L: floor.Gain})
+		if err != nil {
+			return nil, nil, fmt.Errorf("the floor at %g times the process noise: %w", factor, err)
+		}
+		gains, used = append(gains, GainOf(design)), append(used, factor)
+	}
+	return gains, used, nil
 }
 
 // sweep is many filters on one log.
