@@ -74,12 +74,18 @@ func (r *robust) nullSpaces() {
 // nullSpace writes an orthonormal basis of the null space of W − λ U₁ᵀ to t, from
 // a Householder QR factorisation of its conjugate transpose.
 func (r *robust) nullSpace(t []complex128, lambda complex128) {
-	n, p := r.n, r.p
-	k := n - p
+	n := r.n
+	k := n - r.p
 	h := r.house[:k*n]
 	for i := range h {
 		h[i] = complex(r.w[i], 0) - cmplx.Conj(lambda)*complex(r.u1[i], 0)
 	}
+	complement(t, h, k, n)
+}
+
+// complement writes an orthonormal basis of what is orthogonal to the k vectors of
+// length n in h, which it overwrites, to t: n − k vectors.
+func complement(t, h []complex128, k, n int) {
 	for j := range k {
 		v := h[j*n+j : j*n+n]
 		if !householder(v) {
@@ -90,8 +96,9 @@ func (r *robust) nullSpace(t []complex128, lambda complex128) {
 			reflectComplex(h[l*n+j:l*n+n], v)
 		}
 	}
+	t = t[:(n-k)*n]
 	clear(t)
-	for i := range p {
+	for i := range n - k {
 		x := t[i*n : i*n+n]
 		x[k+i] = 1
 		for j := k - 1; j >= 0; j-- {

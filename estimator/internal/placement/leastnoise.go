@@ -15,9 +15,9 @@ import (
 //
 // Method: quasi-Newton descent over the eigenvectors as in Robust, from its choice and
 // from further deterministic starts, with the gradient from the adjoint equation. The
-// answer is a local minimum, the best of those found. Up to p copies of a pole keep
-// independent eigenvectors. More copies are placed as Robust does, without a search,
-// and Converged is then false.
+// answer is a local minimum, the best of those found. With repeated poles the search
+// goes over the block-triangular forms instead, slower and for n p ≤ 40 only; beyond
+// that the gain is that of Robust and Converged is false.
 //
 // warm serves as in Robust. Use one per method.
 //
@@ -45,8 +45,11 @@ func (s *Solver) LeastNoise(dst, a, c, w, r blas64.General, weights []float64, p
 	if !s.robust.load(a, c) {
 		return Info{}, ErrSensors
 	}
-	if p == 1 || s.robust.gather(s.list) > p {
+	if p == 1 {
 		return s.leastOfOne(dst, a, c, poles, warm)
+	}
+	if s.robust.gather(s.list) > 1 {
+		return s.quietRepeated(dst, a, c, poles, warm)
 	}
 	s.robust.noise = q
 	info, ok := s.robust.quiet(warm)
@@ -80,7 +83,8 @@ func checkNoise(n, p int, w, r blas64.General, weights []float64) error {
 	return nil
 }
 
-// leastOfOne serves lists that leave no search: one sensor, or long chains.
+// leastOfOne serves lists that leave no search: one sensor, or no independent
+// eigenvectors.
 func (s *Solver) leastOfOne(dst, a, c blas64.General, poles []complex128, warm *Warm) (Info, error) {
 	info, err := s.Robust(dst, a, c, poles, nil)
 	if warm != nil {

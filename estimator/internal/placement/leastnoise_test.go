@@ -180,3 +180,71 @@ func TestLeastNoiseBadInput(t *testing.T) {
 		t.Errorf("no weights: cost %g, error %v", info.Cost, err)
 	}
 }
+
+// Repeated poles: never noisier than robust, nor than poles slightly apart, which are
+// searched in another way.
+func TestLeastNoiseOfRepeatedPoles(t *testing.T) {
+	masses := general([][]float64{{0, 1, 0, 0}, {-2, -0.1, 1, 0.05}, {0, 0, 0, 1}, {1, 0.05, -2, -0.1}})
+	both := general([][]float64{{1, 0, 0, 0}, {0, 0, 1, 0}})
+	w, r := zeros(4, 4), general([][]float64{{0.02, 0}, {0, 0.05}})
+	w.Data[5], w.Data[15] = 1, 0.3
+	weights := []float64{1, 2, 1, 0.5}
+	cases := []struct {
+		name     string
+		poles    []complex128
+		discrete bool
+		chain    int
+	}{
+		{"double", []complex128{-3, -3, -4, -5}, false, 2},
+		{"all equal", []complex128{-3, -3, -3, -3}, false, 4},
+		{"double pair", []complex128{-3 + 1i, -3 - 1i, -3 + 1i, -3 - 1i}, false, 2},
+		{"discrete", []complex128{0.4, 0.4, 0.4, 0.1}, true, 3},
+		{"deadbeat", []complex128{0, 0, 0, 0}, true, 4},
+	}
+	var s placement.Solver
+	for _, c := range cases {
+		robust, l := zeros(4, 2), zeros(4, 2)
+		if _, err := s.Robust(robust, masses, both, c.poles, nil); err != nil {
+			t.Fatal(err)
+		}
+		cost := func(l blas64.General) float64 {
+			p, sum := covariance(t, masses, both, w, r, l, c.discrete), 0.0
+			for i, v := range weights {
+				sum += v * p.At(i, i)
+			}
+			return sum
+		}
+		var warm placement.Warm
+		info, err := s.LeastNoise(l, masses, both, w, r, weights, c.poles, c.discrete, &warm)
+		if err != nil {
+			t.Errorf("%s: %v", c.name, err)
+			continue
+		}
+		apart := append([]complex128(nil), c.poles...)
+		for i := range apart {
+			apart[i] -= complex(4e-3*float64(i/2), 0)
+			if imag(apart[i]) == 0 {
+				apart[i] -= complex(2e-3*float64(i%2), 0)
+			}
+		}
+		limit, err := s.LeastNoise(zeros(4, 2), masses, both, w, r, weights, apart, c.discrete, nil)
+		if err != nil { // poles this close to 0 and to each other are out of reach apart
+			limit.Cost = cost(robust)
+		}
+		miss := poleError(closed(masses, both, l), c.poles)
+		t.Logf("%-12s cost %.6g, robust %.6g, apart %.6g, poles %.1e, %d steps %v", c.name, info.Cost, cost(robust), limit.Cost, miss, info.Iterations, info.Converged)
+		if info.Cost > cost(robust)*(1+1e-9) || math.Abs(cost(l)/info.Cost-1) > 1e-6 {
+			t.Errorf("%s: cost %g, told %g, robust %g", c.name, cost(l), info.Cost, cost(robust))
+		}
+		if info.Cost > 1.01*limit.Cost {
+			t.Errorf("%s: cost %g, of poles slightly apart %g", c.name, info.Cost, limit.Cost)
+		}
+		if allowed := 20 * math.Pow(0x1p-48, 1/float64(c.chain)); miss > allowed {
+			t.Errorf("%s: poles off by %g, allowed %g", c.name, miss, allowed)
+		}
+		again, err := s.LeastNoise(l, masses, both, w, r, weights, c.poles, c.discrete, warm.Clone())
+		if err != nil || again.Cost > info.Cost*(1+1e-6) {
+			t.Errorf("%s, warm: cost %g after %g, %v", c.name, again.Cost, info.Cost, err)
+		}
+	}
+}

@@ -76,10 +76,6 @@ func (r *robust) cold() (Info, bool) {
 // scatter mixes each frame by random numbers.
 func (r *robust) scatter(seed *uint64) {
 	n, p := r.n, r.p
-	draw := func() float64 { // Knuth's 64-bit linear congruential generator (MMIX)
-		*seed = *seed*6364136223846793005 + 1442695040888963407
-		return float64(*seed>>11)/(1<<52) - 1
-	}
 	r.descent.reset(r.free, len(r.frames))
 	old := r.descent.saved
 	copy(old, r.frames)
@@ -89,9 +85,9 @@ func (r *robust) scatter(seed *uint64) {
 		clear(g.t)
 		for j := range p {
 			for l := range p {
-				y := complex(draw(), 0)
+				y := complex(draw(seed), 0)
 				if g.pair {
-					y += complex(0, draw())
+					y += complex(0, draw(seed))
 				}
 				for k, v := range from[l*n : l*n+n] {
 					g.t[j*n+k] += y * v
@@ -142,4 +138,11 @@ func (r *robust) condition() float64 {
 		most, least = math.Max(most, size), math.Min(least, size)
 	}
 	return most / least
+}
+
+// draw returns a number from −1 to 1 by Knuth's 64-bit linear congruential generator
+// (MMIX), so that every run takes the same starts.
+func draw(seed *uint64) float64 {
+	*seed = *seed*6364136223846793005 + 1442695040888963407
+	return float64(*seed>>11)/(1<<52) - 1
 }

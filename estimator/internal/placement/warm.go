@@ -14,6 +14,7 @@ type Warm struct {
 	groups  []group // their frames point into frames
 	frames  []complex128
 	hessian []float64 // of the descent that ended there, or empty
+	gain    []float64 // n×p, in place of eigenvectors where least noise met repeated poles
 }
 
 // Clone returns an independent copy; of nil, nil.
@@ -23,15 +24,26 @@ func (w *Warm) Clone() *Warm {
 	}
 	c := &Warm{n: w.n, p: w.p}
 	c.store(w.groups, w.frames, w.hessian)
+	c.gain = slices.Clone(w.gain)
 	return c
 }
 
 // Empty tells whether w holds no choice yet.
-func (w *Warm) Empty() bool { return w == nil || len(w.groups) == 0 }
+func (w *Warm) Empty() bool { return w == nil || len(w.groups) == 0 && len(w.gain) == 0 }
 
-func (w *Warm) clear() { w.groups = w.groups[:0] }
+func (w *Warm) clear() { w.groups, w.gain = w.groups[:0], w.gain[:0] }
+
+// fits tells whether w holds a choice for n states and p sensors.
+func (w *Warm) fits(n, p int) bool { return !w.Empty() && w.n == n && w.p == p }
+
+func (w *Warm) keepGain(n, p int, gain []float64) {
+	w.clear()
+	w.n, w.p = n, p
+	w.gain = append(w.gain, gain...)
+}
 
 func (w *Warm) store(groups []group, frames []complex128, hessian []float64) {
+	w.gain = w.gain[:0]
 	w.groups = append(w.groups[:0], groups...)
 	w.frames = append(w.frames[:0], frames...)
 	w.hessian = append(w.hessian[:0], hessian...)
@@ -56,7 +68,7 @@ func (w *Warm) keep(r *robust) {
 // reports false where nothing fits. carried tells that the stored inverse Hessian
 // fits as well and has been handed to the descent.
 func (w *Warm) project(r *robust) (ok, carried bool) {
-	if w.Empty() || w.n != r.n || w.p != r.p {
+	if !w.fits(r.n, r.p) || len(w.groups) == 0 {
 		return false, false
 	}
 	r.start = grow(r.start, len(r.frames))
@@ -79,7 +91,7 @@ func (w *Warm) project(r *robust) (ok, carried bool) {
 // distance to the nearest, relative to the pole, for a slow one to a tenth of the
 // fastest.
 func (w *Warm) moved(groups []group) float64 {
-	if w.Empty() {
+	if w.Empty() || len(w.groups) == 0 {
 		return 0
 	}
 	size := 0.0
