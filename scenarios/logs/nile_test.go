@@ -104,6 +104,21 @@ func TestNile(t *testing.T) {
 	if p := res.Whiteness[0].P; p < 0.05 {
 		t.Errorf("whiteness rejected with p = %g", p)
 	}
+	// The same recursion and Ljung & Box's Q in NumPy 1.24 and SciPy 1.10.
+	for _, c := range []struct {
+		what       string
+		have, want float64
+	}{
+		{"mean", float64(in.Mean), -12.043890695730516},
+		{"std", float64(in.Std), 142.3035729635856},
+		{"NIS", float64(res.NISMean), 0.9900537284001962},
+		{"Q", float64(res.Whiteness[0].Q), 15.74237202605315},
+		{"p", float64(res.Whiteness[0].P), 0.7324729243093868},
+	} {
+		if math.Abs(c.have/c.want-1) > 1e-7 {
+			t.Errorf("%s %.12g, want %.12g", c.what, c.have, c.want)
+		}
+	}
 	t.Logf("innovations: mean %.4g (%.4g..%.4g), std %.4g, expected %.4g (%.4g..%.4g)", in.Mean, in.MeanLow, in.MeanHigh, in.Std, in.StdExpected, in.StdLow, in.StdHigh)
 	t.Logf("whiteness: Q %.4g, p %.4g, effect %.3g; NIS %.4g (%.4g..%.4g)", res.Whiteness[0].Q, res.Whiteness[0].P, res.Whiteness[0].EffectSize, res.NISMean, res.NISLow, res.NISHigh)
 }

@@ -338,6 +338,26 @@ func TestResultKeys(t *testing.T) {
 	}
 }
 
+func TestReadingAllocatesNothingPerRow(t *testing.T) {
+	m := tracker()
+	l := layoutOf(m)
+	u, y, _ := simulate(m, 8000, rand.New(rand.NewPCG(8, 9)))
+	g := logs.Gain{L: kalman(m, 1)}
+	count := func(steps int) float64 {
+		text := csvOf(u[:steps], y[:steps], 17)
+		return testing.AllocsPerRun(3, func() {
+			log, err := logs.Open(context.Background(), bytes.NewReader(text), l, logs.Options{InputLag: 1})
+			if err != nil {
+				t.Fatal(err)
+			}
+			replay(t, log, logs.Request{Model: m, Gain: g, Floor: &g})
+		})
+	}
+	if few, many := count(4000), count(8000); many > few {
+		t.Errorf("%g allocations for 8000 rows, %g for 4000", many, few)
+	}
+}
+
 func TestReplayAllocatesNothingPerSample(t *testing.T) {
 	m := tracker()
 	l := layoutOf(m)

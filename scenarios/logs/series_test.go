@@ -160,7 +160,7 @@ func TestNumberAgainstStrconv(t *testing.T) {
 		}
 	}
 	rng := rand.New(rand.NewPCG(61, 62))
-	for range 200000 {
+	for range 50000 {
 		v := math.Ldexp(rng.Float64()-0.5, rng.IntN(60)-40)
 		same(t, strconv.FormatFloat(v, 'g', -1, 64))
 		same(t, strconv.FormatFloat(v, 'f', rng.IntN(22), 64))
