@@ -91,7 +91,7 @@ func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design
 			return nil, fmt.Errorf("no current-form gain Lf solves A Lf = L: %w", ErrMethod)
 		}
 	}
-	out.GainNorm = mat.Norm(out.Gain, 2)
+	out.GainNorm = norm2(out.Gain)
 
 	f := d.errorMatrix(ls)
 	if err := d.form.Factor(raw(f)); err != nil {
@@ -116,6 +116,15 @@ func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design
 	out.SensorSets = d.sensorSets(ls)
 	d.warn(out)
 	return out, nil
+}
+
+// norm2 is the largest singular value; mat.Norm(a, 2) is Frobenius's norm.
+func norm2(a *mat.Dense) float64 {
+	var svd mat.SVD
+	if !svd.Factorize(a, mat.SVDNone) {
+		return math.NaN()
+	}
+	return svd.Values(nil)[0]
 }
 
 // errorMatrix returns F = A − L C in scaled coordinates.
@@ -283,18 +292,14 @@ func (d *Designer) peakGains(out *Design) {
 	f.Mul(out.Gain, d.model.C)
 	f.Sub(d.model.A, &f)
 	b.Scale(-1, out.Gain)
-	peaks := make([]Peak, d.n)
-	for i := range peaks {
-		row := mat.NewDense(1, d.n, nil)
-		row.Set(0, i, 1)
-		v, w, err := frequency.PeakGain(frequency.System{A: raw(&f), B: raw(&b), C: raw(row), Period: d.model.Period})
-		if err != nil {
-			v, w = math.NaN(), math.NaN()
-			out.Warnings = append(out.Warnings, fmt.Sprintf("peak gain of %s: %v", d.stateName(i), err))
-		}
-		peaks[i] = Peak{Value: v, Frequency: w}
+	values, rads, err := frequency.PeakGains(frequency.System{A: raw(&f), B: raw(&b), C: raw(identity(d.n)), Period: d.model.Period})
+	if err != nil {
+		out.Warnings = append(out.Warnings, "peak gains: "+err.Error())
+		return
 	}
-	out.Noise.PeakGain = peaks
+	for i, v := range values {
+		out.Noise.PeakGain = append(out.Noise.PeakGain, Peak{Value: v, Frequency: rads[i]})
+	}
 }
 
 func (d *Designer) judgeTransient(out *Design, f, ls, lf *mat.Dense) {

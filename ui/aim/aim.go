@@ -22,10 +22,7 @@ func Own(spec *poles.Spec, plane string, m *estimator.Model, d *estimator.Design
 	count := movable - registers
 	switch spec.Kind {
 	case poles.List:
-		if plane == "s" {
-			return toOwn(spec.Poles, m)
-		}
-		return spec.Poles, nil
+		return listed(spec, plane, m)
 	case poles.Butterworth:
 		return toOwn(poles.ButterworthAt(count, spec.Value), m)
 	case poles.Bessel:
@@ -44,6 +41,23 @@ func Own(spec *poles.Spec, plane string, m *estimator.Model, d *estimator.Design
 		return faster("the controller's", base, spec.Value, m, d)
 	}
 	return nil, errors.New("unknown pattern")
+}
+
+// listed maps a list given in plane; a place given by frequency and damping is in
+// the s-plane in any case.
+func listed(spec *poles.Spec, plane string, m *estimator.Model) ([]complex128, error) {
+	out := append([]complex128(nil), spec.Poles...)
+	for i := range out {
+		if plane != "s" && (spec.InS == nil || !spec.InS[i]) {
+			continue
+		}
+		own, err := toOwn(out[i:i+1], m)
+		if err != nil {
+			return nil, err
+		}
+		out[i] = own[0]
+	}
+	return out, nil
 }
 
 // toOwn maps s-plane poles to the model's own plane.

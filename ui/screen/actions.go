@@ -148,7 +148,7 @@ func (m *Model) toggleForm() tea.Cmd {
 		return nil
 	}
 	next := m.now
-	next.form, next.gain = estimator.Current, nil
+	next.form, next.gain, next.gainCurrent = estimator.Current, nil, nil
 	text := "current form: this step's sample counts for this step's estimate"
 	if m.now.form == estimator.Current {
 		next.form, text = estimator.Prediction, "prediction form: this step's sample counts for the next estimate"

@@ -17,15 +17,15 @@ import (
 // request is what to ask for the design in hand. A gain that is known is judged
 // as it stands, nothing is optimised anew behind the user's back.
 func (m *Model) request() desk.Request {
-	r := desk.Request{Gen: m.gen, Form: m.now.form, Method: m.now.method, Gain: m.now.gain}
+	r := desk.Request{Gen: m.gen, Form: m.now.form, Method: m.now.method, Gain: m.now.gain, GainCurrent: m.now.gainCurrent}
 	if m.now.design != nil {
-		r.Gain = m.now.design.Gain
-	}
-	if r.Gain != nil {
-		return r
+		r.Gain, r.GainCurrent = m.now.design.Gain, m.now.design.GainCurrent
 	}
 	if len(m.now.set.List) > 0 {
 		r.Poles = m.now.set.Poles()
+	}
+	if r.Gain != nil {
+		return r
 	}
 	if m.shown != nil && m.shown.Stable && m.shown.Form == r.Form && m.shown.Method == r.Method {
 		r.From = m.shown
@@ -42,6 +42,10 @@ func (m *Model) answer(a *desk.Answer) tea.Cmd {
 		if a.Gen == m.gen {
 			m.failure, m.pending, m.keepWanted = a.Err, time.Time{}, false
 			m.refuse("no design: " + a.Err.Error())
+			if m.saveWanted != nil {
+				m.saveWanted = nil
+				m.refuse("not saved, there is no design: " + a.Err.Error())
+			}
 			m.dirty |= readingsRegion | tracesRegion
 		}
 		return nil
@@ -74,7 +78,7 @@ func (m *Model) answer(a *desk.Answer) tea.Cmd {
 		m.fitPlane()
 		m.dirty |= planeRegion
 	}
-	return nil
+	return m.saveDue()
 }
 
 // upToDate notes that the newest request is answered, as far as the stage goes.

@@ -75,9 +75,9 @@ func (m *Model) recall(i int) tea.Cmd {
 	next := m.now
 	next.set, next.form, next.method = set, c.Form, c.Method
 	next.held = min(next.held, max(len(set.List)-1, 0))
-	next.gain = nil
+	next.gain, next.gainCurrent = nil, nil
 	if c.Design != nil {
-		next.gain = c.Design.Gain
+		next.gain, next.gainCurrent = c.Design.Gain, c.Design.GainCurrent
 	}
 	cmd := m.change(next, "")
 	m.current = c.Letter

@@ -75,7 +75,7 @@ func New(cfg Config) Model {
 	if set, err := targets.From(w.Poles, m.period()); err == nil {
 		m.now.set = set
 	}
-	m.now.form, m.now.method, m.now.gain = w.Form, w.Method, w.Gain
+	m.now.form, m.now.method, m.now.gain, m.now.gainCurrent = w.Form, w.Method, w.Gain, w.GainCurrent
 	m.now.held = min(max(w.View.Selected, 0), max(len(m.now.set.List)-1, 0))
 	if n, _, _ := w.Bench.Model.Dims(); m.trace >= n {
 		m.trace = 0
@@ -100,9 +100,9 @@ func (m Model) Work() desk.Work {
 	w := m.cfg.Work
 	w.File, w.Form, w.Method = m.file, m.now.form, m.now.method
 	w.Poles = m.now.set.Poles()
-	w.Gain = m.now.gain
+	w.Gain, w.GainCurrent = m.now.gain, m.now.gainCurrent
 	if m.now.design != nil {
-		w.Gain = m.now.design.Gain
+		w.Gain, w.GainCurrent = m.now.design.Gain, m.now.design.GainCurrent
 	}
 	w.Candidates = append([]desk.Candidate(nil), m.candidates...)
 	w.Current = m.current

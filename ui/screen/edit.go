@@ -74,7 +74,7 @@ func (m *Model) move(name string, dx, dy int) tea.Cmd {
 		return nil
 	}
 	next := m.now
-	next.set, next.held, next.gain = set, held, nil
+	next.set, next.held, next.gain, next.gainCurrent = set, held, nil, nil
 	switch event {
 	case targets.Parted:
 		m.say("the pair reached the axis: two real poles, one of them in your hand")
@@ -124,7 +124,7 @@ func (m *Model) scale(name string, factor float64) tea.Cmd {
 		return nil
 	}
 	next := m.now
-	next.set, next.gain = set, nil
+	next.set, next.gain, next.gainCurrent = set, nil, nil
 	cmd := m.change(next, name)
 	m.follow()
 	return cmd
@@ -137,7 +137,7 @@ func (m *Model) replaceAll(list []complex128) (state, error) {
 		return m.now, err
 	}
 	next := m.now
-	next.set, next.gain = set, nil
+	next.set, next.gain, next.gainCurrent = set, nil, nil
 	next.held = min(next.held, max(len(set.List)-1, 0))
 	return next, nil
 }
@@ -164,7 +164,7 @@ func (m *Model) snapToFloor() tea.Cmd {
 		m.refuse(err.Error())
 		return nil
 	}
-	next.gain = m.analysis.Floor.Gain
+	next.gain, next.gainCurrent = m.analysis.Floor.Gain, nil
 	m.say("on the floor: poles and gain of the best linear estimator for these noise figures")
 	cmd := m.change(next, "")
 	m.follow()

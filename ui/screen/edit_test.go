@@ -246,11 +246,18 @@ func TestSaveAndQuit(t *testing.T) {
 	r.wantShown("Test hoist.session.json")
 	r.press("enter")
 	r.run()
+	if len(r.saved) > 0 {
+		t.Fatal("saved poles before their gain was there")
+	}
+	r.reply(desk.Judged)
+	r.run()
 	if _, ok := r.saved["Test hoist.session.json"]; !ok {
 		t.Fatalf("saved %v", r.saved)
 	}
 	r.wantShown("saved Test hoist.session.json")
-	r.press("left", "s")
+	r.press("left")
+	r.reply(desk.Judged)
+	r.press("s")
 	r.run()
 	r.press("ctrl+c")
 	r.run()
@@ -262,7 +269,9 @@ func TestSaveAndQuit(t *testing.T) {
 func TestSaveNeverReplacesUnasked(t *testing.T) {
 	r := start(t)
 	r.exist["Test hoist.session.json"] = true
-	r.press("left", "s", "enter")
+	r.press("left")
+	r.reply(desk.Judged)
+	r.press("s", "enter")
 	r.run()
 	r.wantShown("exists")
 	if len(r.saved) > 0 {
@@ -276,6 +285,7 @@ func TestSaveNeverReplacesUnasked(t *testing.T) {
 		t.Error("not replaced when told to")
 	}
 	r.press("left", "q", "s")
+	r.reply(desk.Judged)
 	r.run()
 	if !r.quit {
 		t.Error("s at the question should save and quit")

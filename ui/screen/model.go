@@ -24,7 +24,9 @@ type state struct {
 	held   int // index into the targets, behind them the fixed poles
 	form   estimator.Form
 	method estimator.Method
-	gain   *mat.Dense // judged as it stands, in place of placing the poles; else nil
+	// gain and its current form are judged as they stand, in place of placing the
+	// poles; else nil.
+	gain, gainCurrent *mat.Dense
 	// What was found for exactly this state, nil until it came.
 	design *estimator.Design
 	limits []readings.Limit
@@ -78,6 +80,7 @@ type Model struct {
 	repeats        int
 	quitAfterSave  bool
 	saving         bool
+	saveWanted     *saveOrder // until the figures of the design in hand are there
 	journalled     uint64
 	axesUnfit      bool
 	lastEdit       time.Time

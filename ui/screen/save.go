@@ -46,11 +46,29 @@ func suggestion(plant string) string {
 	return clean + ending
 }
 
+// saveOrder is a save that waits.
+type saveOrder struct {
+	file    string
+	replace bool
+}
+
+// write saves at once, or as soon as the design in hand has its gain and no other
+// save is on its way: poles never go to a file with another design's gain.
 func (m *Model) write(file string, replace bool) tea.Cmd {
-	if m.saving {
-		m.say("still saving")
+	if m.failure != nil {
+		m.refuse("not saved, there is no design: " + m.failure.Error())
 		return nil
 	}
+	m.saveWanted = &saveOrder{file, replace}
+	return m.saveDue()
+}
+
+func (m *Model) saveDue() tea.Cmd {
+	if m.saveWanted == nil || m.saving || m.now.design == nil {
+		return nil
+	}
+	file, replace := m.saveWanted.file, m.saveWanted.replace
+	m.saveWanted = nil
 	m.saving = true
 	m.say("saving")
 	m.dirty |= statusRegion
@@ -85,7 +103,8 @@ func (m *Model) savedResult(msg savedMsg) tea.Cmd {
 	if quit && !m.Unsaved() {
 		return tea.Quit
 	}
-	return nil
+	m.quitAfterSave = quit && m.saveWanted != nil
+	return m.saveDue()
 }
 
 // quit leaves, after a question where something would be lost.

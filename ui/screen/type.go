@@ -32,7 +32,7 @@ func (m *Model) askPlace() tea.Cmd {
 			return nil, err
 		}
 		next := m.now
-		next.set, next.held, next.gain = set, held, nil
+		next.set, next.held, next.gain, next.gainCurrent = set, held, nil, nil
 		cmd := m.change(next, "")
 		m.follow()
 		return cmd, nil
