@@ -9,7 +9,7 @@ import (
 // The packed product is the plain one, bit for bit.
 func TestPackedProductIsThePlainOne(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
-		f := newFlat(rapid.IntRange(0, 13).Draw(t, "rows"), rapid.IntRange(0, 9).Draw(t, "cols"))
+		f := newFlat(rapid.IntRange(0, 25).Draw(t, "rows"), rapid.IntRange(0, 9).Draw(t, "cols"))
 		number := rapid.Float64Range(-10, 10)
 		for i := range f.a {
 			f.a[i] = number.Draw(t, "entry")
