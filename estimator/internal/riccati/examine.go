@@ -50,13 +50,13 @@ func (p *problem) examine() error {
 			continue
 		}
 		if hidden(p.a, p.c, v) {
-			return absent("the sensors do not see the mode at %s, which does not die out by itself", show(v))
+			return absent("the sensors do not see the mode at %s, which does not die out by itself", show(v, margin))
 		}
 		if p.beyond(v, margin) {
 			continue
 		}
 		if hidden(at, reach, v) {
-			return absent("no process noise reaches the mode at %s, which lies on the stability limit: the best estimator would in time stop correcting it", show(v))
+			return absent("no process noise reaches the mode at %s, which lies on the stability limit: the best estimator would in time stop correcting it", show(v, margin))
 		}
 	}
 	return nil

@@ -184,7 +184,7 @@ func (p *problem) finish(x *mat.Dense) (*Solution, error) {
 	}
 	for _, v := range poles {
 		if !p.strictly(v, margin) {
-			return nil, absent("with the best gain a pole would stay at %s, on the stability limit", show(v))
+			return nil, absent("with the best gain a pole would stay at %s, on the stability limit", show(v, 0))
 		}
 	}
 	if !(best.residual < 1e-6) {
@@ -201,14 +201,14 @@ func (p *problem) finish(x *mat.Dense) (*Solution, error) {
 	return s, nil
 }
 
-// show writes an eigenvalue for a sentence.
-func show(v complex128) string {
-	if imag(v) == 0 {
-		return fmt.Sprintf("%.4g", real(v))
+// show writes an eigenvalue for a sentence, with parts below rounding as 0.
+func show(v complex128, rounding float64) string {
+	re, im := real(v), imag(v)
+	if math.Abs(re) <= rounding {
+		re = 0
 	}
-	sign := "+"
-	if imag(v) < 0 {
-		sign = "-"
+	if math.Abs(im) <= rounding {
+		return fmt.Sprintf("%.4g", re)
 	}
-	return fmt.Sprintf("%.4g%s%.4gi", real(v), sign, math.Abs(imag(v)))
+	return fmt.Sprintf("%.4g%+.4gi", re, im)
 }
