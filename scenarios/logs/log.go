@@ -92,7 +92,7 @@ func Open(ctx context.Context, src io.ReadSeeker, l *Layout, o Options) (*Log, e
 		}
 		p.add(r.now.T, r.now.Line)
 	}
-	p.settle()
+	p.finish()
 	if r.count < 2 {
 		rows := fmt.Sprintf("%d rows", r.count)
 		if r.count == 1 {
@@ -136,15 +136,13 @@ func (g *Log) checkPace(p *pace) error {
 	if g.opt.Resample {
 		return nil
 	}
-	for _, have := range []float64{p.median, p.period()} {
-		if math.Abs(have/want-1) <= 0.01 {
-			continue
-		}
-		return g.file.fault("column "+quote(g.file.timeField()),
-			fmt.Sprintf("a row every %.6g s, but the design's period is %.6g s", have, want),
-			fmt.Sprintf("expected the same within 1 %%: design for the log's period (period_s, or --period %.6g for a continuous plant), or hold its last values on the design's (--resample)", have))
+	have := p.period()
+	if math.Abs(have/want-1) <= 0.01 {
+		return nil
 	}
-	return nil
+	return g.file.fault("column "+quote(g.file.timeField()),
+		fmt.Sprintf("a row every %.6g s, but the design's period is %.6g s", have, want),
+		fmt.Sprintf("expected the same within 1 %%: design for the log's period (period_s, or --period %.6g for a continuous plant), or hold its last values on the design's (--resample)", have))
 }
 
 // Layout returns what the log was opened with.
@@ -164,26 +162,5 @@ func (g *Log) Samples() (Source, error) {
 	if g.opt.Resample {
 		return newGrid(&g.file.queue, g.layout.Period, g.survey.interval), nil
 	}
-	return &paced{queue: &g.file.queue, period: g.survey.interval}, nil
-}
-
-// paced counts the missing rows between those of a log.
-type paced struct {
-	queue  *lagQueue
-	period float64
-	last   float64
-	begun  bool
-}
-
-func (p *paced) Next() (*Sample, error) {
-	s, err := p.queue.next()
-	if err != nil {
-		return nil, err
-	}
-	s.Missing = 0
-	if p.begun {
-		s.Missing = int(periodsIn(s.T-p.last, p.period)) - 1
-	}
-	p.last, p.begun = s.T, true
-	return s, nil
+	return newPaced(&g.file.queue, g.survey.interval), nil
 }

@@ -5,25 +5,24 @@ import (
 	"slices"
 )
 
-const (
-	// paceRows is how many intervals settle what the period of a log is.
-	paceRows = 1024
-	// maxGap bounds the sample periods between two rows.
-	maxGap = 1000000
-)
+// paceRows is how many intervals settle what the period of a log is.
+const paceRows = 1024
 
 // pace measures the period of a log from the times of its rows. The median of the
-// first intervals tells missing rows from jitter, the mean over all sample
-// periods is the measure.
+// first intervals tells missing rows from jitter, the mean of all intervals
+// without missing rows is the measure.
 type pace struct {
-	first      []interval
+	times      []float64 // of the first rows, until the median is known
 	median     float64
-	periods    float64 // sample periods passed, missing rows included
+	slots      slots
+	placed     float64 // time of the last row that has its place
+	rows       int64   // that have their place
+	gaps       float64 // time of intervals with missing rows
+	intervals  int64   // without missing rows
 	missing    int64
 	begin, end float64
 	low, high  float64 // least and largest interval less its whole periods
 	longest    interval
-	started    bool
 }
 
 type interval struct {
@@ -32,63 +31,83 @@ type interval struct {
 }
 
 func (p *pace) add(t float64, line int) {
-	if !p.started {
-		p.started = true
-		p.begin, p.end = t, t
-		p.low, p.high = math.Inf(1), math.Inf(-1)
-		return
+	if p.median == 0 && len(p.times) == 0 {
+		p.begin, p.low, p.high = t, math.Inf(1), math.Inf(-1)
+	} else if d := t - p.end; d > p.longest.span {
+		p.longest = interval{d, line}
 	}
-	d := interval{t - p.end, line}
 	p.end = t
 	if p.median > 0 {
-		p.count(d)
+		p.place(t)
 		return
 	}
-	p.first = append(p.first, d)
-	if len(p.first) == paceRows {
+	p.times = append(p.times, t)
+	if len(p.times) > paceRows {
 		p.settle()
 	}
 }
 
-// settle takes the median, the lower of two, and counts what came before.
+// settle takes the median, the lower of two, and places what came before.
 func (p *pace) settle() {
-	if p.median > 0 || len(p.first) == 0 {
+	if p.median > 0 || len(p.times) < 2 {
 		return
 	}
-	spans := make([]float64, len(p.first))
-	for i, d := range p.first {
-		spans[i] = d.span
+	spans := make([]float64, len(p.times)-1)
+	for i := range spans {
+		spans[i] = p.times[i+1] - p.times[i]
 	}
 	slices.Sort(spans)
 	p.median = spans[(len(spans)-1)/2]
-	for _, d := range p.first {
-		p.count(d)
+	p.slots.period = p.median
+	for _, t := range p.times {
+		p.place(t)
 	}
-	p.first = nil
+	p.times = nil
 }
 
-func (p *pace) count(d interval) {
-	if d.span > p.longest.span {
-		p.longest = d
+// finish places the last rows.
+func (p *pace) finish() {
+	p.settle()
+	p.drain(true)
+}
+
+func (p *pace) place(t float64) {
+	p.slots.add(t)
+	p.drain(false)
+}
+
+func (p *pace) drain(end bool) {
+	for {
+		t := p.slots.pending[0]
+		k, ok := p.slots.next(end)
+		if !ok {
+			return
+		}
+		if p.rows++; p.rows > 1 {
+			p.count(t-p.placed, k)
+		}
+		p.placed = t
 	}
-	k := periodsIn(d.span, p.median)
-	p.periods += k
-	p.missing += int64(k) - 1
-	rest := d.span - k*p.median
+}
+
+func (p *pace) count(span float64, k int) {
+	if k > 1 {
+		p.gaps += span
+		p.missing += int64(k - 1)
+	} else {
+		p.intervals++
+	}
+	rest := span - float64(k)*p.median
 	p.low, p.high = math.Min(p.low, rest), math.Max(p.high, rest)
 }
 
-// periodsIn is the whole number of sample periods that an interval stands for, at
-// most maxGap.
-func periodsIn(span, period float64) float64 {
-	if k := math.Round(span / period); k < maxGap {
-		return math.Max(1, k)
+// period is the mean of the intervals without missing rows.
+func (p *pace) period() float64 {
+	if p.intervals == 0 {
+		return p.median
 	}
-	return maxGap
+	return (p.end - p.begin - p.gaps) / float64(p.intervals)
 }
-
-// period is the mean over all sample periods.
-func (p *pace) period() float64 { return (p.end - p.begin) / p.periods }
 
 // jitter is the largest deviation of an interval over the period.
 func (p *pace) jitter() float64 {

@@ -4,8 +4,11 @@ import (
 	"bytes"
 	"context"
 	"errors"
+	"fmt"
 	"io"
 	"math"
+	"math/rand/v2"
+	"slices"
 	"strings"
 	"testing"
 
@@ -205,6 +208,79 @@ func TestJitter(t *testing.T) {
 	}
 }
 
+// Late time stamps are no missing rows, missing rows are no late time stamps, and
+// the survey counts what the samples say.
+func TestMissingRows(t *testing.T) {
+	late := func(k int, by float64) func(i int) float64 {
+		return func(i int) float64 {
+			if i == k {
+				return by
+			}
+			return 0
+		}
+	}
+	burst := func(i int) float64 { // five rows stamped when the fifth came
+		if i >= 30 && i < 35 {
+			return float64(35-i)*0.99 - 0.5
+		}
+		return 0
+	}
+	rng := rand.New(rand.NewPCG(71, 72))
+	shaking := func(int) float64 { return 0.6 * (rng.Float64() - 0.5) }
+	for _, c := range []struct {
+		name    string
+		jitter  func(i int) float64
+		missing []int // rows left out
+		gaps    map[int]int
+		drift   float64
+	}{
+		{name: "even"},
+		{name: "one late", jitter: late(20, 0.6)},
+		{name: "one early", jitter: late(20, -0.6)},
+		{name: "first late", jitter: late(0, 0.7)},
+		{name: "last late", jitter: late(98, 0.4)},
+		{name: "burst", jitter: burst},
+		{name: "shaking", jitter: shaking},
+		{name: "slow clock", drift: 0.004},
+		{name: "fast clock", drift: -0.004},
+		{name: "one missing", missing: []int{40}, gaps: map[int]int{40: 1}},
+		{name: "missing in a row and at the end", missing: []int{40, 41, 42, 97}, gaps: map[int]int{40: 3, 94: 1}},
+		{name: "two gaps close together", missing: []int{40, 42}, gaps: map[int]int{40: 1, 41: 1}},
+		{name: "shaking and missing", jitter: shaking, missing: []int{50, 51}, gaps: map[int]int{50: 2}},
+		{name: "burst behind a gap", jitter: burst, missing: []int{10, 11}, gaps: map[int]int{10: 2}},
+	} {
+		t.Run(c.name, func(t *testing.T) {
+			var text strings.Builder
+			text.WriteString(header)
+			rows := 0
+			for i := range 99 {
+				if slices.Contains(c.missing, i) {
+					continue
+				}
+				at := float64(i) * (1 + c.drift)
+				if c.jitter != nil {
+					at += c.jitter(i)
+				}
+				fmt.Fprintf(&text, "%.6f,4100,1.2,%d\n", at*0.01, i)
+				rows++
+			}
+			log := openText(t, hoist(), text.String(), logs.Options{})
+			list := take(t, log)
+			if len(list) != rows {
+				t.Fatalf("%d samples of %d rows", len(list), rows)
+			}
+			for k, s := range list {
+				if s.Missing != c.gaps[k] {
+					t.Errorf("row %d at %g s: %d missing, want %d", k, s.T, s.Missing, c.gaps[k])
+				}
+			}
+			if v := log.Survey(); v.Missing != int64(len(c.missing)) || math.Abs(v.Period/0.01-1-c.drift) > 0.01 {
+				t.Errorf("survey %+v", v)
+			}
+		})
+	}
+}
+
 func TestRecord(t *testing.T) {
 	text := header + "0,4101,0,0\n0.01,,1.2,\n0.04,4103,0,0\n0.05,4104,0,0\n"
 	log := openText(t, hoist(), text, logs.Options{})
@@ -260,9 +336,13 @@ func FuzzReader(f *testing.F) {
 		if err != nil {
 			t.Fatal(err)
 		}
+		missing := int64(0)
 		for k := int64(0); ; k++ {
 			s, err := source.Next()
 			if err == io.EOF {
+				if !resample && missing != v.Missing {
+					t.Fatalf("%d rows missing, the survey has %d", missing, v.Missing)
+				}
 				if k != v.Samples {
 					t.Fatalf("%d samples, the survey has %d", k, v.Samples)
 				}
@@ -271,6 +351,7 @@ func FuzzReader(f *testing.F) {
 			if err != nil {
 				t.Fatal(err)
 			}
+			missing += int64(s.Missing)
 			for _, u := range append(append(s.U, s.Y...), s.T) {
 				if math.IsInf(u, 0) || s.Missing < 0 {
 					t.Fatalf("sample %+v", s)
