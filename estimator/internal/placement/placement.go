@@ -18,6 +18,7 @@ import (
 var (
 	ErrShape        = errors.New("matrices and poles do not fit together")
 	ErrNotFinite    = errors.New("a number is not finite")
+	ErrRange        = errors.New("the numbers are too large or too small to be squared")
 	ErrPairs        = errors.New("a complex pole has no conjugate partner")
 	ErrUnobservable = errors.New("the sensors do not see every mode")
 	ErrSensors      = errors.New("the sensors are linearly dependent")
@@ -87,7 +88,24 @@ func checkInput(dst, a, c blas64.General, poles []complex128) error {
 			return fmt.Errorf("pole: %w", ErrNotFinite)
 		}
 	}
+	speed := largestOf(a)
+	for _, v := range poles {
+		speed = math.Max(speed, math.Max(math.Abs(real(v)), math.Abs(imag(v))))
+	}
+	for _, size := range []float64{speed, largestOf(c)} {
+		if size > 1e120 || size < 1e-120 && size != 0 {
+			return fmt.Errorf("size %.2g: %w", size, ErrRange)
+		}
+	}
 	return nil
+}
+
+func largestOf(g blas64.General) float64 {
+	m := 0.0
+	for i := range g.Rows {
+		m = math.Max(m, largest(g.Data[i*g.Stride:i*g.Stride+g.Cols]))
+	}
+	return m
 }
 
 func finite(g blas64.General) bool {

@@ -225,7 +225,9 @@ func TestBadInput(t *testing.T) {
 		{"no signal", zeros(2, 1), a, zeros(1, 2), good, placement.ErrUnobservable},
 		{"unseen mode", zeros(2, 1), general([][]float64{{-1, 0}, {0, -2}}), c, good, placement.ErrUnobservable},
 		{"dependent sensors", zeros(2, 2), a, general([][]float64{{1, 0}, {2, 0}}), good, placement.ErrSensors},
-		{"huge plant", zeros(2, 2), general([][]float64{{1e300, 1e300}, {1e300, -1e300}}), full, good, placement.ErrNotReached},
+		{"huge plant", zeros(2, 2), general([][]float64{{1e300, 1e300}, {1e300, -1e300}}), full, good, placement.ErrRange},
+		{"tiny plant", zeros(2, 1), general([][]float64{{0, 1e-200}, {1e-200, 0}}), c, []complex128{-1e-200, -2e-200}, placement.ErrRange},
+		{"tiny sensor", zeros(2, 1), a, general([][]float64{{1e-200, 0}}), good, placement.ErrRange},
 	}
 	var s placement.Solver
 	for _, x := range cases {
@@ -242,4 +244,52 @@ func TestBadInput(t *testing.T) {
 	if err := s.Single(zeros(2, 2), a, full, good); !errors.Is(err, placement.ErrShape) {
 		t.Errorf("Single with two sensors: %v", err)
 	}
+}
+
+// Whatever the input, the answer is a finite gain or an error.
+func TestNoPanicAndNoNaN(t *testing.T) {
+	values := []float64{0, 0, 1, -1, 1e-8, 1e8, -1e-30, 1e30, 1e-100, 1e100, 1e200, math.Inf(1), math.NaN()}
+	var s placement.Solver
+	rapid.Check(t, func(t *rapid.T) {
+		n := rapid.IntRange(1, 5).Draw(t, "n")
+		p := rapid.IntRange(1, n).Draw(t, "p")
+		some := rapid.SampledFrom(values[:rapid.IntRange(4, len(values)).Draw(t, "wildness")])
+		a, c, l := zeros(n, n), zeros(p, n), zeros(n, p)
+		for i := range a.Data {
+			a.Data[i] = some.Draw(t, "a")
+		}
+		for i := range c.Data {
+			c.Data[i] = some.Draw(t, "c")
+		}
+		var poles []complex128
+		for len(poles) < n {
+			re, im := some.Draw(t, "re"), some.Draw(t, "im")
+			if len(poles)+1 < n && im != 0 {
+				poles = append(poles, complex(re, im), complex(re, -im))
+				continue
+			}
+			poles = append(poles, complex(re, 0))
+		}
+		check := func(err error) {
+			for _, v := range l.Data {
+				if err == nil && (math.IsNaN(v) || math.IsInf(v, 0)) {
+					t.Fatalf("gain %v without an error", l.Data)
+				}
+			}
+		}
+		_, err := s.Robust(l, a, c, poles, nil)
+		check(err)
+		w, r, weights := zeros(n, n), zeros(p, p), make([]float64, n)
+		for i := range n {
+			w.Data[i*n+i], weights[i] = math.Abs(some.Draw(t, "w")), math.Abs(some.Draw(t, "weight"))
+		}
+		for i := range p {
+			r.Data[i*p+i] = math.Abs(some.Draw(t, "r"))
+		}
+		for i, v := range poles {
+			poles[i] = complex(-math.Abs(real(v)), imag(v))
+		}
+		_, err = s.LeastNoise(l, a, c, w, r, weights, poles, rapid.Bool().Draw(t, "discrete"), nil)
+		check(err)
+	})
 }

@@ -32,7 +32,7 @@ func (s *Solver) quietRepeated(dst, a, c blas64.General, poles []complex128, war
 	gains, steps := []*mat.Dense{mat.DenseCopyOf(l)}, 120
 	if warm.fits(n, p) && len(warm.gain) == n*p {
 		gains, steps = []*mat.Dense{mat.NewDense(n, p, append([]float64(nil), warm.gain...))}, 20
-	} else if apart := s.pulledApart(a, c, poles); apart != nil {
+	} else if apart := s.pulledApart(a, c); apart != nil {
 		gains = append(gains, apart)
 	}
 	info.Converged = n*p <= searchable
@@ -41,9 +41,6 @@ func (s *Solver) quietRepeated(dst, a, c blas64.General, poles []complex128, war
 			m := new(mat.Dense)
 			m.SetRawMatrix(g)
 			return mat.DenseCopyOf(m.T())
-		}
-		if err := s.pairUp(poles); err != nil {
-			return info, err
 		}
 		t := newTriangular(wrapped(a), wrapped(c), s.list)
 		info.Converged = false
@@ -73,23 +70,28 @@ func (s *Solver) quietRepeated(dst, a, c blas64.General, poles []complex128, war
 
 // pulledApart returns the least-noise gain of poles of which the copies are slowed by
 // 8 % each; nil where there is none.
-func (s *Solver) pulledApart(a, c blas64.General, poles []complex128) *mat.Dense {
-	apart := make([]complex128, len(poles))
-	for i, v := range poles {
-		k := count(poles[:i], v)
-		apart[i] = v * complex(math.Pow(0.92, float64(k)), 0)
-		if v == 0 {
-			apart[i] = complex(0.04*float64(k), 0)
+func (s *Solver) pulledApart(a, c blas64.General) *mat.Dense {
+	list := s.list
+	defer func() { s.list = list }()
+	s.list = make([]pole, len(list))
+	for i, v := range list {
+		k := float64(multiplicity(list[:i], v.at))
+		s.list[i] = v
+		if v.at == 0 {
+			s.list[i].at = complex(0.04*k, 0)
+		} else {
+			s.list[i].at *= complex(math.Pow(0.92, k), 0)
 		}
 	}
-	for i, v := range apart {
-		if count(apart[:i], v) > 0 {
-			return nil
-		}
+	q, r := &s.noise, &s.robust
+	if !r.load(a, c) || r.gather(s.list) > 1 {
+		return nil
 	}
-	q := &s.noise
+	r.noise = q
+	_, ok := r.quiet(nil)
+	r.noise = nil
 	l := mat.NewDense(a.Rows, c.Rows, nil)
-	if _, err := s.LeastNoise(l.RawMatrix(), a, c, q.w, q.r, q.weights, apart, q.discrete, nil); err != nil {
+	if !ok || !r.gain(l.RawMatrix()) {
 		return nil
 	}
 	return l

@@ -117,7 +117,7 @@ func axpy(dst []float64, t float64, x []float64) {
 // that the gain follows small movements of the poles (Converged is false while it
 // lags behind its optimum); an empty warm or nil means a cold start. The call leaves its own choice in warm.
 //
-// Errors: ErrShape, ErrNotFinite, ErrPairs, ErrSensors, ErrUnobservable,
+// Errors: ErrShape, ErrNotFinite, ErrRange, ErrPairs, ErrSensors, ErrUnobservable,
 // ErrNotReached, where dst holds the best gain found. After the other errors the
 // contents of dst and warm are unspecified.
 func (s *Solver) Robust(dst, a, c blas64.General, poles []complex128, warm *Warm) (Info, error) {

@@ -18,7 +18,7 @@ import (
 // (Miminis & Paige 1982, 1988; Varga 1981). Everything is orthogonal (unitary for
 // complex poles); no powers of A and no characteristic polynomials.
 //
-// Errors: ErrShape, ErrNotFinite, ErrPairs, ErrUnobservable; ErrNotReached, where dst
+// Errors: ErrShape, ErrNotFinite, ErrRange, ErrPairs, ErrUnobservable; ErrNotReached, where dst
 // holds the best gain found. After the other errors its content is unspecified.
 func (s *Solver) Single(dst, a, c blas64.General, poles []complex128) error {
 	if err := checkInput(dst, a, c, poles); err != nil {
