@@ -104,7 +104,7 @@ func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design
 	}
 	out.Stable = stable(out.Reached, d.model.Discrete())
 	out.EigenvectorCondition = math.NaN()
-	if k, err := d.form.VectorCondition(); err == nil && !math.IsInf(k, 0) {
+	if k, err := d.form.VectorCondition(); err == nil && !math.IsInf(k, 0) && !d.tooManyAlike(wanted) {
 		out.EigenvectorCondition = k
 	}
 	d.judgeNoise(out, ls, lf)
@@ -116,6 +116,28 @@ func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design
 	out.SensorSets = d.sensorSets(ls)
 	d.warn(out)
 	return out, nil
+}
+
+// tooManyAlike tells whether a pole is wanted more often than there can be
+// eigenvectors for it: as many as independent sensors.
+func (d *Designer) tooManyAlike(wanted []complex128) bool {
+	if d.pair.rank == 0 || len(wanted) < d.pair.rank {
+		return false
+	}
+	movable := wanted[:d.pair.rank]
+	sensors, _ := d.pair.c.Dims()
+	for _, v := range movable {
+		count := 0
+		for _, w := range movable {
+			if w == v {
+				count++
+			}
+		}
+		if count > sensors {
+			return true
+		}
+	}
+	return false
 }
 
 // norm2 is the largest singular value; mat.Norm(a, 2) is Frobenius's norm.

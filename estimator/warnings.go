@@ -17,7 +17,6 @@ func name(list []string, letter string, i int) string {
 	return fmt.Sprintf("%s%d", letter, i+1)
 }
 
-func (d *Designer) stateName(i int) string { return name(d.model.StateNames, "x", i) }
 func (d *Designer) inputName(i int) string { return name(d.model.InputNames, "u", i) }
 
 // warn adds the sentences that a reader of the figures should know.
