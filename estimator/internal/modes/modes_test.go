@@ -209,3 +209,30 @@ func TestBadInput(t *testing.T) {
 		t.Errorf("no sensor signal: %+v, %v", r, err)
 	}
 }
+
+// Whatever the input, the answer is finite or an error.
+func TestNoPanicAndNoNaN(t *testing.T) {
+	values := []float64{0, 0, 1, -1, 1e-8, 1e8, -1e-30, 1e30, 1e-160, 1e160, 1e-300, 1e300, math.Inf(1)}
+	rapid.Check(t, func(t *rapid.T) {
+		n := rapid.IntRange(1, 5).Draw(t, "n")
+		p := rapid.IntRange(1, n+1).Draw(t, "p")
+		some := rapid.SampledFrom(values[:rapid.IntRange(4, len(values)).Draw(t, "wildness")])
+		a, c := mat.NewDense(n, n, nil), mat.NewDense(p, n, nil)
+		a.Apply(func(_, _ int, _ float64) float64 { return some.Draw(t, "a") }, a)
+		c.Apply(func(_, _ int, _ float64) float64 { return some.Draw(t, "c") }, c)
+		r, err := modes.Analyse(a.RawMatrix(), c.RawMatrix(), 1e-12)
+		if err != nil {
+			return
+		}
+		for _, m := range r.Modes {
+			if cmplx.IsNaN(m.Eigenvalue) || cmplx.IsInf(m.Eigenvalue) || math.IsNaN(m.Sigma) || math.IsInf(m.Sigma, 0) {
+				t.Fatalf("mode %+v without an error", m)
+			}
+		}
+		for _, v := range r.Q.RawMatrix().Data {
+			if !(math.Abs(v) < 1.1) {
+				t.Fatalf("Q holds %g without an error", v)
+			}
+		}
+	})
+}
