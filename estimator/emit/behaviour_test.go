@@ -49,7 +49,7 @@ func runC(t *testing.T, header emit.File, body string) {
 		t.Fatal(err)
 	}
 	exe := filepath.Join(dir, "check")
-	build(t, path, exe, file)
+	build(t, path, exe, "-fsanitize=undefined", "-fsanitize-undefined-trap-on-error", file)
 	if err := exec.Command(exe).Run(); err != nil {
 		t.Fatalf("check in C: %v", err)
 	}

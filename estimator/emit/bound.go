@@ -18,13 +18,16 @@ type bound struct {
 	p    *program
 	unit float64 // unit roundoff of the arithmetic
 	tiny float64 // error of an operation that underflows
+	half float64 // fixed point: error of the one rounding of each sum
 
+	most  int // past errors followed one by one
 	past  []pastError
 	state []float64 // bound on |x of the target − x of the design|
 	out   []float64 // bound on the same for the absolute estimate
 
 	da, db, dc, dd, dgain []float64 // |entry − rounded entry|
 	eps                   []float64 // per sensor, local error of the innovation
+	off                   []float64 // per sensor, whole error of the last innovation
 	local                 []float64
 	f, g                  []float64
 }
@@ -37,14 +40,17 @@ type pastError struct {
 
 func newBound(p *program) *bound {
 	b := &bound{
-		p: p, unit: 0x1p-53, tiny: 0x1p-1022,
+		p: p, most: mostPast, unit: 0x1p-53, tiny: 0x1p-1022,
 		state: make([]float64, p.n), out: make([]float64, p.n),
 		da: p.lost(p.a), db: p.lost(p.b), dc: p.lost(p.c), dd: p.lost(p.d), dgain: p.lost(p.gain),
-		eps: make([]float64, p.p), local: make([]float64, p.n),
+		eps: make([]float64, p.p), off: make([]float64, p.p), local: make([]float64, p.n),
 		f: make([]float64, p.n*p.n), g: make([]float64, p.n*p.n),
 	}
-	if p.arithmetic == Float {
+	switch p.arithmetic {
+	case Float:
 		b.unit, b.tiny = 0x1p-24, 0x1p-126
+	case Fixed:
+		b.unit, b.tiny, b.half = 0, 0, math.Ldexp(0.5, -p.bits)
 	}
 	return b
 }
@@ -53,7 +59,7 @@ func newBound(p *program) *bound {
 func (p *program) lost(v []float64) []float64 {
 	d := make([]float64, len(v))
 	for i := range v {
-		d[i] = math.Abs(v[i] - p.round(v[i]))
+		d[i] = math.Abs(v[i] - p.coefficient(v[i]))
 	}
 	return d
 }
@@ -113,8 +119,9 @@ func (b *bound) innovation(r *runner, xAbs, uAbs, dlt []float64) []float64 {
 			turned := p.wrap[s] * math.Abs(r.turns[s])
 			eps += math.Abs(p.wrap[s]-p.round(p.wrap[s]))*math.Abs(r.turns[s]) + 4*b.unit*turned + 2*b.unit*math.Abs(r.e[s])
 		}
-		b.eps[s] = eps + float64(p.n+p.m+4)*b.tiny
-		eAbs[s] = math.Abs(r.e[s]) + dotAbs(c, b.state) + b.eps[s]
+		b.eps[s] = eps + float64(p.n+p.m+4)*b.tiny + b.half
+		b.off[s] = dotAbs(c, b.state) + b.eps[s]
+		eAbs[s] = math.Abs(r.e[s]) + b.off[s]
 	}
 	return eAbs
 }
@@ -137,7 +144,7 @@ func (b *bound) current(r *runner, xAbs, uAbs, dlt, eAbs []float64) {
 	p.correction(b.g, r.used)
 	fAbs := make([]float64, p.n)
 	for i := range local {
-		local[i] = terms*xAbs[i] + b.gained(i, terms, eAbs) + b.tiny
+		local[i] = terms*xAbs[i] + b.gained(i, terms, eAbs) + b.tiny + b.half
 		b.out[i] = dotAbs(row(b.g, i, p.n), b.state) + local[i]
 		fAbs[i] = math.Abs(r.filtered[i]) + b.out[i]
 	}
@@ -153,7 +160,7 @@ func (b *bound) update(i int, terms float64, xAbs, uAbs, dlt []float64) float64 
 	a, bu := row(p.a, i, p.n), row(p.b, i, p.m)
 	da, db := row(b.da, i, p.n), row(b.db, i, p.m)
 	lost := dot(da, xAbs) + dot(db, uAbs)
-	return terms*(dotAbs(a, xAbs)+dotAbs(bu, uAbs)+lost) + lost + dotAbs(bu, dlt) + float64(p.n+p.m+p.p+4)*b.tiny
+	return terms*(dotAbs(a, xAbs)+dotAbs(bu, uAbs)+lost) + lost + dotAbs(bu, dlt) + float64(p.n+p.m+p.p+4)*b.tiny + b.half
 }
 
 // gained is the local error of row i of gain·e.
@@ -163,7 +170,7 @@ func (b *bound) gained(i int, terms float64, eAbs []float64) float64 {
 	return terms*(dotAbs(g, eAbs)+lost) + lost + dotAbs(g, b.eps)
 }
 
-// mostPast is how many past errors are followed one by one.
+// mostPast is how many past errors are followed one by one in a long run.
 const mostPast = 24
 
 // carryOn moves all past errors one step on, adds the new one and sums up. Where
@@ -179,8 +186,8 @@ func (b *bound) carryOn() {
 		b.advance(e.carry)
 	}
 	b.past = append(b.past, fresh)
-	if len(b.past) > mostPast {
-		b.merge(mostPast / 2)
+	if len(b.past) > b.most {
+		b.merge(b.most / 2)
 	}
 	clear(b.state)
 	for _, e := range b.past {

@@ -13,6 +13,9 @@ func cHeader(p *program) []byte {
 	w.cComment(headNotes(p, "State estimator in C99. Include it where it is used; it needs no library and no other file."))
 	upper := strings.ToUpper(p.prefix)
 	w.line("#ifndef %s_H\n#define %s_H\n", upper, upper)
+	if p.arithmetic == Fixed {
+		w.line("#include <stdint.h>\n")
+	}
 	w.line("#if defined(__FAST_MATH__) || (defined(__FINITE_MATH_ONLY__) && __FINITE_MATH_ONLY__ > 0)\n#error \"compile without -ffast-math: samples that are not a number must be told apart\"\n#endif\n")
 	w.line("typedef %s %s_real;\n", p.cType(), p.prefix)
 	w.line("enum {")
@@ -21,7 +24,11 @@ func cHeader(p *program) []byte {
 	w.cIndices(p, "Places in the arrays of inputs", "U", p.inputs)
 	w.cIndices(p, "Places in the arrays of sensors", "Y", p.sensors)
 	w.cStruct(p)
-	w.cHelpers(p)
+	if p.arithmetic == Fixed {
+		w.cFixedHelpers(p)
+	} else {
+		w.cHelpers(p)
+	}
 	w.cInit(p)
 	if p.m > 0 {
 		w.cInput(p)
@@ -38,8 +45,11 @@ func cHeader(p *program) []byte {
 
 // cType is the C number type.
 func (p *program) cType() string {
-	if p.arithmetic == Float {
+	switch p.arithmetic {
+	case Float:
 		return "float"
+	case Fixed:
+		return "int32_t"
 	}
 	return "double"
 }
@@ -72,15 +82,19 @@ func (w *writer) cStruct(p *program) {
 	if p.form == estimator.Current {
 		at = "of the newest sample, x[k|k]"
 	}
+	reaction := "all were reset"
+	if p.arithmetic == Fixed {
+		reaction = "it was cut to that"
+	}
 	w.put(p, `
 /* One estimator. The caller owns it, $PRE_init fills it. */
 typedef struct {
     $PRE_real estimate[$UP_STATES];    /* absolute, $AT */
     $PRE_real innovation[$UP_SENSORS]; /* of the last sample, 0 where left out */
     unsigned char used[$UP_SENSORS]; /* 1: sample used; 0: missing or rejected */
-    unsigned char fault; /* 1: a state left +-$LIMIT and all were reset; cleared by init and start */
+    unsigned char fault; /* 1: a state left +-$LIMIT and $REACTION; cleared by init and start */
     $PRE_real x[$UP_STATES]; /* private: deviation from the operating point */
-`, "$AT", at, "$LIMIT", p.limitText())
+`, "$AT", at, "$LIMIT", p.limitText(), "$REACTION", reaction)
 	if p.m > 0 {
 		w.put(p, "    $PRE_real du[$UP_INPUTS]; /* private: last good input, as deviation */\n")
 	}
@@ -90,8 +104,19 @@ typedef struct {
 // put writes a block with the program's prefix for $PRE and, in upper
 // case with its underscore, for $UP_.
 func (w *writer) put(p *program, block string, pairs ...string) {
-	w.lines(block, append([]string{"$PRE", p.prefix, "$UP_", strings.ToUpper(p.prefix) + "_"}, pairs...)...)
+	pairs = append(pairs, "$PRE", p.prefix, "$UP_", p.upper())
+	if p.arithmetic == Fixed {
+		pairs = append(pairs, "$WIDE", "int64_t", "$TO64", "(int64_t)", "$SCALED", p.prefix+"_scaled(acc)",
+			"$LIFTED", "s->x[i] * "+p.one(p.tableBits), "$DEVIATION", p.prefix+"_clamp((int64_t)u[i] - u0[i])")
+	} else {
+		pairs = append(pairs, "$WIDE", p.prefix+"_real", "$TO64", "", "$SCALED", "acc",
+			"$LIFTED", "s->x[i]", "$DEVIATION", "u[i] - u0[i]")
+	}
+	w.lines(block, pairs...)
 }
+
+// upper is the prefix of macros and constants.
+func (p *program) upper() string { return strings.ToUpper(p.prefix) + "_" }
 
 // cTable writes a constant table, one row of a matrix per group of lines.
 func (w *writer) cTable(p *program, name, size string, v []float64, cols int) {
@@ -100,12 +125,21 @@ func (w *writer) cTable(p *program, name, size string, v []float64, cols int) {
 	w.line("    };")
 }
 
+// cMatrix writes a table of coefficients, cSeries one of signals.
 func (w *writer) cMatrix(p *program, name, rows, cols string, v []float64, nc int) {
+	w.cRows(p, name, rows, cols, v, nc, p.cEntry)
+}
+
+func (w *writer) cSeries(p *program, name, cols string, v []float64, nc int) {
+	w.cRows(p, name, "TEST_STEPS", cols, v, nc, p.cNumber)
+}
+
+func (w *writer) cRows(p *program, name, rows, cols string, v []float64, nc int, number func(float64) string) {
 	w.put(p, "    static const $PRE_real $NAME[$UP_$ROWS][$UP_$COLS] = {\n", "$NAME", name, "$ROWS", rows, "$COLS", cols)
 	nr := len(v) / nc
 	for i := range nr {
 		w.WriteString("        {\n")
-		w.table(row(v, i, nc), chunk(nc), "            ", p.cNumber)
+		w.table(row(v, i, nc), chunk(nc), "            ", number)
 		if i < nr-1 {
 			w.WriteString("        },\n")
 		} else {
@@ -188,11 +222,11 @@ static inline void $PRE_start($PRE_estimator *s, const $PRE_real state[$UP_STATE
 `, pairs...)
 	w.cTable(p, "x0", strings.ToUpper(p.prefix)+"_STATES", p.x0, p.n)
 	w.put(p, `
-    $PRE_real next[$UP_STATES];
+    $WIDE next[$UP_STATES];
     int i;
     $PRE_init(s);
     for (i = 0; i < $UP_STATES; i++) {
-        next[i] = state[i] - x0[i];
+        next[i] = $TO64state[i] - x0[i];
     }
     $PRE_accept(s, next);
     $PRE_publish(s);
@@ -212,7 +246,7 @@ static inline void $PRE_take_input($PRE_estimator *s, const $PRE_real u[$UP_INPU
     int i;
     for (i = 0; i < $UP_INPUTS; i++) {
         if ($PRE_sound(u[i])) {
-            s->du[i] = u[i] - u0[i];
+            s->du[i] = $DEVIATION;
         }
     }
 }

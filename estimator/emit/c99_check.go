@@ -18,20 +18,25 @@ func cSelfTest(p *program, t *selfTest) []byte {
 	w.put(p, "#include \"$PRE.h\"\n\nenum { $UP_TEST_STEPS = $STEPS };\n\n", "$STEPS", full(float64(t.steps)))
 	w.put(p, "int $PRE_selftest(void);\n\nint $PRE_selftest(void)\n{\n")
 	if p.m > 0 {
-		w.cMatrix(p, "inputs", "TEST_STEPS", "INPUTS", p.withoutNaN(t.u), p.m)
+		w.cSeries(p, "inputs", "INPUTS", p.withoutNaN(t.u), p.m)
 	}
-	w.cMatrix(p, "samples", "TEST_STEPS", "SENSORS", p.withoutNaN(t.y), p.p)
+	w.cSeries(p, "samples", "SENSORS", p.withoutNaN(t.y), p.p)
 	w.cFlags(p, "/* 0 good, 1 missing, 2 not a number */", "mark", marks(t.y, t.missing), p.p)
 	if p.m > 0 {
 		w.cFlags(p, "/* 2 where the input is not a number */", "input_mark", marks(t.u, nil), p.m)
 	}
 	w.cFlags(p, "/* samples that must be used */", "used", flags(t.used), p.p)
-	w.cMatrix(p, "expected", "TEST_STEPS", "STATES", flatten(t.expected), p.n)
+	w.cSeries(p, "expected", "STATES", flatten(t.expected), p.n)
 	w.cTable(p, "tolerance", strings.ToUpper(p.prefix)+"_STATES", t.tolerance, p.n)
+	zero := "    volatile " + p.prefix + "_real zero = " + p.cNumber(0) + "; /* zero / zero is not a number */\n"
+	nan := "zero / zero"
+	if p.arithmetic == Fixed {
+		zero, nan = "", p.cNumber(p.beyond())
+	}
 	input, pass := "", ""
 	if p.m > 0 {
-		input = strings.NewReplacer("$PRE", p.prefix, "$UP_", strings.ToUpper(p.prefix)+"_").Replace(`        for (i = 0; i < $UP_INPUTS; i++) {
-            u[i] = input_mark[k][i] == 2 ? zero / zero : inputs[k][i];
+		input = strings.NewReplacer("$PRE", p.prefix, "$UP_", strings.ToUpper(p.prefix)+"_", "$NAN", nan).Replace(`        for (i = 0; i < $UP_INPUTS; i++) {
+            u[i] = input_mark[k][i] == 2 ? $NAN : inputs[k][i];
         }
 `)
 		pass = " u,"
@@ -41,7 +46,7 @@ func cSelfTest(p *program, t *selfTest) []byte {
 		declare = strings.NewReplacer("$PRE", p.prefix, "$UP_", strings.ToUpper(p.prefix)+"_").Replace("    $PRE_real u[$UP_INPUTS];\n")
 	}
 	w.put(p, `
-    volatile $PRE_real zero = $ZERO; /* zero / zero is not a number */
+$ZERO_LINE
     $PRE_estimator s;
     $PRE_real y[$UP_SENSORS];
     unsigned char missing[$UP_SENSORS];
@@ -52,7 +57,7 @@ $DECLARE
     for (k = 0; k < $UP_TEST_STEPS; k++) {
 $INPUT
         for (i = 0; i < $UP_SENSORS; i++) {
-            y[i] = mark[k][i] == 2 ? zero / zero : samples[k][i];
+            y[i] = mark[k][i] == 2 ? $NAN : samples[k][i];
             missing[i] = (unsigned char)(mark[k][i] == 1);
         }
         $PRE_step(&s,$PASS y, missing);
@@ -62,7 +67,7 @@ $INPUT
             }
         }
         for (i = 0; i < $UP_STATES; i++) {
-            const $PRE_real off = s.estimate[i] - expected[k][i];
+            const $WIDE off = $TO64s.estimate[i] - expected[k][i];
             if (!(off >= -tolerance[i] && off <= tolerance[i])) {
                 return k + 1;
             }
@@ -77,7 +82,7 @@ int main(void)
     return $PRE_selftest() != 0 ? 1 : 0;
 }
 #endif
-`, "$ZERO", p.cNumber(0), "$DECLARE\n", declare, "$INPUT\n", input, "$PASS", pass)
+`, "$ZERO_LINE\n", zero, "$NAN", nan, "$DECLARE\n", declare, "$INPUT\n", input, "$PASS", pass)
 	return w.Bytes()
 }
 

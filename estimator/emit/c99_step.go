@@ -37,10 +37,26 @@ static inline void $PRE_innovate($PRE_estimator *s, const $PRE_real y[$UP_SENSOR
             }
 `
 	}
+	turns := ""
+	if p.arithmetic != Fixed {
+		turns = p.cNumber(maxTurns)
+	}
 	names := []string{"$PRE", p.prefix, "$UP_", strings.ToUpper(p.prefix) + "_", "$ZERO", p.cNumber(0),
-		"$HALF", p.cNumber(0.5), "$TURNS", p.cNumber(maxTurns)}
+		"$HALF", p.cNumber(0.5), "$TURNS", turns}
+	block := cInnovationLoop
+	if p.arithmetic == Fixed {
+		through = strings.ReplaceAll(through, "d[i][j]", "(int64_t)d[i][j]")
+		if p.hasWrap {
+			loop = cFixedWrap
+		}
+		names = append(names, "$ONE", p.one(p.tableBits))
+		block = cFixedInnovations
+	}
 	fill := strings.NewReplacer(names...)
-	w.lines(`
+	w.lines(block, append(names, "$THROUGH\n", fill.Replace(through), "$WRAP\n", fill.Replace(loop))...)
+}
+
+const cInnovationLoop = `
     int i;
     int j;
     for (i = 0; i < $UP_SENSORS; i++) {
@@ -63,19 +79,22 @@ $WRAP
     }
 }
 
-`, append(names, "$THROUGH\n", fill.Replace(through), "$WRAP\n", fill.Replace(loop))...)
-}
+`
 
 // cSums writes sums over inputs and sensors into acc.
 func cSums(p *program, withGain bool) string {
 	s := ""
 	if p.m > 0 {
-		s += "        for (j = 0; j < $UP_INPUTS; j++) {\n            acc += b[i][j] * s->du[j];\n        }\n"
+		s += "        for (j = 0; j < $UP_INPUTS; j++) {\n            acc += $TO64b[i][j] * s->du[j];\n        }\n"
 	}
 	if withGain {
-		s += "        for (j = 0; j < $UP_SENSORS; j++) {\n            acc += gain[i][j] * s->innovation[j];\n        }\n"
+		s += "        for (j = 0; j < $UP_SENSORS; j++) {\n            acc += $TO64gain[i][j] * s->innovation[j];\n        }\n"
 	}
-	return strings.NewReplacer("$UP_", strings.ToUpper(p.prefix)+"_").Replace(s)
+	wide := ""
+	if p.arithmetic == Fixed {
+		wide = "(int64_t)"
+	}
+	return strings.NewReplacer("$UP_", p.upper(), "$TO64", wide).Replace(s)
 }
 
 func (p *program) cInputParam() (param, take string) {
@@ -87,17 +106,17 @@ func (p *program) cInputParam() (param, take string) {
 }
 
 const cAdvance = `
-    $PRE_real next[$UP_STATES];
+    $WIDE next[$UP_STATES];
     int i;
     int j;
 $TAKE
     for (i = 0; i < $UP_STATES; i++) {
-        $PRE_real acc = $ZERO;
+        $WIDE acc = $ZERO;
         for (j = 0; j < $UP_STATES; j++) {
-            acc += a[i][j] * s->x[j];
+            acc += $TO64a[i][j] * s->x[j];
         }
 $SUMS
-        next[i] = acc;
+        next[i] = $SCALED;
     }
     $PRE_accept(s, next);
 `
@@ -141,17 +160,17 @@ static inline void $PRE_correct($PRE_estimator *s,$PARAM const $PRE_real y[$UP_S
 		take = ""
 	}
 	w.put(p, `
-    $PRE_real next[$UP_STATES];
+    $WIDE next[$UP_STATES];
     int i;
     int j;
 $TAKE
     $PRE_innovate(s, y, missing);
     for (i = 0; i < $UP_STATES; i++) {
-        $PRE_real acc = s->x[i];
+        $WIDE acc = $TO64$LIFTED;
         for (j = 0; j < $UP_SENSORS; j++) {
-            acc += gain[i][j] * s->innovation[j];
+            acc += $TO64gain[i][j] * s->innovation[j];
         }
-        next[i] = acc;
+        next[i] = $SCALED;
     }
     $PRE_accept(s, next);
     $PRE_publish(s);

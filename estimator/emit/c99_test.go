@@ -64,7 +64,11 @@ func shapes() []shape {
 	}
 	return append(list,
 		shape{n: 4, m: 2, p: 2, unknowns: 2},
-		shape{n: 3, m: 1, p: 1, unknowns: 1, form: estimator.Current, arithmetic: emit.Float, through: true})
+		shape{n: 3, m: 1, p: 1, unknowns: 1, form: estimator.Current, arithmetic: emit.Float, through: true},
+		shape{n: 4, m: 2, p: 2, arithmetic: emit.Fixed, wrap: true, ranges: true, through: true},
+		shape{n: 3, m: 1, p: 2, form: estimator.Current, arithmetic: emit.Fixed, wrap: true, ranges: true},
+		shape{n: 1, m: 0, p: 1, arithmetic: emit.Fixed},
+		shape{n: 2, m: 1, p: 1, unknowns: 1, form: estimator.Current, arithmetic: emit.Fixed, through: true})
 }
 
 // compileHostile checks the syntax of emitted C where gcc is present.

@@ -27,6 +27,9 @@ func cautionsOf(p *program) []string {
 	if p.arithmetic == Float {
 		list = append(list, "Single precision: the tolerance of the self-test says how far rounding may move each state.")
 	}
+	if p.arithmetic == Fixed {
+		list = append(list, fmt.Sprintf("Fixed point Q%d.%d: a signal of one unit is %d counts, signals saturate at 2147483647 counts; tables have %d fraction bits. The tolerance of the self-test says how far rounding may move each state.", 31-p.bits, p.bits, 1<<p.bits, p.tableBits))
+	}
 	if p.hasWrap {
 		list = append(list, "An innovation of a wrapping sensor is taken modulo its period; the state itself is not wrapped and loses digits as it grows.")
 	}

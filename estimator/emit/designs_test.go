@@ -22,6 +22,9 @@ type shape struct {
 	unknowns   int // added random-walk states that the inputs do not reach
 }
 
+// fractionBits is the format of the fixed-point designs, Q15.16.
+const fractionBits = 16
+
 // randomSource makes a stable design: a random A of spectral radius about 0.97
 // (with unknowns: integrators on the input) and the gain that 400 steps of the
 // Riccati recursion give.
@@ -74,7 +77,7 @@ func randomSource(t testing.TB, s shape, seed uint64) emit.Source {
 	l := new(mat.Dense)
 	l.Mul(a, lf)
 	src := emit.Source{
-		Model: model, Form: s.form, L: l, Lf: lf, Arithmetic: s.arithmetic,
+		Model: model, Form: s.form, L: l, Lf: lf, Arithmetic: s.arithmetic, FractionBits: fractionBits,
 		Plant: "Random plant", Candidate: "quick", PlantSHA256: "ab12", SessionSHA256: "cd34", Version: "test",
 	}
 	for range n {

@@ -74,17 +74,28 @@ type Arithmetic uint8
 const (
 	Double Arithmetic = iota // IEEE 754 binary64: double, LREAL
 	Float                    // IEEE 754 binary32: float, REAL
+	// Fixed is 32-bit fixed point Qm.n, m = 31 − n, for C99 only: signals are
+	// int32_t counts of 2⁻ⁿ of their unit. They saturate. Tables have as many
+	// fraction bits of their own as keep the 64-bit accumulators from overflow.
+	Fixed
 )
 
-// ParseArithmetic returns the arithmetic called name ("double" or "float").
-func ParseArithmetic(name string) (Arithmetic, error) {
+// ParseArithmetic returns the arithmetic called name: "double", "float" or
+// fixed point "qM.N" with M + N = 31 and N from 1 to 30, such as "q15.16"; then
+// fractionBits is N, else 0.
+func ParseArithmetic(name string) (a Arithmetic, fractionBits int, err error) {
 	switch name {
 	case "double":
-		return Double, nil
+		return Double, 0, nil
 	case "float":
-		return Float, nil
+		return Float, 0, nil
 	}
-	return 0, fmt.Errorf("%w: arithmetic %q; double or float", ErrTarget, name)
+	for n := 1; n <= 30; n++ {
+		if name == fmt.Sprintf("q%d.%d", 31-n, n) {
+			return Fixed, n, nil
+		}
+	}
+	return 0, 0, fmt.Errorf("%w: arithmetic %q; double, float or q15.16 (any qM.N with M + N = 31)", ErrTarget, name)
 }
 
 // Signal describes one state, input or sensor of the design model.
@@ -114,7 +125,8 @@ type Source struct {
 	// which means the model's names, no unit, no offset, no range.
 	States, Inputs, Sensors []Signal
 
-	Arithmetic Arithmetic
+	Arithmetic   Arithmetic
+	FractionBits int // n of Qm.n, 1 to 30, Fixed only
 
 	// Provenance, written into every file.
 	Plant, Candidate           string
@@ -143,6 +155,9 @@ func Emit(src Source, target Target) ([]File, error) {
 	arithmetic := src.Arithmetic
 	if target == JSON || target == CSV {
 		arithmetic = Double
+	}
+	if target == StructuredText && arithmetic == Fixed {
+		return nil, fmt.Errorf("%w: fixed point in structured text; use c99, or double or float", ErrTarget)
 	}
 	p, err := newProgram(&src, arithmetic)
 	if err != nil {

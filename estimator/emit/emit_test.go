@@ -34,7 +34,10 @@ func everyFile(t testing.TB, src emit.Source) []emit.File {
 }
 
 func TestGolden(t *testing.T) {
-	for _, f := range everyFile(t, gate()) {
+	files := everyFile(t, gate())
+	fixed := fixedGate(20)
+	fixed.Candidate = "fixed"
+	for _, f := range append(files, emitC(t, fixed)...) {
 		path := filepath.Join("testdata", "golden", f.Name)
 		if *update {
 			if err := os.MkdirAll(filepath.Dir(path), 0o755); err != nil {
@@ -148,7 +151,7 @@ func TestErrors(t *testing.T) {
 	if _, err := emit.ParseTarget("pascal"); !errors.Is(err, emit.ErrTarget) {
 		t.Errorf("pascal: %v", err)
 	}
-	if _, err := emit.ParseArithmetic("half"); !errors.Is(err, emit.ErrTarget) {
+	if _, _, err := emit.ParseArithmetic("half"); !errors.Is(err, emit.ErrTarget) {
 		t.Errorf("half: %v", err)
 	}
 	for target := emit.C99; target <= emit.CSV; target++ {

@@ -18,6 +18,8 @@ type program struct {
 	n, m, p    int
 	form       estimator.Form
 	arithmetic Arithmetic
+	bits       int // fraction bits of signals, Fixed only
+	tableBits  int // fraction bits of tables, Fixed only
 	period     float64
 
 	a, b, c, d, gain []float64 // gain: L (prediction) or Lf (current)
@@ -49,31 +51,51 @@ type named struct {
 
 // limit is the size beyond which a value counts as faulty, far from overflow.
 func (p *program) limit() float64 {
-	if p.arithmetic == Float {
+	switch p.arithmetic {
+	case Float:
 		return float64(float32(1e30))
+	case Fixed:
+		return math.Ldexp(math.MaxInt32, -p.bits)
 	}
 	return 1e300
 }
 
 // limitText is the limit as a comment shows it.
 func (p *program) limitText() string {
-	if p.arithmetic == Float {
+	switch p.arithmetic {
+	case Float:
 		return "1e30"
+	case Fixed:
+		return "2147483647"
 	}
 	return "1e300"
 }
 
-// round returns v as the target's arithmetic holds it.
+// round returns a signal's value as the target's arithmetic holds it.
 func (p *program) round(v float64) float64 {
-	if p.arithmetic == Float {
+	switch p.arithmetic {
+	case Float:
 		return float64(float32(v))
+	case Fixed:
+		return roundTo(v, p.bits)
 	}
 	return v
 }
 
+// coefficient is round for an entry of a table.
+func (p *program) coefficient(v float64) float64 {
+	if p.arithmetic == Fixed {
+		return roundTo(v, p.tableBits)
+	}
+	return p.round(v)
+}
+
 func newProgram(src *Source, arithmetic Arithmetic) (*program, error) {
-	if arithmetic > Float {
+	if arithmetic > Fixed {
 		return nil, fmt.Errorf("%w: arithmetic %d", ErrTarget, arithmetic)
+	}
+	if arithmetic == Fixed && (src.FractionBits < 1 || src.FractionBits > 30) {
+		return nil, fmt.Errorf("%w: %d fraction bits; 1 to 30", ErrValue, src.FractionBits)
 	}
 	m := src.Model
 	if m == nil {
@@ -85,7 +107,7 @@ func newProgram(src *Source, arithmetic Arithmetic) (*program, error) {
 	if src.Form > estimator.Current {
 		return nil, fmt.Errorf("%w: form %d", ErrTarget, src.Form)
 	}
-	p := &program{src: src, form: src.Form, arithmetic: arithmetic, period: m.Period}
+	p := &program{src: src, form: src.Form, arithmetic: arithmetic, bits: src.FractionBits, period: m.Period}
 	if err := p.takeMatrices(m); err != nil {
 		return nil, err
 	}
@@ -94,6 +116,11 @@ func newProgram(src *Source, arithmetic Arithmetic) (*program, error) {
 	}
 	if err := p.checkFit(); err != nil {
 		return nil, err
+	}
+	if arithmetic == Fixed {
+		if err := p.chooseTableBits(); err != nil {
+			return nil, err
+		}
 	}
 	p.prefix = prefixOf(src.Plant, src.Candidate)
 	p.cautions = cautionsOf(p)
@@ -282,7 +309,8 @@ func (p *program) checkFit() error {
 		{"operating point of sensors", p.y0}, {"wrap", p.wrap},
 	} {
 		for _, v := range t.v {
-			if math.Abs(v) > p.limit() {
+			isTable := len(t.name) == 1 || t.name == "gain"
+			if math.Abs(v) > p.limit() && !(isTable && p.arithmetic == Fixed) {
 				return fmt.Errorf("%w: %s holds %g, beyond the %g that this arithmetic allows", ErrValue, t.name, v, p.limit())
 			}
 		}

@@ -20,11 +20,14 @@ type selfTest struct {
 	tolerance []float64
 }
 
+// shortSteps is the length of a self-test of a small design.
+const shortSteps = 32
+
 // testSeed makes every self-test the same run.
 const testSeed = 0x9e3779b97f4a7c15
 
 func newSelfTest(p *program) (*selfTest, error) {
-	steps := 32
+	steps := shortSteps
 	if p.n > 12 {
 		steps = 12
 	}
@@ -42,6 +45,9 @@ func runSelfTest(p *program, steps, follow int) (*selfTest, error) {
 	t := &selfTest{steps: steps, tolerance: make([]float64, p.n)}
 	rng := rand.New(rand.NewPCG(testSeed, uint64(p.n)))
 	r, b := newRunner(p), newBound(p)
+	if steps <= shortSteps {
+		b.most = steps
+	}
 	amplitude := p.inputSizes()
 	x := make([]float64, p.n)
 	for k := range steps {
@@ -58,6 +64,9 @@ func runSelfTest(p *program, steps, follow int) (*selfTest, error) {
 		r.step(u, y, missing)
 		if k < follow {
 			b.step(r, x)
+			if err := b.wrapsAreSure(); err != nil {
+				return nil, err
+			}
 		}
 		t.u, t.y, t.missing = append(t.u, u), append(t.y, y), append(t.missing, missing)
 		t.used = append(t.used, append([]bool(nil), r.used...))
@@ -84,7 +93,19 @@ func (t *selfTest) allowed(r *runner, b *bound, i int) float64 {
 	if r.p.arithmetic == Float {
 		reference = 1e-6
 	}
-	return (1+reference)*b.out[i] + 2*b.unit*math.Abs(r.estimate[i])
+	// in fixed point the reference rounds far less than 2b.half
+	return (1+reference)*b.out[i] + 2*b.unit*math.Abs(r.estimate[i]) + 2*b.half
+}
+
+// wrapsAreSure fails where rounding could decide the whole wraps of a sample
+// that undecided has let pass.
+func (b *bound) wrapsAreSure() error {
+	for s, w := range b.p.wrap {
+		if w > 0 && b.off[s] > 0.02*w {
+			return fmt.Errorf("%w: rounding moves the innovation of sensor %d by up to %.2g of its wrap", ErrValue, s+1, b.off[s]/w)
+		}
+	}
+	return nil
 }
 
 // samples chooses this step's samples; r holds the state and the input.
@@ -137,7 +158,12 @@ func (p *program) outside(s int) float64 {
 }
 
 // beyond is a finite value past the limit of the arithmetic.
-func (p *program) beyond() float64 { return p.round(4 * p.limit()) }
+func (p *program) beyond() float64 {
+	if p.arithmetic == Fixed {
+		return math.Ldexp(math.MinInt32, -p.bits)
+	}
+	return p.round(4 * p.limit())
+}
 
 // inputSizes chooses how far each input swings: a fifth of what moves the most
 // responsive state by its scale in one step.
@@ -163,7 +189,10 @@ func (p *program) inputSizes() []float64 {
 func (p *program) short(v float64) float64 {
 	f, err := strconv.ParseFloat(strconv.FormatFloat(v, 'e', 6, 64), 64)
 	if err != nil {
-		return p.round(v)
+		f = v
+	}
+	if p.arithmetic == Fixed {
+		f = min(max(f, -p.limit()), p.limit())
 	}
 	return p.round(f)
 }
