@@ -72,7 +72,7 @@ func (c *Canvas) Text(x, y int, s string, ink theme.Ink) int {
 			c.Set(x, y, r, ink)
 			x++
 		default:
-			if x+1 < c.W {
+			if x >= 0 && y >= 0 && y < c.H && x+1 < c.W {
 				c.Set(x, y, r, ink)
 				c.Set(x+1, y, ' ', ink)
 				c.cells[y*c.W+x+1].r = 0

@@ -113,9 +113,9 @@ func (p *pen) rings() {
 		d *= 2
 	}
 	far := math.Hypot(max(-p.w.X0, 0), p.w.Half())
-	for r := d; r < far; r += d {
-		// one dot in about three cells of the way around
-		n := max(int(math.Pi/2*r/p.w.DX/5), 2)
+	for k := 1; k <= 40 && float64(k)*d < far; k++ {
+		r := float64(k) * d
+		n := min(max(int(math.Pi/2*r/p.w.DX/5), 2), 1000) // a dot in about three cells of the way around
 		for i := range n {
 			v := cmplx.Rect(r, math.Pi/2*(1+(float64(i)+0.5)/float64(n)))
 			p.dot(v)

@@ -38,8 +38,12 @@ func Fit(points []complex128, plane targets.Plane, period float64, w, h int) Win
 	}
 	rows := float64(max(h/2-1, 1))
 	dx := max((right-left)/float64(max(w-room-4, 4)), up/rows/2)
-	win.setCell(step(dx, 0, true))
+	win.setCell(step(min(max(dx, 1e-12), 1e12), 0, true))
 	win.centre(complex(left, 0))
+	if plane == targets.S {
+		axis := w - max(room, int(math.Ceil(right/win.DX))+2)
+		win.X0 = -(float64(axis) + 0.5) * win.DX
+	}
 	return win
 }
 
