@@ -33,7 +33,13 @@ func (r *robust) choose(warm *Warm) (Info, bool) {
 	return r.cold()
 }
 
-const starts = 4
+// starts is the number of cold starts: fewer where each is dear.
+func (r *robust) starts() int {
+	if r.n > 12 {
+		return 3
+	}
+	return 4
+}
 
 // How far the descents go: from a start to the right valley, down that valley, and
 // from an earlier choice.
@@ -49,7 +55,7 @@ func (r *robust) cold() (Info, bool) {
 	best := math.Inf(1)
 	seed := uint64(1)
 	r.basis = append(r.basis[:0], r.frames...)
-	for range starts {
+	for range r.starts() {
 		copy(r.frames, r.basis)
 		r.scatter(&seed)
 		_, steps, _ := r.descend(rough, false)
@@ -66,7 +72,11 @@ func (r *robust) cold() (Info, bool) {
 		return info, false
 	}
 	copy(r.frames, r.start)
-	f, steps, done := r.descend(fine, false)
+	rule := fine
+	if r.n > 8 {
+		rule.drop = 1e-4
+	}
+	f, steps, done := r.descend(rule, false)
 	info.Iterations += steps
 	info.Converged = done
 	info.Condition = r.condition()
