@@ -240,3 +240,50 @@ func TestDragOfLeastNoise(t *testing.T) {
 		}
 	}
 }
+
+// A drag of all poles at once, equal ones in long chains, keeps the gain continuous.
+func TestDragOfEqualPoles(t *testing.T) {
+	var s placement.Solver
+	for n := 3; n <= 7; n++ {
+		a, c, _ := plant(n, 2, uint64(n), 0.6)
+		wn, r, weights := zeros(n, n), general([][]float64{{0.1, 0}, {0, 0.3}}), make([]float64, n)
+		for i := range n {
+			wn.Data[i*n+i], weights[i] = 1, 1
+		}
+		for _, quiet := range []bool{false, true} {
+			if quiet && n > 4 {
+				continue // slow
+			}
+			var w placement.Warm
+			l, before := zeros(n, 2), zeros(n, 2)
+			worst := 0.0
+			count := 100
+			if quiet {
+				count = 10
+			}
+			poles := make([]complex128, n)
+			for k := range count {
+				for i := range poles {
+					poles[i] = complex(-2*math.Pow(1.002, float64(k)), 0)
+				}
+				var err error
+				if quiet {
+					_, err = s.LeastNoise(l, a, c, wn, r, weights, poles, false, &w)
+				} else {
+					_, err = s.Robust(l, a, c, poles, &w)
+				}
+				if err != nil {
+					t.Fatal(err)
+				}
+				if k > 0 {
+					worst = math.Max(worst, distance(l, before)/mat.Norm(wrap(before), 2)/0.002)
+				}
+				before = copyOf(l)
+			}
+			t.Logf("n = %d, least noise %v: largest relative jump over relative step %.2f", n, quiet, worst)
+			if worst > 25 {
+				t.Errorf("n = %d, least noise %v: the gain jumps by %g times the step", n, quiet, worst)
+			}
+		}
+	}
+}
