@@ -161,7 +161,7 @@ func (s *Solver) descendTriangular(t *triangular, x []float64, most int) (cost f
 		m.update(step, fresh)
 		fresh = false
 		m.g, m.gNext = m.gNext, m.g
-		if drop < 1e-10 {
+		if drop < 1e-8 {
 			return math.Exp(f), steps, true
 		}
 	}
