@@ -96,3 +96,49 @@ func inside(v, low, high logs.Number) int {
 	}
 	return 0
 }
+
+// TestUnits: figures without a unit do not depend on the units of the sensors.
+func TestUnits(t *testing.T) {
+	m, scaled := tracker(), tracker()
+	factors := []float64{1e9, 1e-7}
+	scaled.R = mat.NewSymDense(2, nil)
+	g := kalman(m, 20)
+	other := mat.DenseCopyOf(g)
+	for i, f := range factors {
+		for j := range 4 {
+			scaled.C.Set(i, j, m.C.At(i, j)*f)
+			other.Set(j, i, g.At(j, i)/f)
+		}
+		for j := range i + 1 {
+			scaled.R.SetSym(i, j, m.R.At(i, j)*f*factors[j])
+		}
+	}
+	u, y, _ := simulate(m, 1500, rand.New(rand.NewPCG(81, 82)))
+	a := replay(t, memoryOf(layoutOf(m), u, y), logs.Request{Model: m, Gain: logs.Gain{L: g}})
+	for k := range y {
+		y[k] = []float64{y[k][0] * factors[0], y[k][1] * factors[1]}
+	}
+	b := replay(t, memoryOf(layoutOf(m), u, y), logs.Request{Model: scaled, Gain: logs.Gain{L: other}})
+	near := func(what string, x, y logs.Number, tolerance float64) {
+		t.Helper()
+		if !(math.Abs(float64(x-y)) <= tolerance*math.Abs(float64(y))) {
+			t.Errorf("%s: %g and %g", what, x, y)
+		}
+	}
+	near("NIS", a.NISMean, b.NISMean, 1e-9)
+	near("NIS low", a.NISLow, b.NISLow, 1e-9)
+	near("NIS high", a.NISHigh, b.NISHigh, 1e-9)
+	fa, errA := a.NoiseFigures()
+	fb, errB := b.NoiseFigures()
+	if errA != nil || errB != nil {
+		t.Fatal(errA, errB)
+	}
+	near("factor", fa.Process.Value, fb.Process.Value, 1e-5)
+	near("factor, high", fa.Process.High, fb.Process.High, 1e-5)
+	for i, f := range factors {
+		near("std", a.Innovations[i].Std*logs.Number(f), b.Innovations[i].Std, 1e-9)
+		near("lag 3", a.Innovations[i].AutocorrelationExpected[2], b.Innovations[i].AutocorrelationExpected[2], 1e-9)
+		near("lag 3, low", a.Innovations[i].AutocorrelationLow[2], b.Innovations[i].AutocorrelationLow[2], 1e-9)
+		near("variance", fa.Sensors[i].Value*logs.Number(f*f), fb.Sensors[i].Value, 1e-5)
+	}
+}

@@ -100,25 +100,36 @@ func (pr *promise) correlation(i int) []float64 {
 }
 
 // whitened is Σⱼ (1 − j/N) tr(S⁻¹ Γⱼ S⁻¹ Γⱼᵀ) over N samples, what correlation
-// adds to the spread of the NIS mean.
+// adds to the spread of the NIS mean. The units of the sensors are taken out first.
 func (pr *promise) whitened(samples float64) float64 {
-	var inverse mat.SymDense
-	var ch mat.Cholesky
-	if !ch.Factorize(pr.s) || ch.InverseTo(&inverse) != nil {
+	p := pr.p
+	unit := make([]float64, p)
+	for i := range unit {
+		unit[i] = math.Sqrt(pr.s.At(i, i))
+	}
+	s, inverse := mat.NewSymDense(p, nil), mat.NewDense(p, p, nil)
+	for a := range p {
+		for b := range a + 1 {
+			s.SetSym(a, b, pr.s.At(a, b)/unit[a]/unit[b])
+		}
+	}
+	if inverse.Inverse(s) != nil {
 		return math.NaN()
 	}
 	var t total
 	var left, right mat.Dense
-	for j, g := range pr.gamma {
+	g := mat.NewDense(p, p, nil)
+	for j, gamma := range pr.gamma {
 		weight := 1 - float64(j+1)/samples
 		if weight <= 0 {
 			break
 		}
-		left.Mul(&inverse, g)
-		right.Mul(&inverse, g.T())
+		g.Apply(func(a, b int, v float64) float64 { return v / unit[a] / unit[b] }, gamma)
+		left.Mul(inverse, g)
+		right.Mul(inverse, g.T())
 		trace := 0.0
-		for a := range pr.p {
-			for b := range pr.p {
+		for a := range p {
+			for b := range p {
 				trace += left.At(a, b) * right.At(b, a)
 			}
 		}

@@ -12,7 +12,9 @@ import (
 
 // Estimate is a figure found from a log with its 95 % confidence interval.
 type Estimate struct {
-	Value, Low, High Number
+	Value Number `json:"value"`
+	Low   Number `json:"low"`
+	High  Number `json:"high"`
 }
 
 // NoiseFigures are what a log says about the noise figures of a model.
@@ -227,27 +229,24 @@ func (f *fit) weights(theta []float64) (*mat.SymDense, []float64, error) {
 	return out, bias, nil
 }
 
-// spread fills in the block of sensors a and b.
+// spread fills in the block of sensors a and b: with R(d) = Σₕ g(h) g(h+d), which is
+// even in d, the covariance is (R(j−k) + R(j+k)) / N.
 func (pr *promise) spread(out *mat.SymDense, a, b int, count float64) {
-	reach := len(pr.gamma) + lags + 1
-	// g(h) at list[h+reach+lags].
-	list := make([]float64, 2*(reach+lags)+1)
-	middle := reach + lags
-	list[middle] = pr.s.At(a, b)
-	for j, g := range pr.gamma {
-		list[middle+j+1], list[middle-j-1] = g.At(a, b), g.At(b, a)
+	reach := len(pr.gamma)
+	g := make([]float64, 2*reach+1)
+	g[reach] = pr.s.At(a, b)
+	for j, m := range pr.gamma {
+		g[reach+j+1], g[reach-j-1] = m.At(a, b), m.At(b, a)
+	}
+	var r [2*lags + 1]float64
+	for d := range r {
+		for h := 0; h+d < len(g); h++ {
+			r[d] += g[h] * g[h+d]
+		}
 	}
 	for j := 0; j <= lags; j++ {
 		for k := 0; k <= lags; k++ {
-			if a == b && k > j {
-				break
-			}
-			sum := 0.0
-			for h := -reach; h <= reach; h++ {
-				at := middle + h
-				sum += list[at]*list[at+j-k] + list[at+j]*list[at-k]
-			}
-			out.SetSym(a*(lags+1)+j, b*(lags+1)+k, sum/count)
+			out.SetSym(a*(lags+1)+j, b*(lags+1)+k, (r[max(j-k, k-j)]+r[j+k])/count)
 		}
 	}
 }

@@ -9,6 +9,8 @@ import (
 
 // Survey is what a log holds, known before it is replayed.
 type Survey struct {
+	// File is the log's name for errors.
+	File string
 	// Rows of the log, and samples that a replay takes from it: the same but for
 	// resampled logs.
 	Rows, Samples int64
@@ -104,6 +106,7 @@ func Open(ctx context.Context, src io.ReadSeeker, l *Layout, o Options) (*Log, e
 		return nil, err
 	}
 	g.survey = Survey{
+		File: o.File,
 		Rows: r.count, Samples: r.count, Missing: p.missing, Lost: r.lost, Held: r.held,
 		Start: p.begin, End: p.end, Period: p.period(), Jitter: p.jitter(), interval: p.median,
 	}

@@ -15,8 +15,9 @@ const (
 // QuietNoise is what a stretch of a log says about the sensors' noise.
 type QuietNoise struct {
 	// Samples used, and the stretch in s.
-	Samples  int64 `json:"samples"`
-	From, To Number
+	Samples int64  `json:"samples"`
+	From    Number `json:"from_s"`
+	To      Number `json:"to_s"`
 	// Sensors has the variance of one sample per sensor; undefined where too few
 	// samples follow each other.
 	Sensors []Estimate `json:"sensor_variance"`

@@ -169,7 +169,7 @@ func (r *run) bounded() error {
 	if r.main.f.finite() {
 		return nil
 	}
-	return &plants.Error{Where: fmt.Sprintf("log line %d or before", r.line), Wrong: "the estimate grows beyond all bounds", Expected: "expected an estimator that is stable"}
+	return &plants.Error{File: r.survey.File, Where: fmt.Sprintf("line %d or before", r.line), Wrong: "the estimate grows beyond all bounds", Expected: "expected an estimator that is stable"}
 }
 
 // step predicts through what is missing and measures. It reports whether the

@@ -176,10 +176,15 @@ func TestNumberAgainstStrconv(t *testing.T) {
 
 func BenchmarkNumber(b *testing.B) {
 	for _, text := range []string{"12.345", "-0.0123456", "0.30000000000000004"} {
+		field := []byte(text)
 		b.Run(text, func(b *testing.B) {
-			field := []byte(text)
 			for b.Loop() {
 				_, _ = number(field)
+			}
+		})
+		b.Run(text+" by strconv", func(b *testing.B) {
+			for b.Loop() {
+				_, _ = strconv.ParseFloat(string(field), 64)
 			}
 		})
 	}
