@@ -6,8 +6,6 @@ import (
 	"slices"
 	"strings"
 
-	"gonum.org/v1/gonum/mat"
-
 	"polewright/estimator"
 	"polewright/plants"
 )
@@ -25,8 +23,7 @@ type Layout struct {
 	// like one of them is a reference.
 	States, Outputs []Signal
 
-	rows   *mat.Dense // outputs × states
-	unused []string   // sensors that are not in use: their columns are passed over
+	unused []string // sensors that are not in use: their columns are passed over
 }
 
 // Signal is one signal of the plant.
@@ -52,7 +49,7 @@ func NewLayout(p *plants.Plant, m *estimator.Model) (*Layout, error) {
 		len(m.StateNames) != n || n < len(p.States) {
 		return nil, fmt.Errorf("the model and the plant do not name the same signals: %w", estimator.ErrShape)
 	}
-	l := &Layout{Period: m.Period, rows: m.Outputs}
+	l := &Layout{Period: m.Period}
 	for _, u := range p.Inputs {
 		l.Inputs = append(l.Inputs, Signal{Name: u.Name, Unit: u.Unit, Operating: u.Operating})
 	}
@@ -133,11 +130,20 @@ func (l *Layout) find(name string) (kind, int, bool) {
 	return passedOver, 0, false
 }
 
+// allOthers, renamed to nothing, leaves out every column that the plant does not
+// know.
+const allOthers = "*"
+
 // columns gives each field of a header its meaning.
 func (l *Layout) columns(header [][]byte, names map[string]string) ([]column, *plants.Error) {
 	list := make([]column, len(header))
 	first := map[[2]int]string{}
 	mapped := map[string]bool{}
+	rest, lenient := names[allOthers]
+	if rest != "" {
+		return nil, &plants.Error{Where: "header", Wrong: "all other columns renamed to " + quote(rest), Expected: "expected \"*=\", which leaves them out"}
+	}
+	mapped[allOthers] = true
 	for i, field := range header {
 		name := string(trimSpace(field))
 		c := column{name: name}
@@ -147,11 +153,11 @@ func (l *Layout) columns(header [][]byte, names map[string]string) ([]column, *p
 		} else {
 			to = name
 		}
-		if renamed && to == "" {
+		k, index, ok := l.find(to)
+		if renamed && to == "" || !ok && !renamed && lenient {
 			list[i] = c
 			continue
 		}
-		k, index, ok := l.find(to)
 		if !ok {
 			return nil, l.unknown(name, to, renamed)
 		}
@@ -197,7 +203,7 @@ func (l *Layout) unknown(name, to string, renamed bool) *plants.Error {
 		wrong = "column " + quote(name) + " is renamed to " + quote(to) + ", which the plant does not have"
 	}
 	return &plants.Error{Where: "header", Wrong: wrong,
-		Expected: "expected " + quoteAll(l.needed()) + " or a state's name; --map \"" + shorten(name) + "=NAME\" renames a column, \"" + shorten(name) + "=\" leaves it out"}
+		Expected: "expected " + quoteAll(l.needed()) + " or a state's name; --map \"" + shorten(name) + "=NAME\" renames a column, \"" + shorten(name) + "=\" leaves it out, \"*=\" all such"}
 }
 
 // shorten keeps a message readable.

@@ -27,6 +27,8 @@ type Survey struct {
 	Period, Jitter float64
 	// Resampled tells that the log is held on the design's period.
 	Resampled bool
+	// PassedOver are the names of the columns that have no use here.
+	PassedOver []string
 	// References are the states and outputs that the log has a column for.
 	References []Reference
 
@@ -113,6 +115,11 @@ func Open(ctx context.Context, src io.ReadSeeker, l *Layout, o Options) (*Log, e
 	if o.Resample {
 		g.survey.Resampled = true
 		g.survey.Samples = int64(gridSize(p.begin, p.end, l.Period))
+	}
+	for _, c := range r.columns {
+		if c.kind == passedOver {
+			g.survey.PassedOver = append(g.survey.PassedOver, c.name)
+		}
 	}
 	for _, c := range r.references {
 		s := l.States

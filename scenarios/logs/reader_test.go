@@ -39,9 +39,10 @@ func TestBadLogs(t *testing.T) {
 		{name: "no header", text: "0,4100,1.2,0\n0.01,4100,1.2,0\n", want: `line 1: no header, only numbers; expected a header line with "t", "cable force", "rail encoder", "gyro"`},
 		{name: "no rows", text: header, want: "0 rows below the header; expected at least 2"},
 		{name: "one row", text: header + "0,4100,1.2,0\n", want: "1 row below the header; expected at least 2"},
-		{name: "unknown column", text: "t,cable force,rail encoder,gyro,temp\n", want: `header: unknown column "temp"; expected "t", "cable force", "rail encoder", "gyro" or a state's name; --map "temp=NAME" renames a column, "temp=" leaves it out`},
-		{name: "unknown target", text: header, opt: logs.Options{Names: map[string]string{"gyro": "giro"}}, want: `header: column "gyro" is renamed to "giro", which the plant does not have; expected "t", "cable force", "rail encoder", "gyro" or a state's name; --map "gyro=NAME" renames a column, "gyro=" leaves it out`},
+		{name: "unknown column", text: "t,cable force,rail encoder,gyro,temp\n", want: `header: unknown column "temp"; expected "t", "cable force", "rail encoder", "gyro" or a state's name; --map "temp=NAME" renames a column, "temp=" leaves it out, "*=" all such`},
+		{name: "unknown target", text: header, opt: logs.Options{Names: map[string]string{"gyro": "giro"}}, want: `header: column "gyro" is renamed to "giro", which the plant does not have; expected "t", "cable force", "rail encoder", "gyro" or a state's name; --map "gyro=NAME" renames a column, "gyro=" leaves it out, "*=" all such`},
 		{name: "nothing to rename", text: header, opt: logs.Options{Names: map[string]string{"giro": "gyro"}}, want: `header: no column "giro" to rename; the log has "t", "cable force", "rail encoder", "gyro"`},
+		{name: "all others renamed", text: header, opt: logs.Options{Names: map[string]string{"*": "gyro"}}, want: `header: all other columns renamed to "gyro"; expected "*=", which leaves them out`},
 		{name: "twice", text: "t,cable force,rail encoder,gyro,gyro\n", want: `header: two columns for "gyro": "gyro" and "gyro"; expected one`},
 		{name: "twice by name", text: "t,cable force,rail encoder,gyro,g2\n", opt: logs.Options{Names: map[string]string{"g2": "gyro"}}, want: `header: two columns for "gyro": "gyro" and "g2"; expected one`},
 		{name: "missing", text: "t,cable force,gyro\n", want: `header: no column "rail encoder"; expected "t", "cable force", "rail encoder", "gyro"`},
@@ -71,7 +72,7 @@ func TestBadLogs(t *testing.T) {
 		{name: "gap", text: header + good + "1e300,0,0,0\n", want: "line 4: a gap of 1e+300 s; expected at most 1000000 sample periods; cut the log there"},
 		{name: "gap on a grid", text: header + good + "1e6,0,0,0\n", opt: logs.Options{Resample: true}, want: "line 4: a gap of 1e+06 s; expected at most 1000000 sample periods; cut the log there"},
 		{name: "lag", text: header + good, opt: logs.Options{InputLag: 10001}, want: "input lag: 10001 rows; expected at most 10000 either way"},
-		{name: "control characters", text: "t,\x1b[2J\n", want: `header: unknown column "\x1b[2J"; expected "t", "cable force", "rail encoder", "gyro" or a state's name; --map "\x1b[2J=NAME" renames a column, "\x1b[2J=" leaves it out`},
+		{name: "control characters", text: "t,\x1b[2J\n", want: `header: unknown column "\x1b[2J"; expected "t", "cable force", "rail encoder", "gyro" or a state's name; --map "\x1b[2J=NAME" renames a column, "\x1b[2J=" leaves it out, "*=" all such`},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			c.opt.File = "run.csv"
@@ -164,6 +165,15 @@ func TestReading(t *testing.T) {
 	if again := take(t, log); len(again) != 4 {
 		t.Errorf("%d samples when read again", len(again))
 	}
+}
+
+func TestOtherColumns(t *testing.T) {
+	text := "note,t,cable force,temp,rail encoder,gyro\nx,0,4100,y,1.2,0\n,0.01,4100,,1.2,1\n"
+	log := openText(t, hoist(), text, logs.Options{Names: map[string]string{"*": ""}})
+	if have := log.Survey().PassedOver; !slices.Equal(have, []string{"note", "temp"}) {
+		t.Errorf("passed over %q", have)
+	}
+	expectSamples(t, take(t, log), []logs.Sample{{U: []float64{0}, Y: []float64{0, 0}}, {T: 0.01, U: []float64{0}, Y: []float64{0, 1}}})
 }
 
 func TestInputLag(t *testing.T) {

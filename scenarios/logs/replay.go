@@ -21,7 +21,7 @@ const pollEvery = 4096
 // The error is a *plants.Error where the log or the request is to blame.
 func Replay(ctx context.Context, log Recording, q Request) (*Result, error) {
 	l := log.Layout()
-	if err := q.check(l); err != nil {
+	if err := q.check(l, log.Survey()); err != nil {
 		return nil, err
 	}
 	x, err := q.Start.vector(q.Model)
@@ -118,7 +118,7 @@ func newRun(l *Layout, v *Survey, q *Request) *run {
 	for _, ref := range v.References {
 		c := comparison{index: ref.Index}
 		if ref.Output {
-			c.row = mat.Row(nil, ref.Index, l.rows)
+			c.row = mat.Row(nil, ref.Index, q.Model.Outputs)
 		}
 		r.references = append(r.references, c)
 	}

@@ -75,7 +75,7 @@ type Row struct {
 	Innovation []float64
 }
 
-func (q *Request) check(l *Layout) error {
+func (q *Request) check(l *Layout, v *Survey) error {
 	if q.Model == nil {
 		return fmt.Errorf("no model to replay: %w", estimator.ErrShape)
 	}
@@ -85,6 +85,15 @@ func (q *Request) check(l *Layout) error {
 	n, inputs, p := q.Model.Dims()
 	if len(l.Inputs) != inputs || len(l.Sensors) != p || len(l.States) != n || l.Period != q.Model.Period {
 		return fmt.Errorf("the log was opened for another model: %w", estimator.ErrShape)
+	}
+	outputs := 0
+	if q.Model.Outputs != nil {
+		outputs, _ = q.Model.Outputs.Dims()
+	}
+	for _, ref := range v.References {
+		if ref.Index < 0 || ref.Index >= n && !ref.Output || ref.Index >= outputs && ref.Output {
+			return fmt.Errorf("the log has a reference that the model has not: %w", estimator.ErrShape)
+		}
 	}
 	if err := q.Gain.check(n, p); err != nil {
 		return err

@@ -16,7 +16,8 @@ type Options struct {
 	// File is the log's name for errors.
 	File string
 	// Names renames columns: from the log's name to the plant's. An empty name
-	// leaves a column out.
+	// leaves a column out; "*" with an empty name leaves out all that the plant does
+	// not know, which is an error else.
 	Names map[string]string
 	// InputLag takes the inputs of row k from row k − InputLag, −10000 to 10000.
 	// Rows beyond the ends of the log hold its first or last inputs.

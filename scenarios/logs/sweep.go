@@ -35,7 +35,7 @@ func Sweep(ctx context.Context, log Recording, q Request, gains []Gain) ([]Point
 	longest := 0.0
 	for _, g := range gains {
 		q.Gain = g
-		if err := q.check(l); err != nil {
+		if err := q.check(l, log.Survey()); err != nil {
 			return nil, err
 		}
 		longest = math.Max(longest, math.Max(g.Settle, 0))
