@@ -26,6 +26,8 @@ const (
 	Target
 	// Selected is the target in the hand.
 	Selected
+	// SelectedFixed is a fixed pole in the hand.
+	SelectedFixed
 )
 
 // Mark is one pole, in the plane shown. Place is false where it has none there.
@@ -37,12 +39,12 @@ type Mark struct {
 
 // Glyph is the shape of a mark.
 func Glyph(k Kind, g *theme.Glyphs) rune {
-	return [...]rune{g.Plant, g.Controller, g.Floor, g.Fixed, g.Target, g.Selected}[k]
+	return [...]rune{g.Plant, g.Controller, g.Floor, g.Fixed, g.Target, g.Selected, g.Fixed}[k]
 }
 
 // Ink is the ink of a mark.
 func Ink(k Kind) theme.Ink {
-	return [...]theme.Ink{theme.Faint, theme.Faint, theme.Text, theme.Text, theme.Title, theme.Hold}[k]
+	return [...]theme.Ink{theme.Faint, theme.Faint, theme.Text, theme.Text, theme.Title, theme.Hold, theme.Hold}[k]
 }
 
 // Draw draws the window with the marks on it, at (x, y) of the canvas. Marks of
@@ -57,7 +59,7 @@ func Draw(c *canvas.Canvas, x, y int, w Window, marks []Mark, t *theme.Theme) {
 		p.limit()
 	}
 	p.axes()
-	for k := Plant; k <= Selected; k++ {
+	for k := Plant; k <= SelectedFixed; k++ {
 		for _, m := range marks {
 			if m.Kind == k {
 				p.mark(m)

@@ -131,10 +131,22 @@ func (m *Model) adopt(a *desk.Answer) {
 			m.dirty |= planeRegion
 		}
 	}
-	if len(m.now.set.List) == 0 && a.Gen == m.gen {
+	if l := a.Design.Loop; l != nil && m.controller == nil {
+		m.controller = without(l.Poles, a.Design.Reached)
+		m.dirty |= planeRegion
+	}
+	if a.Gen != m.gen {
+		return
+	}
+	if list := m.movable(m.now.set.Poles()); len(list) < m.now.set.Count() {
+		if set, err := targets.From(list, m.period()); err == nil {
+			m.now.set, m.now.held = set, min(m.now.held, max(len(set.List)-1, 0))
+		}
+	}
+	if len(m.now.set.List) == 0 {
 		list := a.Design.Wanted
 		if list == nil {
-			list = without(a.Design.Reached, a.Fixed)
+			list = m.movable(a.Design.Reached)
 		}
 		if set, err := targets.From(list, m.period()); err == nil {
 			m.now.set = set
@@ -142,10 +154,21 @@ func (m *Model) adopt(a *desk.Answer) {
 			m.dirty |= planeRegion
 		}
 	}
-	if l := a.Design.Loop; l != nil && m.controller == nil {
-		m.controller = without(l.Poles, a.Design.Reached)
-		m.dirty |= planeRegion
+}
+
+// fixedPoles are the fixed poles, those of pairs twice.
+func (m *Model) fixedPoles() []complex128 {
+	return targets.Set{List: m.fixed, Period: m.period()}.Poles()
+}
+
+// movable leaves the fixed poles out of a list that has all of them.
+func (m *Model) movable(list []complex128) []complex128 {
+	fixed := m.fixedPoles()
+	n, _, _ := m.cfg.Work.Bench.Model.Dims()
+	if len(fixed) == 0 || len(list) < n {
+		return list
 	}
+	return without(list, fixed)
 }
 
 // firstHeld is the pole to start with: the one the session held, else the first.

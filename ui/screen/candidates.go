@@ -103,14 +103,7 @@ func (m *Model) recall(i int) tea.Cmd {
 func (m *Model) candidateSet(c desk.Candidate) (targets.Set, error) {
 	list := c.Poles
 	if list == nil && c.Design != nil {
-		var fixed []complex128
-		for _, t := range m.fixed {
-			fixed = append(fixed, t.At)
-			if t.Pair {
-				fixed = append(fixed, complex(real(t.At), -imag(t.At)))
-			}
-		}
-		list = without(c.Design.Reached, fixed)
+		list = m.movable(c.Design.Reached)
 	}
 	return targets.From(list, m.period())
 }

@@ -132,7 +132,7 @@ func (m *Model) scale(name string, factor float64) tea.Cmd {
 
 // replaceAll puts a whole list of poles in hand.
 func (m *Model) replaceAll(list []complex128) (state, error) {
-	set, err := targets.From(list, m.period())
+	set, err := targets.From(m.movable(list), m.period())
 	if err != nil {
 		return m.now, err
 	}
@@ -152,14 +152,7 @@ func (m *Model) snapToFloor() tea.Cmd {
 		m.refuse("there is no floor: " + m.analysis.FloorReason)
 		return nil
 	}
-	var fixed []complex128
-	for _, t := range m.fixed {
-		fixed = append(fixed, t.At)
-		if t.Pair {
-			fixed = append(fixed, complex(real(t.At), -imag(t.At)))
-		}
-	}
-	next, err := m.replaceAll(without(m.analysis.Floor.Poles, fixed))
+	next, err := m.replaceAll(m.analysis.Floor.Poles)
 	if err != nil {
 		m.refuse(err.Error())
 		return nil

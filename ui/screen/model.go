@@ -82,7 +82,6 @@ type Model struct {
 	saving         bool
 	saveWanted     *saveOrder // until the figures of the design in hand are there
 	journalled     uint64
-	axesUnfit      bool
 	lastEdit       time.Time
 	resting        bool // a rest tick is on its way
 	pending        time.Time
@@ -194,6 +193,9 @@ func (m *Model) marks() []plane.Mark {
 			kind := k
 			if first+i == m.now.held {
 				kind = plane.Selected
+				if k == plane.Fixed {
+					kind = plane.SelectedFixed
+				}
 			}
 			add(t.At, kind)
 			if t.Pair {
