@@ -78,6 +78,9 @@ type Floor struct {
 type Design struct {
 	Form   Form
 	Method Method
+	// Partial tells that Complete has still to add Noise.SensorToState, Noise.PeakGain,
+	// Float32Shift, SensorSets and their warnings.
+	Partial bool
 
 	// Wanted are the poles asked for in the model's own plane, nil for a gain
 	// found elsewhere; Reached are the eigenvalues of F, in the order of Wanted

@@ -38,16 +38,6 @@ type Designer struct {
 	keep      []bool // states that count in the transient; nil is all
 }
 
-// pair is the observable part of the pair whose eigenvalues are assigned:
-// (C, A) in prediction form, (C A, A) in current form.
-type pair struct {
-	q       *mat.Dense // n×n orthogonal; its first rank columns span the observable part
-	rank    int
-	fixed   []complex128
-	a, c    *mat.Dense // rank×rank and p1×rank, p1 independent sensors
-	combine *mat.Dense // p1×p: how the sensors are combined; nil when none depends on others
-}
-
 // FixedModesError says that the wanted poles ask for what no gain can do.
 type FixedModesError struct {
 	// Fixed are the eigenvalues no gain can move, in the model's own plane.

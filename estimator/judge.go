@@ -7,8 +7,6 @@ import (
 
 	"gonum.org/v1/gonum/mat"
 
-	"polewright/estimator/internal/frequency"
-	"polewright/estimator/internal/schur"
 	"polewright/estimator/poles"
 )
 
@@ -26,6 +24,15 @@ type Given struct {
 // figures undefined and is named in the warnings. In current form it fails where
 // no Lf solves A Lf = L.
 func (d *Designer) Judge(g Given) (*Design, error) {
+	quick, err := d.QuickJudge(g)
+	if err != nil {
+		return nil, err
+	}
+	return d.Complete(quick)
+}
+
+// QuickJudge is Judge without what Design.Partial lists.
+func (d *Designer) QuickJudge(g Given) (*Design, error) {
 	for _, l := range []*mat.Dense{g.L, g.Lf} {
 		if l == nil {
 			continue
@@ -76,7 +83,7 @@ func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design
 	if !finite(gain) {
 		return nil, fmt.Errorf("the gain for these poles: %w", ErrNotFinite)
 	}
-	out := &Design{Form: d.opt.Form, Method: d.opt.Method, WorstError: math.NaN()}
+	out := &Design{Form: d.opt.Form, Method: d.opt.Method, Partial: true, WorstError: math.NaN(), Float32Shift: math.NaN()}
 	out.Gain = mat.DenseCopyOf(gain)
 	ls := d.scaleGain(gain)
 	var lf *mat.Dense
@@ -112,8 +119,6 @@ func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design
 	if err := d.judgeLoop(out); err != nil {
 		return nil, err
 	}
-	out.Float32Shift = d.float32Shift(out)
-	out.SensorSets = d.sensorSets(ls)
 	d.warn(out)
 	return out, nil
 }
@@ -229,8 +234,6 @@ func (d *Designer) judgeNoise(out *Design, ls, lf *mat.Dense) {
 	noise.Covariance = d.unscaleCovariance(p)
 	noise.Std = roots(noise.Covariance)
 	d.compareWithFloor(noise)
-	d.sensorNoise(noise, ls)
-	d.peakGains(out)
 	for i := range outputRows(d.model) {
 		row := d.model.Outputs.RowView(i)
 		o := OutputNoise{Std: math.Sqrt(max(mat.Inner(row, noise.Covariance, row), 0)), FloorStd: math.NaN()}
@@ -290,40 +293,6 @@ func (d *Designer) compareWithFloor(noise *Noise) {
 	}
 }
 
-func (d *Designer) sensorNoise(noise *Noise, ls *mat.Dense) {
-	s := mat.NewDense(d.n, d.p, nil)
-	q := mat.NewDense(d.n, d.n, nil)
-	for j := range d.p {
-		col := ls.ColView(j)
-		q.Outer(1, col, col)
-		p, err := d.solveNoise(q)
-		if err != nil {
-			return
-		}
-		for i := range d.n {
-			s.Set(i, j, math.Sqrt(max(p.At(i, i), 0))*d.sx[i]/d.sy[j])
-		}
-	}
-	noise.SensorToState = s
-}
-
-// peakGains finds, per state, the largest gain over frequency from the sensors'
-// noise to its error (prediction form).
-func (d *Designer) peakGains(out *Design) {
-	var f, b mat.Dense
-	f.Mul(out.Gain, d.model.C)
-	f.Sub(d.model.A, &f)
-	b.Scale(-1, out.Gain)
-	values, rads, err := frequency.PeakGains(frequency.System{A: raw(&f), B: raw(&b), C: raw(identity(d.n)), Period: d.model.Period})
-	if err != nil {
-		out.Warnings = append(out.Warnings, "peak gains: "+err.Error())
-		return
-	}
-	for i, v := range values {
-		out.Noise.PeakGain = append(out.Noise.PeakGain, Peak{Value: v, Frequency: rads[i]})
-	}
-}
-
 func (d *Designer) judgeTransient(out *Design, f, ls, lf *mat.Dense) {
 	out.Transient = Transient{Settle: math.NaN(), Peak: math.NaN()}
 	if !out.Stable {
@@ -342,61 +311,4 @@ func (d *Designer) judgeTransient(out *Design, f, ls, lf *mat.Dense) {
 		return
 	}
 	out.Transient = Transient{Settle: settle, Peak: peak}
-}
-
-// float32Shift rounds A, L and C to float32 and returns the largest relative
-// movement of an eigenvalue of F; NaN where an eigenvalue iteration gives up.
-func (d *Designer) float32Shift(out *Design) float64 {
-	round := func(m *mat.Dense) *mat.Dense {
-		r := mat.DenseCopyOf(m)
-		r.Apply(func(_, _ int, v float64) float64 { return float64(float32(v)) }, r)
-		return r
-	}
-	var f mat.Dense
-	f.Mul(round(out.Gain), round(d.model.C))
-	f.Sub(round(d.model.A), &f)
-	if !finite(&f) {
-		return math.NaN()
-	}
-	var form schur.Form
-	f.Apply(func(i, j int, v float64) float64 { return v * d.sx[j] / d.sx[i] }, &f)
-	if form.Factor(raw(&f)) != nil {
-		return math.NaN()
-	}
-	_, worst := matchPoles(out.Reached, form.Eigenvalues())
-	return worst
-}
-
-// sensorSets judges F with the columns of lost sensors set to zero: every
-// subset for up to six sensors, else each sensor alone.
-func (d *Designer) sensorSets(ls *mat.Dense) []SensorSet {
-	var sets []SensorSet
-	var form schur.Form
-	judge := func(lost []int) {
-		l := mat.DenseCopyOf(ls)
-		for _, j := range lost {
-			for i := range d.n {
-				l.Set(i, j, 0)
-			}
-		}
-		if form.Factor(raw(d.errorMatrix(l))) == nil {
-			sets = append(sets, SensorSet{Lost: lost, Stable: stable(form.Eigenvalues(), d.model.Discrete())})
-		}
-	}
-	if d.p > 6 {
-		for j := range d.p {
-			judge([]int{j})
-		}
-		return sets
-	}
-	for bits := 1; bits < 1<<d.p; bits++ {
-		var lost []int
-		for j := range d.p {
-			if bits>>j&1 == 1 {
-				lost = append(lost, j)
-			}
-		}
-		judge(lost)
-	}
-	return sets
 }

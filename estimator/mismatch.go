@@ -45,8 +45,8 @@ func (d *Designer) Against(real *Model, design *Design) (*Mismatch, error) {
 	if real.Period != m.Period {
 		return nil, fmt.Errorf("the real plant has the period %g s, expected %g: %w", real.Period, m.Period, ErrMethod)
 	}
-	if design == nil || design.Gain == nil || design.Form != d.opt.Form || (d.opt.Form == Current && design.GainCurrent == nil) {
-		return nil, fmt.Errorf("no design of this designer: %w", ErrMethod)
+	if err := d.owns(design); err != nil {
+		return nil, err
 	}
 	free := d
 	if m.K == nil || m.B == nil { // no controller: the same with K = 0

@@ -1,75 +1,15 @@
 package estimator
 
 import (
+	"errors"
 	"fmt"
 	"math/cmplx"
 
 	"gonum.org/v1/gonum/mat"
 
-	"polewright/estimator/internal/modes"
 	"polewright/estimator/internal/placement"
 	"polewright/estimator/poles"
 )
-
-// split finds the part of the model whose eigenvalues a gain can move.
-func (d *Designer) split(seen *modes.Result) error {
-	c := d.c
-	if d.opt.Form == Current {
-		c = new(mat.Dense)
-		c.Mul(d.c, d.a)
-		var err error
-		if seen, err = modes.Analyse(raw(d.a), raw(c), d.opt.Tolerance); err != nil {
-			return fmt.Errorf("observability of the current form: %w", err)
-		}
-	}
-	pr := pair{q: seen.Q, rank: seen.Rank, fixed: seen.Fixed}
-	if pr.rank > 0 {
-		q1 := seen.Q.Slice(0, d.n, 0, pr.rank)
-		var aq mat.Dense
-		aq.Mul(d.a, q1)
-		pr.a = new(mat.Dense)
-		pr.a.Mul(q1.T(), &aq)
-		pr.c = new(mat.Dense)
-		pr.c.Mul(c, q1)
-		pr.combineSensors(d.r)
-	}
-	d.pair = pr
-	return nil
-}
-
-// combineSensors replaces linearly dependent rows C = M C₁ by C₁ and remembers
-// the combination (Mᵀ R⁻¹ M)⁻¹ Mᵀ R⁻¹ that wastes no information.
-func (pr *pair) combineSensors(r *mat.Dense) {
-	p, _ := pr.c.Dims()
-	var svd mat.SVD
-	if !svd.Factorize(pr.c, mat.SVDThin) {
-		return
-	}
-	s := svd.Values(nil)
-	rank := 0
-	for rank < len(s) && s[rank] > 1e-13*s[0]*float64(p) {
-		rank++
-	}
-	if rank == p || rank == 0 {
-		return
-	}
-	var u, v mat.Dense
-	svd.UTo(&u)
-	svd.VTo(&v)
-	m := mat.DenseCopyOf(u.Slice(0, p, 0, rank))
-	m.Apply(func(_, j int, x float64) float64 { return x * s[j] }, m)
-	var rm, mrm, combine mat.Dense
-	if rm.Solve(r, m) != nil { // R singular: every sensor counts alike
-		rm.CloneFrom(m)
-	}
-	mrm.Mul(m.T(), &rm)
-	if combine.Solve(&mrm, rm.T()) != nil {
-		return
-	}
-	pr.combine = &combine
-	_, cols := pr.c.Dims()
-	pr.c = mat.DenseCopyOf(v.Slice(0, cols, 0, rank).T())
-}
 
 // Place designs the gain whose eigenvalues are the wanted poles, in the model's
 // own plane (s in continuous, z in discrete time), a complex pole with its
@@ -80,19 +20,28 @@ func (pr *pair) combineSensors(r *mat.Dense) {
 // It fails with a *FixedModesError where the list does not fit what the sensors
 // give. An unstable list is an answer too: its design says so.
 func (d *Designer) Place(wanted []complex128, prev *Design) (*Design, error) {
+	quick, err := d.QuickPlace(wanted, prev)
+	if err != nil {
+		return nil, err
+	}
+	out, err := d.Complete(quick)
+	if err != nil {
+		return nil, err
+	}
+	d.compareMethods(out)
+	return out, nil
+}
+
+// QuickPlace is Place for a pole that is being dragged: it leaves to Complete what
+// Design.Partial lists.
+func (d *Designer) QuickPlace(wanted []complex128, prev *Design) (*Design, error) {
 	movable, err := d.movable(wanted)
 	if err != nil {
 		return nil, err
 	}
-	ls := mat.NewDense(d.n, d.p, nil)
-	var branch *placement.Warm
-	if d.pair.rank > 0 {
-		if branch, err = d.assign(ls, movable, prev); err != nil {
-			return nil, err
-		}
-	}
-	if d.pair.rank < d.n {
-		d.addUnseenRows(ls)
+	ls, branch, err := d.gainFor(movable, prev)
+	if err != nil {
+		return nil, err
 	}
 	var lf *mat.Dense
 	if d.opt.Form == Current {
@@ -105,6 +54,23 @@ func (d *Designer) Place(wanted []complex128, prev *Design) (*Design, error) {
 	}
 	out.branch = branch
 	return out, nil
+}
+
+// gainFor returns the scaled gain, the current form's in current form, for the
+// movable poles.
+func (d *Designer) gainFor(movable []complex128, prev *Design) (*mat.Dense, *placement.Warm, error) {
+	ls := mat.NewDense(d.n, d.p, nil)
+	var branch *placement.Warm
+	if d.pair.rank > 0 {
+		var err error
+		if branch, err = d.assign(ls, movable, prev); err != nil {
+			return nil, nil, err
+		}
+	}
+	if d.pair.rank < d.n {
+		d.addUnseenRows(ls)
+	}
+	return ls, branch, nil
 }
 
 // movable reduces a list to the poles that placement can choose.
@@ -150,22 +116,20 @@ func withoutFixed(list, fixed []complex128, refuse error) ([]complex128, error) 
 	return list, nil
 }
 
-// assign writes the scaled gain for the movable poles to ls.
+// assign writes the scaled gain for the movable poles to ls and returns the choice
+// that it made among several.
 func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) (branch *placement.Warm, err error) {
 	pr := &d.pair
 	p1, _ := pr.c.Dims()
 	part := mat.NewDense(pr.rank, p1, nil)
-	switch {
-	case d.opt.Method == LeastNoise && p1 > 1:
-		return nil, fmt.Errorf("least-noise gain for several sensors: %w", ErrMethod)
-	case p1 == 1:
+	if p1 == 1 {
 		err = d.placement.Single(raw(part), raw(pr.a), raw(pr.c), movable)
-	default:
+	} else {
 		branch = new(placement.Warm)
-		if prev != nil && prev.branch != nil {
+		if prev != nil && prev.branch != nil && prev.Method == d.opt.Method && prev.Form == d.opt.Form {
 			branch = prev.branch.Clone()
 		}
-		_, err = d.placement.Robust(raw(part), raw(pr.a), raw(pr.c), movable, branch)
+		err = d.choose(part, movable, branch)
 	}
 	if err != nil {
 		return nil, fmt.Errorf("placement: %w", err)
@@ -176,7 +140,24 @@ func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) (br
 		full.Mul(part, pr.combine)
 	}
 	ls.Mul(pr.q.Slice(0, d.n, 0, pr.rank), full)
+	if pr.inject != nil {
+		ls.Add(ls, pr.inject)
+	}
 	return branch, nil
+}
+
+// choose takes one of the gains that several sensors leave.
+func (d *Designer) choose(part *mat.Dense, movable []complex128, branch *placement.Warm) error {
+	pr := &d.pair
+	if d.opt.Method == LeastNoise {
+		_, err := d.placement.LeastNoise(raw(part), raw(pr.a), raw(pr.c), raw(pr.w), raw(pr.r), pr.weights, movable, d.model.Discrete(), branch)
+		if !errors.Is(err, placement.ErrUnstable) {
+			return err
+		}
+		*branch = placement.Warm{} // no steady state to make quiet
+	}
+	_, err := d.placement.Robust(raw(part), raw(pr.a), raw(pr.c), movable, branch)
+	return err
 }
 
 func formatPole(v complex128) string { return poles.Format(v) }

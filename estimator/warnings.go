@@ -64,11 +64,6 @@ func (d *Designer) warn(out *Design) {
 	if m.K != nil && m.B != nil {
 		d.warnLoop(say, out)
 	}
-	for _, s := range out.SensorSets {
-		if out.Stable && !s.Stable && len(s.Lost) == 1 && d.p > 1 {
-			say("with %s lost and its column of L set to zero the estimator is unstable", name(m.SensorNames, "y", s.Lost[0]))
-		}
-	}
 }
 
 func zeroNoise(r *mat.SymDense) bool {
