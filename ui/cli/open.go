@@ -21,7 +21,7 @@ import (
 type screenOptions struct {
 	scenario, form, background, colours string
 	period                              float64
-	ascii, calm                         bool
+	ascii, calm, lines                  bool
 }
 
 func (o *screenOptions) register(cmd *cobra.Command) {
@@ -31,6 +31,7 @@ func (o *screenOptions) register(cmd *cobra.Command) {
 	f.Float64Var(&o.period, "period", 0, "sample period in seconds in place of the plant file's; 0 drops it")
 	f.BoolVar(&o.ascii, "ascii", false, "draw with 7-bit characters only")
 	f.BoolVar(&o.calm, "calm", false, "send little over a slow link: traces follow when the hands rest")
+	f.BoolVar(&o.lines, "lines", false, "a dialogue in plain lines, for screen readers and scripts (also where TERM is dumb)")
 	f.StringVar(&o.background, "background", "auto", "dark, light or auto (from COLORFGBG, else dark)")
 	f.StringVar(&o.colours, "colours", "auto", "none, 16, 256, all or auto (from TERM, COLORTERM and NO_COLOR)")
 	for name, words := range map[string][]string{
@@ -89,38 +90,41 @@ func openScreen(cmd *cobra.Command, o screenOptions, args []string) error {
 	if err != nil {
 		return err
 	}
-	w, err := o.work(cmd, args)
+	w, known, err := o.work(cmd, args)
 	if err != nil {
 		return err
 	}
-	in, out, ok := launch.IsTerminal(cmd.InOrStdin(), cmd.OutOrStdout())
-	if !ok || os.Getenv("TERM") == "dumb" {
-		return &plants.Error{Where: "terminal", Wrong: "the screen needs a terminal that can move its cursor", Expected: "one, or the commands that 'polewright --help' lists"}
+	if o.lines || os.Getenv("TERM") == "dumb" {
+		return talk(cmd, w)
 	}
-	saved, err := launch.Run(cmd.Context(), launch.Options{Work: *w, Program: "polewright " + Version, Theme: look, Calm: o.calm, In: in, Out: out})
+	in, out, ok := launch.IsTerminal(cmd.InOrStdin(), cmd.OutOrStdout())
+	if !ok {
+		return &plants.Error{Where: "terminal", Wrong: "the screen needs a terminal that can move its cursor", Expected: "one; or --lines for a dialogue in lines"}
+	}
+	saved, err := launch.Run(cmd.Context(), launch.Options{Work: *w, Known: known, Any: len(args) == 0, Program: "polewright " + Version, Theme: look, Calm: o.calm, In: in, Out: out})
 	if saved != "" {
 		fmt.Fprintln(cmd.OutOrStdout(), "saved in "+saved)
 	}
 	return err
 }
 
-// work is what the screen starts from.
-func (o *screenOptions) work(cmd *cobra.Command, args []string) (*desk.Work, error) {
+// work is what the screen starts from, and what stands for the content of the
+// session file where it was read from one.
+func (o *screenOptions) work(cmd *cobra.Command, args []string) (w *desk.Work, known session.Sum, err error) {
 	form, err := word("form", o.form, map[string]estimator.Form{"prediction": estimator.Prediction, "current": estimator.Current})
 	if err != nil {
-		return nil, err
+		return nil, known, err
 	}
 	if len(args) == 1 && session.Is(args[0]) {
 		for _, name := range []string{"period", "scenario", "form"} {
 			if cmd.Flags().Changed(name) {
-				return nil, usageError(name, "given with a session", "the session's own")
+				return nil, known, usageError(name, "given with a session", "the session's own")
 			}
 		}
-		w, err := session.Load(args[0])
-		if err != nil {
-			return nil, fileError(args[0], "a session file", err)
+		if w, known, err = session.LoadSum(args[0]); err != nil {
+			return nil, known, fileError(args[0], "a session file", err)
 		}
-		return w, nil
+		return w, known, nil
 	}
 	name := library.Names()[0]
 	if len(args) == 1 {
@@ -128,7 +132,7 @@ func (o *screenOptions) work(cmd *cobra.Command, args []string) (*desk.Work, err
 	}
 	src, err := loadPlant(name)
 	if err != nil {
-		return nil, err
+		return nil, known, err
 	}
 	scenario := o.scenario
 	if own := library.Scenarios(src.builtIn); scenario == "" && len(own) > 0 {
@@ -136,14 +140,14 @@ func (o *screenOptions) work(cmd *cobra.Command, args []string) (*desk.Work, err
 	}
 	mo, err := periodOption(cmd, &o.period)
 	if err != nil {
-		return nil, err
+		return nil, known, err
 	}
 	b, err := src.bench(scenario, mo)
 	if err != nil {
-		return nil, err
+		return nil, known, err
 	}
 	if form == estimator.Current && !b.Model.Discrete() {
-		return nil, usageError("form", "current for an estimator in continuous time", "prediction, or a sample period")
+		return nil, known, usageError("form", "current for an estimator in continuous time", "prediction, or a sample period")
 	}
-	return &desk.Work{Bench: b, Form: form}, nil
+	return &desk.Work{Bench: b, Form: form}, known, nil
 }
