@@ -353,7 +353,7 @@ func TestReadingAllocatesNothingPerRow(t *testing.T) {
 			replay(t, log, logs.Request{Model: m, Gain: g, Floor: &g})
 		})
 	}
-	if few, many := count(4000), count(8000); many > few {
+	if few, many := count(4000), count(8000); many > few+20 { // the collector adds some
 		t.Errorf("%g allocations for 8000 rows, %g for 4000", many, few)
 	}
 }
@@ -367,7 +367,7 @@ func TestReplayAllocatesNothingPerSample(t *testing.T) {
 		log := memoryOf(l, u[:steps], y[:steps])
 		return testing.AllocsPerRun(5, func() { replay(t, log, logs.Request{Model: m, Gain: g, Floor: &g}) })
 	}
-	if few, many := count(1000), count(4000); many > few {
+	if few, many := count(1000), count(4000); many > few+20 {
 		t.Errorf("%g allocations for 4000 samples, %g for 1000", many, few)
 	}
 }
