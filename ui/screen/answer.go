@@ -65,9 +65,7 @@ func (m *Model) answer(a *desk.Answer) tea.Cmd {
 	if a.Stage >= desk.Traced {
 		m.run, m.runGen = a.Run, a.Gen
 		m.newRun()
-		if !m.cfg.Calm || first || !m.resting {
-			m.dirty |= tracesRegion
-		}
+		m.dirty |= tracesRegion
 	}
 	if a.Gen == m.gen {
 		m.upToDate(a)

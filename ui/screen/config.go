@@ -40,8 +40,12 @@ type Config struct {
 	Resolve func(text, plane string, form estimator.Form) ([]complex128, error)
 
 	Theme theme.Options
-	// Calm sends less while poles move: traces follow only when the hands rest.
+	// Calm sends little while poles move, for a slow link: the rest follows when
+	// the hands rest.
 	Calm bool
+	// Shorten sends long runs of blanks as erasing and moving on, which takes
+	// fewer bytes. Every terminal does that which knows ECH and CUF of ECMA-48.
+	Shorten bool
 	// Width and Height stand in for the terminal's until it tells; 0 means 80x24.
 	Width, Height int
 	// Now is the clock, for tests; nil is time.Now.

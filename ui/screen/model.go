@@ -114,6 +114,7 @@ type Model struct {
 	canvas [4]canvas.Canvas
 	drawn  [4][]string
 	frame  string
+	slow   trickle
 }
 
 func (m *Model) period() float64 { return m.cfg.Work.Bench.Model.Period }

@@ -56,7 +56,14 @@ func (m *Model) refresh() {
 		m.body(&b)
 	}
 	b.WriteString(m.status())
-	m.frame, m.dirty = b.String(), 0
+	frame := b.String()
+	if m.cfg.Shorten {
+		frame = shorten(frame)
+	}
+	if m.cfg.Calm {
+		frame = m.calm(frame)
+	}
+	m.frame, m.dirty = frame, 0
 }
 
 // body draws plane, traces and readings, those that are dirty.

@@ -41,6 +41,9 @@ func (m Model) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
 		cmd = m.restTick()
 	case savedMsg:
 		cmd = m.savedResult(msg)
+	case calmMsg:
+		m.slow.ticks = false
+		m.dirty |= statusRegion
 	case tea.WindowSizeMsg:
 		m.resize(msg.Width, msg.Height)
 		m.fitPlane()
@@ -50,7 +53,7 @@ func (m Model) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
 		return m, nil
 	}
 	m.refresh()
-	return m, cmd
+	return m, tea.Batch(cmd, m.catchUp())
 }
 
 // View returns the frame that the last Update left.
