@@ -6,25 +6,18 @@ package solver
 import (
 	"context"
 	"fmt"
-	"sync"
 
 	"polewright/estimator"
 	"polewright/scenarios"
 	"polewright/ui/aim"
 	"polewright/ui/desk"
+	"polewright/ui/newest"
 )
 
 // Solver owns one worker and all its workspaces.
 type Solver struct {
 	notify func(desk.Answer)
-	wake   chan struct{}
-	done   chan struct{}
-	base   context.Context
-	stop   context.CancelFunc
-
-	mu      sync.Mutex
-	pending *desk.Request
-	cancel  context.CancelFunc // of the run in progress
+	box    *newest.Box[desk.Request]
 }
 
 // New starts a solver for one bench. notify is called from the worker, one answer
@@ -38,72 +31,26 @@ func New(bench *desk.Bench, notify func(desk.Answer)) *Solver {
 type stages func(ctx context.Context, r desk.Request, send func(desk.Answer))
 
 func start(work stages, notify func(desk.Answer)) *Solver {
-	s := &Solver{notify: notify, wake: make(chan struct{}, 1), done: make(chan struct{})}
-	s.base, s.stop = context.WithCancel(context.Background())
-	go s.loop(work)
+	s := &Solver{notify: notify}
+	ready := make(chan struct{})
+	s.box = newest.Start(func(ctx context.Context, r desk.Request) {
+		<-ready
+		s.serve(ctx, r, work)
+	})
+	close(ready)
 	return s
 }
 
 // Ask hands over a request and returns at once.
-func (s *Solver) Ask(r desk.Request) {
-	s.mu.Lock()
-	s.pending = &r
-	if s.cancel != nil {
-		s.cancel()
-	}
-	s.mu.Unlock()
-	select {
-	case s.wake <- struct{}{}:
-	default:
-	}
-}
+func (s *Solver) Ask(r desk.Request) { s.box.Ask(r) }
 
 // Close cancels the work in progress and waits for the worker to end. No answer
 // is delivered after it returns.
-func (s *Solver) Close() {
-	s.stop()
-	<-s.done
-}
-
-func (s *Solver) loop(work stages) {
-	defer close(s.done)
-	for {
-		select {
-		case <-s.base.Done():
-			return
-		case <-s.wake:
-		}
-		for {
-			r, ctx, ok := s.take()
-			if !ok {
-				break
-			}
-			s.serve(ctx, r, work)
-		}
-	}
-}
-
-// take removes the pending request and gives it a context of its own.
-func (s *Solver) take() (desk.Request, context.Context, bool) {
-	s.mu.Lock()
-	defer s.mu.Unlock()
-	if s.cancel != nil {
-		s.cancel()
-		s.cancel = nil
-	}
-	if s.pending == nil || s.base.Err() != nil {
-		return desk.Request{}, nil, false
-	}
-	r := *s.pending
-	s.pending = nil
-	ctx, cancel := context.WithCancel(s.base)
-	s.cancel = cancel
-	return r, ctx, true
-}
+func (s *Solver) Close() { s.box.Close() }
 
 func (s *Solver) serve(ctx context.Context, r desk.Request, work stages) {
 	send := func(a desk.Answer) {
-		if s.base.Err() != nil {
+		if s.box.Closed() {
 			return
 		}
 		a.Gen = r.Gen
