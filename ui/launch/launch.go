@@ -5,11 +5,10 @@ package launch
 import (
 	"context"
 	"errors"
-	"fmt"
 	"io"
-	"io/fs"
 	"os"
-	"sync"
+	"path/filepath"
+	"time"
 
 	tea "github.com/charmbracelet/bubbletea"
 
@@ -17,6 +16,7 @@ import (
 	"polewright/estimator/poles"
 	"polewright/ui/aim"
 	"polewright/ui/desk"
+	"polewright/ui/journal"
 	"polewright/ui/screen"
 	"polewright/ui/session"
 	"polewright/ui/solver"
@@ -26,15 +26,41 @@ import (
 // Options of a screen.
 type Options struct {
 	Work    desk.Work
-	Program string // name and version, for session files
+	Known   session.Sum // of the session file that Work was read from
+	Any     bool        // nothing was named: offer whatever work was left unsaved
+	Program string      // name and version, for session files
 	Theme   theme.Options
 	Calm    bool
 	In, Out *os.File // the terminal
 }
 
 // Run shows the screen until the person quits and returns where the work was
-// saved, empty where it was not. The terminal is restored in any case.
+// saved, empty where it was not. Work that was left unsaved is offered first. The
+// terminal is restored in any case; where a signal or a fault ends the screen, the
+// unsaved work stays in the journal and the error says so.
 func Run(ctx context.Context, o Options) (saved string, err error) {
+	left, err := offer(ctx, &o, journal.Folder(), time.Now())
+	if err != nil {
+		return "", err
+	}
+	keeper, message := &keeper{}, ""
+	if left != nil {
+		o.Work, o.Known, keeper.journal = *left.work, left.sum, left.journal
+		message = "recovered; not saved yet"
+	} else if keeper.journal, err = journal.Open(journal.Folder(), o.Program); err != nil {
+		message = "unsaved work cannot be kept against a crash: " + err.Error()
+	}
+	store, err := newStore(&o)
+	if err != nil {
+		return "", err
+	}
+	keeper.mark = store.mark
+	err = keeper.finish(show(ctx, &o, keeper, store, message))
+	return store.where(), err
+}
+
+// show runs the screen and the background.
+func show(ctx context.Context, o *Options, keeper *keeper, store *store, message string) error {
 	var program *tea.Program
 	ready := make(chan struct{})
 	work := solver.New(o.Work.Bench, func(a desk.Answer) {
@@ -42,43 +68,32 @@ func Run(ctx context.Context, o Options) (saved string, err error) {
 		program.Send(screen.AnswerMsg{Answer: a})
 	})
 	defer work.Close()
-	store := &store{program: o.Program, known: o.Work.File}
-	program = tea.NewProgram(screen.New(screen.Config{
+	first := screen.New(screen.Config{
 		Work:    o.Work,
 		Ask:     work.Ask,
 		Save:    store.save,
 		Resolve: (&resolver{bench: o.Work.Bench}).resolve,
 		Theme:   o.Theme,
 		Calm:    o.Calm,
-	}), tea.WithAltScreen(), tea.WithContext(ctx), tea.WithInput(o.In), tea.WithOutput(o.Out))
+		Message: message,
+	})
+	keeper.latest = first
+	program = tea.NewProgram(kept{first, keeper},
+		tea.WithAltScreen(), tea.WithContext(ctx), tea.WithInput(o.In), tea.WithOutput(o.Out), tea.WithoutSignalHandler())
 	close(ready)
-	_, err = program.Run()
-	if errors.Is(err, tea.ErrProgramKilled) && ctx.Err() != nil {
-		err = errors.New("interrupted; what was not saved is lost")
-	}
-	return store.last, err
+	defer keeper.guard(program)()
+	_, err := program.Run()
+	return err
 }
 
-// store saves sessions for the screen.
-type store struct {
-	program string
-	mu      sync.Mutex
-	known   string // file that this session was read from or saved to
-	last    string
-}
-
-func (s *store) save(file string, w desk.Work, replace bool) error {
-	s.mu.Lock()
-	defer s.mu.Unlock()
-	if err := session.Save(file, s.program, &w, replace || file == s.known); err != nil {
-		var path *fs.PathError
-		if errors.As(err, &path) && !errors.Is(err, fs.ErrExist) {
-			return fmt.Errorf("%s: %w", file, path.Err)
-		}
-		return err
+func newStore(o *Options) (*store, error) {
+	s := &store{program: o.Program}
+	if o.Work.File == "" {
+		return s, nil
 	}
-	s.known, s.last = file, file
-	return nil
+	path, err := filepath.Abs(o.Work.File)
+	s.own = content{path, o.Known}
+	return s, err
 }
 
 // resolver reads pole lists and patterns with designers of its own, so that the

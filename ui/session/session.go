@@ -13,6 +13,7 @@ import (
 	"io"
 	"os"
 	"strings"
+	"time"
 
 	"polewright/plants"
 	"polewright/scenarios"
@@ -26,10 +27,16 @@ const Format = 1
 // Ending is what the name of a session file ends in.
 const Ending = ".session.json"
 
-// maxFile bounds what is read; maxCandidates what a file may hold.
+// Bounds on what is read: bytes of a file and of each text in it, candidates,
+// wanted poles of each, characters of a name, of a note and of a file's name.
 const (
 	maxFile       = 64 << 20
-	maxCandidates = 1000
+	maxText       = 1 << 20
+	maxCandidates = 100
+	maxPoles      = 1000
+	maxLetter     = 20
+	maxNote       = 80
+	maxFileName   = 120
 )
 
 type document struct {
@@ -44,6 +51,15 @@ type document struct {
 	Candidates []candidate `json:"candidates"`
 	Selected   string      `json:"selected"`
 	View       desk.View   `json:"view"`
+	Journal    *Mark       `json:"journal,omitempty"`
+}
+
+// Mark is what the journal of unsaved work notes beside the work.
+type Mark struct {
+	File    string    `json:"file"`    // session file, absolute; empty where none was named
+	Content string    `json:"content"` // SHA-256 of that file as it was read or written
+	Plant   string    `json:"plant"`   // name of the plant
+	Written time.Time `json:"written"`
 }
 
 // text is a file held whole.
@@ -90,7 +106,7 @@ func Is(file string) bool {
 }
 
 func read(file string) ([]byte, error) {
-	f, err := os.Open(file)
+	f, err := openRegular(file, os.O_RDONLY)
 	if err != nil {
 		return nil, err
 	}
@@ -106,19 +122,26 @@ func read(file string) ([]byte, error) {
 // nothing is designed anew. The error is a *plants.Error where the content is at
 // fault.
 func Load(file string) (*desk.Work, error) {
-	data, err := read(file)
-	if err != nil {
-		return nil, err
-	}
-	w, err := parse(file, data)
-	if err != nil {
-		return nil, err
-	}
-	w.File = file
-	return w, nil
+	w, _, err := LoadSum(file)
+	return w, err
 }
 
-func parse(file string, data []byte) (*desk.Work, error) {
+// LoadSum is Load that also returns what stands for the content that was read.
+func LoadSum(file string) (*desk.Work, Sum, error) {
+	data, err := read(file)
+	if err != nil {
+		return nil, Sum{}, err
+	}
+	w, err := Decode(file, data)
+	if err != nil {
+		return nil, Sum{}, err
+	}
+	w.File = file
+	return w, sha256.Sum256(data), nil
+}
+
+// Decode reads the content of a session file, which is named in errors.
+func Decode(file string, data []byte) (*desk.Work, error) {
 	wrong := func(where, wrong, expected string) error {
 		return &plants.Error{File: file, Where: where, Wrong: wrong, Expected: expected}
 	}
@@ -148,9 +171,16 @@ func parse(file string, data []byte) (*desk.Work, error) {
 		where string
 		text  *text
 	}{{"plant", &doc.Plant}, {"scenario", doc.Scenario}, {"truth_plant", doc.Truth}} {
-		if t.text != nil && hold("", []byte(t.text.Text)).SHA256 != t.text.SHA256 {
+		if t.text == nil {
+			continue
+		}
+		if len(t.text.Text) > maxText {
+			return nil, wrong(t.where+".text", fmt.Sprintf("%d bytes", len(t.text.Text)), fmt.Sprintf("at most %d", maxText))
+		}
+		if hold("", []byte(t.text.Text)).SHA256 != t.text.SHA256 {
 			return nil, wrong(t.where+".text", "does not match its sha256", "the text as it was saved")
 		}
+		t.text.File = fileName(t.text.File)
 	}
 	bench, err := doc.bench(file)
 	if err != nil {
