@@ -23,14 +23,9 @@ type Column struct {
 	Limits []scenarios.LimitResult
 }
 
-const (
-	compareLabel = 20
-	compareWidth = 19
-)
-
-// Compare shows designs side by side, the one under the cursor among them.
+// Compare shows designs side by side, the one under the cursor among them. The
+// best value of each row has weight.
 func Compare(w int, b *desk.Bench, an *estimator.Analysis, plane targets.Plane, list []Column, cursor int, t *theme.Theme) []string {
-	g := &t.Glyphs
 	p := page{w: w}
 	if len(list) == 0 {
 		p.title("candidates")
@@ -38,130 +33,202 @@ func Compare(w int, b *desk.Bench, an *estimator.Analysis, plane targets.Plane, 
 		return p.lines(t)
 	}
 	fit := max((w-compareLabel)/compareWidth, 1)
-	from := 0
-	if cursor >= fit {
-		from = cursor - fit + 1
-	}
-	shown := list[from:min(from+fit, len(list))]
-	line := func(label string, of func(c Column) string) {
-		spans := []span{{x: 2, text: canvas.Cut(label, compareLabel-3, g.Ellipsis), ink: theme.Faint}}
-		for k, c := range shown {
-			spans = append(spans, span{x: compareLabel + (k+1)*compareWidth - 2, text: canvas.Cut(of(c), compareWidth-1, g.Ellipsis), right: true})
-		}
-		p.row(spans...)
-	}
-	line("candidates", func(c Column) string { return c.Name })
-	for k := range shown {
-		p.rows[0][k+1].ink = theme.Title
-		if from+k == cursor {
-			p.rows[0][k+1].ink = theme.Hold
-			p.rows[0][k+1].text = string(g.Right) + " " + p.rows[0][k+1].text
-		}
-	}
-	p.rows[0][0].ink, p.rows[0][0].x = theme.Title, 0
-	rows := 0
-	for _, c := range shown {
-		rows = max(rows, len(c.Poles.List))
+	from := max(cursor-fit+1, 0)
+	c := comparison{page: &p, bench: b, shown: list[from:min(from+fit, len(list))], g: &t.Glyphs}
+	c.names(cursor - from)
+	p.blank()
+	c.poles(plane)
+	p.blank()
+	c.speed()
+	p.blank()
+	c.noise(an)
+	if b.Model.K != nil {
+		p.blank()
+		c.margins()
 	}
 	p.blank()
+	c.line("limits met", met)
+	return p.lines(t)
+}
+
+const (
+	compareLabel = 20
+	compareWidth = 19
+)
+
+// comparison writes the rows of a comparison.
+type comparison struct {
+	*page
+	bench *desk.Bench
+	shown []Column
+	g     *theme.Glyphs
+}
+
+// line writes one row.
+func (c *comparison) line(label string, of func(c Column) string) {
+	spans := []span{{x: 2, text: canvas.Cut(label, compareLabel-3, c.g.Ellipsis), ink: theme.Faint}}
+	for k, column := range c.shown {
+		spans = append(spans, span{x: compareLabel + (k+1)*compareWidth - 2, right: true,
+			text: canvas.Cut(of(column), compareWidth-1, c.g.Ellipsis)})
+	}
+	c.row(spans...)
+}
+
+// figures writes one row of a figure of the designs.
+func (c *comparison) figures(label string, of func(d *estimator.Design) string) {
+	c.line(label, func(column Column) string {
+		if column.Design == nil {
+			return c.g.Undefined
+		}
+		return of(column.Design)
+	})
+}
+
+// values writes one row of numbers and gives weight to the best: the least, or
+// with most the largest.
+func (c *comparison) values(label string, most bool, of func(d *estimator.Design) float64, print func(v float64) string) {
+	c.figures(label, func(d *estimator.Design) string { return print(of(d)) })
+	c.best(most, of)
+}
+
+func (c *comparison) best(most bool, of func(d *estimator.Design) float64) {
+	row, best, found := c.rows[len(c.rows)-1], -1, math.Inf(1)
+	for k, column := range c.shown {
+		if column.Design == nil {
+			continue
+		}
+		v := of(column.Design)
+		if most {
+			v = -v
+		}
+		if v < found {
+			best, found = k, v
+		}
+	}
+	if best >= 0 && len(c.shown) > 1 {
+		row[best+1].ink = theme.Title
+	}
+}
+
+// fixed prints with so many decimals; like with those that suit the first design.
+func (c *comparison) fixed(decimals int) func(v float64) string {
+	return func(v float64) string { return readings.Fixed(v, decimals, c.g) }
+}
+
+func (c *comparison) like(of func(d *estimator.Design) float64) func(v float64) string {
+	ref := math.NaN()
+	if d := c.shown[0].Design; d != nil {
+		ref = of(d)
+	}
+	return func(v float64) string { return readings.Figure(v, ref, c.g) }
+}
+
+func (c *comparison) names(cursor int) {
+	c.line("candidates", func(column Column) string { return column.Name })
+	row := c.rows[len(c.rows)-1]
+	row[0].x, row[0].ink = 0, theme.Title
+	for k := range c.shown {
+		row[k+1].ink = theme.Title
+		if k == cursor {
+			row[k+1].ink, row[k+1].text = theme.Hold, string(c.g.Right)+" "+row[k+1].text
+		}
+	}
+}
+
+func (c *comparison) poles(plane targets.Plane) {
+	rows := 0
+	for _, column := range c.shown {
+		rows = max(rows, len(column.Poles.List))
+	}
 	for i := range rows {
 		label := ""
 		if i == 0 {
 			label = "poles, " + string(byte(plane)) + "-plane"
 		}
-		line(label, func(c Column) string { return polePlace(c, i, plane, g) })
+		c.line(label, func(column Column) string { return c.place(column, i, plane) })
 	}
-	if b.Model.Discrete() {
-		line("form", func(c Column) string { return measures.FormName(c.Form) })
+	if c.bench.Model.Discrete() {
+		c.line("form", func(column Column) string { return measures.FormName(column.Form) })
 	}
-	p.blank()
-	figure := func(label string, of func(d *estimator.Design) string) {
-		line(label, func(c Column) string {
-			if c.Design == nil {
-				return g.Undefined
-			}
-			return of(c.Design)
-		})
-	}
-	first := shown[0].Design
-	ref := func(of func(d *estimator.Design) float64) float64 {
-		if first == nil {
-			return math.NaN()
-		}
-		return of(first)
-	}
-	settle := func(d *estimator.Design) float64 { return d.Transient.Settle }
-	norm := func(d *estimator.Design) float64 { return d.GainNorm }
-	settleRef, normRef := ref(settle), ref(norm)
-	figure("settle, s", func(d *estimator.Design) string { return readings.Figure(settle(d), settleRef, g) })
-	figure("peak, x", func(d *estimator.Design) string { return readings.Fixed(d.Transient.Peak, 2, g) })
-	figure("gain norm", func(d *estimator.Design) string { return readings.Figure(norm(d), normRef, g) })
-	figure("conditioning", func(d *estimator.Design) string { return readings.Fixed(d.EigenvectorCondition, 1, g) })
-	p.blank()
-	figure("noise, x floor", func(d *estimator.Design) string { return over(d, g) })
-	states, _, _ := b.Model.Dims()
-	for i := range states {
-		label := readings.StateName(b, i)
-		if u := readings.StateUnit(b, i); u != "" {
-			label += ", " + u
-		}
-		stdRef := math.NaN()
-		if an != nil && an.Floor != nil {
-			stdRef = an.Floor.Std[i]
-		}
-		figure(label, func(d *estimator.Design) string { return stateNoise(d, i, stdRef, g) })
-	}
-	if b.Model.K != nil {
-		p.blank()
-		loop := func(label string, of func(l *estimator.Loop) string) {
-			figure(label, func(d *estimator.Design) string {
-				if d.Loop == nil {
-					return g.Undefined
-				}
-				return of(d.Loop)
-			})
-		}
-		loop("phase margin, deg", func(l *estimator.Loop) string { return readings.Fixed(l.PhaseMargin, 1, g) })
-		loop("delay margin, ms", func(l *estimator.Loop) string { return readings.Fixed(1000*l.DelayMargin, 2, g) })
-		loop("sensitivity", func(l *estimator.Loop) string { return readings.Fixed(l.SensitivityPeak, 2, g) })
-	}
-	p.blank()
-	line("limits met", met)
-	return p.lines(t)
 }
 
-func polePlace(c Column, i int, plane targets.Plane, g *theme.Glyphs) string {
-	if i >= len(c.Poles.List) {
+func (c *comparison) place(column Column, i int, plane targets.Plane) string {
+	if i >= len(column.Poles.List) {
 		return ""
 	}
-	target := c.Poles.List[i]
-	at, ok := targets.Shown(target.At, plane, c.Poles.Period)
+	target := column.Poles.List[i]
+	at, ok := targets.Shown(target.At, plane, column.Poles.Period)
 	if !ok {
 		return "z = 0"
 	}
 	ref := math.Hypot(real(at), imag(at)) * 3
-	return readings.Place(at, target.Pair, max(ref, 0.1), g)
+	return readings.Place(at, target.Pair, max(ref, 0.1), c.g)
 }
 
-func over(d *estimator.Design, g *theme.Glyphs) string {
-	if d.Noise.Std == nil {
-		return g.Undefined
-	}
-	return readings.Fixed(d.Noise.OverFloorRMS, 2, g)
+func (c *comparison) speed() {
+	settle := func(d *estimator.Design) float64 { return d.Transient.Settle }
+	norm := func(d *estimator.Design) float64 { return d.GainNorm }
+	c.values("settle, s", false, settle, c.like(settle))
+	c.values("peak, x", false, func(d *estimator.Design) float64 { return d.Transient.Peak }, c.fixed(2))
+	c.values("gain norm", false, norm, c.like(norm))
+	c.values("conditioning", false, func(d *estimator.Design) float64 { return d.EigenvectorCondition }, c.fixed(1))
 }
 
-func stateNoise(d *estimator.Design, i int, ref float64, g *theme.Glyphs) string {
-	if i >= len(d.Noise.Std) {
-		return g.Undefined
+func (c *comparison) noise(an *estimator.Analysis) {
+	over := func(d *estimator.Design) float64 {
+		if d.Noise.Std == nil {
+			return math.NaN()
+		}
+		return d.Noise.OverFloorRMS
 	}
+	c.values("noise, x floor", false, over, c.fixed(2))
+	states, _, _ := c.bench.Model.Dims()
+	for i := range states {
+		label := readings.StateName(c.bench, i)
+		if u := readings.StateUnit(c.bench, i); u != "" {
+			label += ", " + u
+		}
+		ref := math.NaN()
+		if an != nil && an.Floor != nil {
+			ref = an.Floor.Std[i]
+		}
+		c.figures(label, func(d *estimator.Design) string { return c.stateNoise(d, i, ref) })
+		c.best(false, func(d *estimator.Design) float64 { return entry(d.Noise.Std, i) })
+	}
+}
+
+func (c *comparison) stateNoise(d *estimator.Design, i int, ref float64) string {
+	std, over := entry(d.Noise.Std, i), entry(d.Noise.OverFloor, i)
 	if !(ref > 0) {
-		ref = d.Noise.Std[i]
+		ref = std
 	}
-	s := readings.Figure(d.Noise.Std[i], ref, g)
-	if i < len(d.Noise.OverFloor) && !math.IsNaN(d.Noise.OverFloor[i]) {
-		s += fmt.Sprintf(" %6s", readings.Fixed(d.Noise.OverFloor[i], 2, g))
+	text := readings.Figure(std, ref, c.g)
+	if !math.IsNaN(over) {
+		text += fmt.Sprintf(" %6s", readings.Fixed(over, 2, c.g))
 	}
-	return s
+	return text
+}
+
+// entry is entry i of a list, NaN where there is none.
+func entry(list []float64, i int) float64 {
+	if i >= len(list) {
+		return math.NaN()
+	}
+	return list[i]
+}
+
+func (c *comparison) margins() {
+	margin := func(label string, decimals int, most bool, of func(l *estimator.Loop) float64) {
+		c.values(label, most, func(d *estimator.Design) float64 {
+			if d.Loop == nil {
+				return math.NaN()
+			}
+			return of(d.Loop)
+		}, c.fixed(decimals))
+	}
+	margin("phase margin, deg", 1, true, func(l *estimator.Loop) float64 { return l.PhaseMargin })
+	margin("delay margin, ms", 2, true, func(l *estimator.Loop) float64 { return 1000 * l.DelayMargin })
+	margin("sensitivity", 2, false, func(l *estimator.Loop) float64 { return l.SensitivityPeak })
 }
 
 func met(c Column) string {
