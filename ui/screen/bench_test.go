@@ -98,7 +98,8 @@ func newRig(t testing.TB, poles []complex128, opts ...option) *rig {
 			}
 			return []complex128{0.9, 0.92, 0.94}, nil
 		},
-		Now: func() time.Time { return r.clock },
+		KeepBlanks: true,
+		Now:        func() time.Time { return r.clock },
 	}
 	for _, o := range opts {
 		o(&cfg)

@@ -43,9 +43,10 @@ type Config struct {
 	// Calm sends little while poles move, for a slow link: the rest follows when
 	// the hands rest.
 	Calm bool
-	// Shorten sends long runs of blanks as erasing and moving on, which takes
-	// fewer bytes. Every terminal does that which knows ECH and CUF of ECMA-48.
-	Shorten bool
+	// KeepBlanks sends blanks as such. Otherwise long runs of them are sent as
+	// erasing and moving on, which takes fewer bytes and which every terminal does
+	// that knows ECH and CUF of ECMA-48.
+	KeepBlanks bool
 	// Width and Height stand in for the terminal's until it tells; 0 means 80x24.
 	Width, Height int
 	// Now is the clock, for tests; nil is time.Now.

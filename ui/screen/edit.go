@@ -68,6 +68,12 @@ func (m *Model) move(name string, dx, dy int) tea.Cmd {
 		m.refuse("this pole stays: the sensors do not see its mode, so no gain moves it")
 		return nil
 	}
+	if name == m.stopped && m.cfg.Now().Sub(m.stoppedAt) <= firstRepeat {
+		m.stoppedAt = m.cfg.Now()
+		m.say("on the axis: let go, then lift the two poles off it again")
+		return nil
+	}
+	m.stopped = ""
 	set, held, event, err := m.now.set.Move(m.now.held, dx, dy, m.window.Grid)
 	if err != nil {
 		m.refuse(err.Error())
@@ -82,6 +88,9 @@ func (m *Model) move(name string, dx, dy int) tea.Cmd {
 		m.say("the pair reached the sampling limit: two poles on it, one of them in your hand")
 	case targets.Joined:
 		m.say("two real poles became a pair")
+	}
+	if event == targets.Parted || event == targets.PartedAtLimit {
+		m.stopped, m.stoppedAt = name, m.cfg.Now()
 	}
 	if event != targets.Moved { // a step of its own, and of the keys after it
 		name = ""

@@ -85,6 +85,16 @@ func TestHeldKeyIsOneUndoStep(t *testing.T) {
 	r.wantPoles(z(-8+6i), z(-8-6i), z(-12))
 }
 
+// A key held until the pair parts on the axis does not lift the two poles again.
+func TestHeldKeyStopsOnTheAxis(t *testing.T) {
+	r := start(t)
+	r.hold("down", 60)
+	r.wantShown("pole 1 of 3")
+	r.clock = r.clock.Add(time.Second)
+	r.hold("down", 1)
+	r.wantShown("pair 1 of 2")
+}
+
 func TestUndoUsesTheStoredGain(t *testing.T) {
 	r := start(t)
 	stored := r.work().Gain

@@ -8,6 +8,7 @@ import (
 	tea "github.com/charmbracelet/bubbletea"
 
 	"polewright/ui/desk"
+	"polewright/ui/screen"
 )
 
 // drag moves a pole back and forth by a cell and answers each move.
@@ -28,8 +29,8 @@ func TestBytesWhileDragging(t *testing.T) {
 		name   string
 		opt    option
 		budget int
-	}{{"colour", colour, 2500}, {"ascii", seven, 2000}} {
-		r := start(t, c.opt)
+	}{{"colour", colour, 2500}, {"ascii", seven, 1300}} {
+		r := start(t, c.opt, func(c *screen.Config) { c.KeepBlanks = false })
 		r.send(tea.WindowSizeMsg{Width: 120, Height: 40})
 		var sizes []int
 		before := strings.Split(r.m.View(), "\n")

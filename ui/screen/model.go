@@ -78,6 +78,8 @@ type Model struct {
 	lastMove       string // key of the move that a repeat of it belongs to
 	lastMoved      time.Time
 	repeats        int
+	stopped        string // key of the move that parted a pair: held on, it goes no further
+	stoppedAt      time.Time
 	quitAfterSave  bool
 	saving         bool
 	saveWanted     *saveOrder // until the figures of the design in hand are there

@@ -57,7 +57,7 @@ func (m *Model) refresh() {
 	}
 	b.WriteString(m.status())
 	frame := b.String()
-	if m.cfg.Shorten {
+	if !m.cfg.KeepBlanks {
 		frame = shorten(frame)
 	}
 	if m.cfg.Calm {

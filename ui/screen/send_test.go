@@ -18,7 +18,7 @@ var erased = regexp.MustCompile("\x1b\\[([0-9]+)X\x1b\\[([0-9]+)C")
 // A shortened frame leaves the same cells.
 func TestShortenedFramesShowTheSame(t *testing.T) {
 	long := start(t, colour)
-	short := start(t, colour, func(c *screen.Config) { c.Shorten = true })
+	short := start(t, colour, func(c *screen.Config) { c.KeepBlanks = false })
 	for _, k := range []string{"left", "tab", "z", "?", "q"} {
 		long.press(k)
 		short.press(k)
