@@ -90,15 +90,36 @@ func (m *Model) body(b *strings.Builder) {
 	}
 	above := len(m.drawn[planeCanvas])
 	for y := range l.body {
+		var left string
 		if y < above {
-			b.WriteString(m.drawn[planeCanvas][y])
+			left = m.drawn[planeCanvas][y]
 		} else {
-			b.WriteString(m.drawn[tracesCanvas][y-above])
+			left = m.drawn[tracesCanvas][y-above]
 		}
-		b.WriteString("   ")
-		b.WriteString(m.drawn[readingsCanvas][y])
+		join(b, left, m.drawn[readingsCanvas][y], m.theme)
 		b.WriteByte('\n')
 	}
+}
+
+// join writes two parts of a line with the gap between them. An ink that ends the
+// first and begins the second is not left in between.
+func join(b *strings.Builder, left, right string, t *theme.Theme) {
+	const blanks = "   "
+	plain := t.Open(theme.Text)
+	if right == "" {
+		b.WriteString(left)
+		return
+	}
+	if strings.HasSuffix(left, plain) && strings.HasPrefix(right, "\x1b[") {
+		left = left[:len(left)-len(plain)]
+		if i := strings.LastIndex(left, "\x1b["); i >= 0 {
+			ink := left[i : i+strings.IndexByte(left[i:], 'm')+1]
+			right = strings.TrimPrefix(right, ink)
+		}
+	}
+	b.WriteString(left)
+	b.WriteString(blanks)
+	b.WriteString(right)
 }
 
 func (m *Model) viewBody(b *strings.Builder) {
