@@ -26,6 +26,8 @@ const (
 	tempAge            = time.Hour
 )
 
+var errNotRegular = errors.New("not a regular file")
+
 // temporary is a file that is being written.
 type temporary interface {
 	io.WriteCloser
@@ -113,7 +115,7 @@ func (d disk) write(path string, data []byte, mode fs.FileMode, allowed func(old
 	case !errors.Is(err, fs.ErrNotExist):
 		return said(path, err)
 	}
-	temp, err := d.fill(filepath.Dir(target), data, mode)
+	temp, err := d.fill(filepath.Dir(target), data, mode, old != nil)
 	if err != nil {
 		return said(path, err)
 	}
@@ -136,33 +138,32 @@ func (d disk) write(path string, data []byte, mode fs.FileMode, allowed func(old
 	return nil
 }
 
-// fill writes and flushes a temporary file in a folder and returns its name.
-func (d disk) fill(folder string, data []byte, mode fs.FileMode) (name string, err error) {
+// fill writes and flushes a temporary file in a folder and returns its name. An
+// exact mode is that of the file before; else the user's mask applies.
+func (d disk) fill(folder string, data []byte, mode fs.FileMode, exact bool) (string, error) {
 	var random [8]byte
 	_, _ = rand.Read(random[:]) // cannot fail
-	name = filepath.Join(folder, tempStart+hex.EncodeToString(random[:])+tempEnd)
+	name := filepath.Join(folder, tempStart+hex.EncodeToString(random[:])+tempEnd)
 	f, err := d.open(name, mode)
 	if err != nil {
 		return "", err
 	}
-	defer func() {
-		if err != nil {
-			_ = f.Close()
-			_ = os.Remove(name)
-		}
-	}()
-	if mode != 0o644 { // what the user chose, whatever the mask says
-		if err = f.Chmod(mode); err != nil && runtime.GOOS != "windows" {
-			return "", err
-		}
+	if exact && runtime.GOOS != "windows" {
+		err = f.Chmod(mode)
 	}
-	if _, err = f.Write(data); err != nil {
-		return "", err
+	if err == nil {
+		_, err = f.Write(data)
 	}
-	if err = f.Sync(); err != nil {
-		return "", err
+	if err == nil {
+		err = f.Sync()
 	}
-	return name, f.Close()
+	if closing := f.Close(); err == nil {
+		err = closing
+	}
+	if err != nil {
+		_ = os.Remove(name)
+	}
+	return name, err
 }
 
 // appear gives a temporary file its name where no other file has it, also where
@@ -216,7 +217,7 @@ func openRegular(path string, how int) (*os.File, error) {
 		return nil, err
 	}
 	if !info.Mode().IsRegular() {
-		return nil, errors.New("not a regular file")
+		return nil, errNotRegular
 	}
 	return os.OpenFile(path, how, 0)
 }
