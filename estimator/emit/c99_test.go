@@ -67,7 +67,7 @@ func shapes() []shape {
 		shape{n: 3, m: 1, p: 1, unknowns: 1, form: estimator.Current, arithmetic: emit.Float, through: true},
 		shape{n: 4, m: 2, p: 2, arithmetic: emit.Fixed, wrap: true, ranges: true, through: true},
 		shape{n: 3, m: 1, p: 2, form: estimator.Current, arithmetic: emit.Fixed, wrap: true, ranges: true},
-		shape{n: 1, m: 0, p: 1, arithmetic: emit.Fixed},
+		shape{n: 1, m: 0, p: 1, arithmetic: emit.Fixed}, // compiled with clang too
 		shape{n: 2, m: 1, p: 1, unknowns: 1, form: estimator.Current, arithmetic: emit.Fixed, through: true})
 }
 

@@ -67,7 +67,7 @@ func (p *program) stabilityCautions() []string {
 }
 
 // radius returns the spectral radius of F with one sensor lost (-1: none); NaN
-// where the eigenvalue iteration fails.
+// where an entry of F is 1e50 or more or the eigenvalue iteration fails.
 func (p *program) radius(lost int) float64 {
 	used := make([]bool, p.p)
 	for j := range used {
@@ -75,6 +75,16 @@ func (p *program) radius(lost int) float64 {
 	}
 	f := make([]float64, p.n*p.n)
 	p.transition(f, used)
+	// gonum's balancing does not end on entries that are not finite or that
+	// overflow while it scales them.
+	for i, v := range f {
+		if !(math.Abs(v) < 1e50) {
+			return math.NaN()
+		}
+		if math.Abs(v) < 1e-100 {
+			f[i] = 0
+		}
+	}
 	var eigen mat.Eigen
 	if !eigen.Factorize(mat.NewDense(p.n, p.n, f), mat.EigenNone) {
 		return math.NaN()

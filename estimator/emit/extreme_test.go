@@ -12,6 +12,16 @@ import (
 	"polewright/estimator/emit"
 )
 
+// A gain and a model whose F overflows must not keep the eigenvalues busy.
+func TestOverflowingErrorMatrixEnds(t *testing.T) {
+	src := gate()
+	src.Model.C.Set(0, 0, 1e300)
+	src.L.Set(0, 0, 1e300)
+	if files, err := emit.Emit(src, emit.JSON); err != nil || !bytes.Contains(files[0].Text, []byte("could not be computed")) {
+		t.Errorf("%v", err)
+	}
+}
+
 // Whatever the numbers, there is an error or a text without NaN and infinity
 // whose structured text passes its own check.
 func TestExtremeNumbers(t *testing.T) {

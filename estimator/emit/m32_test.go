@@ -54,7 +54,7 @@ func TestSelfTest32(t *testing.T) {
 			if err := os.WriteFile(file, []byte(text.String()), 0o644); err != nil {
 				t.Fatal(err)
 			}
-			args := append(append([]string{}, strict...), "-m32", "-ffreestanding", "-fno-stack-protector", "-nostdlib", "-static", "-fno-pic", "-o", exe, file)
+			args := append(append([]string{}, strict...), "-O1", "-m32", "-ffreestanding", "-fno-stack-protector", "-nostdlib", "-static", "-fno-pic", "-o", exe, file)
 			if out, err := exec.Command(path, args...).CombinedOutput(); err != nil {
 				if strings.Contains(string(out), "cannot find") || strings.Contains(string(out), "incompatible") {
 					t.Skipf("%s builds no 32-bit programs here: %s", cc, out)

@@ -125,8 +125,12 @@ func (t *selfTest) samples(r *runner, rng *rand.Rand, k int) (y []float64, missi
 			inner := 0.01 * (p.high[s] - p.low[s])
 			v = min(max(v, p.low[s]+inner), p.high[s]-inner)
 		}
+		lost := rng.Float64() < 0.12
+		if !(math.Abs(v) <= p.limit()) { // no such sample exists
+			v, lost = p.y0[s], true
+		}
 		y[s] = p.short(v)
-		missing[s] = rng.Float64() < 0.12 || t.undecided(r, s, y[s])
+		missing[s] = lost || t.undecided(r, s, y[s])
 	}
 	if s := k % p.p; k%7 == 5 {
 		y[s], missing[s] = math.NaN(), false
