@@ -156,6 +156,12 @@ func BenchmarkPlace(b *testing.B) {
 	benchmark(b, func(d *estimator.Designer) placing { return d.Place })
 }
 
+// BenchmarkQuickPlace is one redesign as a dragged pole asks for it: gain, reached poles,
+// conditioning, noise against the floor, transient, margins.
+func BenchmarkQuickPlace(b *testing.B) {
+	benchmark(b, func(d *estimator.Designer) placing { return d.QuickPlace })
+}
+
 // BenchmarkJudge is every figure of a gain at hand.
 func BenchmarkJudge(b *testing.B) {
 	benchmark(b, func(d *estimator.Designer) placing {

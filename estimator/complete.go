@@ -32,6 +32,7 @@ func (d *Designer) Complete(quick *Design) (*Design, error) {
 		d.sensorNoise(&out.Noise, ls)
 		d.peakGains(out)
 	}
+	d.exactLoop(out)
 	out.Float32Shift = d.float32Shift(out)
 	out.SensorSets = d.sensorSets(ls)
 	for _, s := range out.SensorSets {
@@ -62,7 +63,7 @@ const mostCompared = 24
 // for the same poles. It asks only where the gain is so far above the floor that this
 // can be.
 func (d *Designer) compareMethods(out *Design) {
-	const far = 2 // on the standard deviations, root mean square
+	const far = 1.5 // on the standard deviations, root mean square
 	pr := &d.pair
 	if pr.rank == 0 || d.opt.Method != Robust || !out.Stable || !(out.Noise.OverFloorRMS > far) {
 		return

@@ -79,7 +79,7 @@ type Design struct {
 	Form   Form
 	Method Method
 	// Partial tells that Complete has still to add Noise.SensorToState, Noise.PeakGain,
-	// Float32Shift, SensorSets and their warnings.
+	// Float32Shift, SensorSets and their warnings, and to confirm the margins of Loop.
 	Partial bool
 
 	// Wanted are the poles asked for in the model's own plane, nil for a gain

@@ -30,7 +30,8 @@ type Designer struct {
 	// In scaled coordinates: S⁻¹ A S, C S over the sensors' scales, and noise.
 	a, c, w, r *mat.Dense
 
-	pair pair // what placement works on
+	pair    pair     // what placement works on
+	control *control // nil without feedback
 
 	form      schur.Form
 	placement placement.Solver
@@ -91,6 +92,9 @@ func NewDesigner(m *Model, opt Options) (*Designer, error) {
 	d.n, _, d.p = m.Dims()
 	d.scale()
 	if err := d.analyse(); err != nil {
+		return nil, err
+	}
+	if err := d.prepareControl(); err != nil {
 		return nil, err
 	}
 	return d, nil

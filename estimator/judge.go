@@ -116,7 +116,7 @@ func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design
 	}
 	d.judgeNoise(out, ls, lf)
 	d.judgeTransient(out, f, ls, lf)
-	if err := d.judgeLoop(out); err != nil {
+	if err := d.judgeLoop(out, ls, lf); err != nil {
 		return nil, err
 	}
 	d.warn(out)

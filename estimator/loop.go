@@ -18,38 +18,25 @@ func all(n int) []int {
 	return list
 }
 
-func (d *Designer) judgeLoop(out *Design) error {
-	m := d.model
-	if m.K == nil || m.B == nil {
-		return nil
+// exactLoop judges the loop of a complete design: the quick figures, with the margins
+// found again where their crossings are eigenvalues and none can hide on a grid.
+func (d *Designer) exactLoop(out *Design) {
+	quick := out.Loop
+	if quick == nil || !quick.Stable {
+		return
 	}
-	_, inputs, _ := m.Dims()
-	l, err := d.openLoop(m, out)
+	l, err := d.openLoop(d.model, out)
 	if err != nil {
-		out.Warnings = append(out.Warnings, "loop: "+err.Error())
-		return nil
+		return
 	}
-	a, inverse, err := l.closed(all(inputs))
-	if err != nil {
-		out.Warnings = append(out.Warnings, "loop: "+err.Error())
-		return nil
+	loop := *quick
+	loop.Input, loop.DelayMarginSamples = -1, -1
+	judged := &Design{Loop: &loop}
+	d.loopMargins(judged, l)
+	if loop.Input >= 0 {
+		out.Loop = &loop
+		out.Warnings = append(out.Warnings, judged.Warnings...)
 	}
-	var form schur.Form
-	if err := form.Factor(raw(a)); err != nil {
-		return fmt.Errorf("closed loop: %w", err)
-	}
-	nan := math.NaN()
-	loop := &Loop{Poles: append([]complex128(nil), form.Eigenvalues()...), Input: -1,
-		GainMarginBelow: nan, GainMarginAbove: nan, PhaseMargin: nan, DelayMargin: nan, DelayMarginSamples: -1, SensitivityPeak: nan}
-	loop.Stable = stable(loop.Poles, m.Discrete())
-	out.Loop = loop
-	if !loop.Stable {
-		out.Warnings = append(out.Warnings, "the nominal control loop is unstable: it has no margins")
-		return nil
-	}
-	d.loopMargins(out, l)
-	loop.InputStd = d.inputNoise(l, a, inverse, &form)
-	return nil
 }
 
 // loopMargins examines one input at a time and keeps the worst of each margin;
@@ -99,13 +86,16 @@ func (d *Designer) loopMargins(out *Design, l *broken) {
 	}
 }
 
+// mostDelay is the longest delay that is looked at, in samples.
+const mostDelay = 100
+
 // delaySamples returns the largest whole delay that leaves the loop stable, by
 // the eigenvalues of the loop with that many registers; bound is the margin of a
-// real-valued delay in seconds. It gives up at 100 samples and says −1.
+// real-valued delay in seconds. It gives up at mostDelay and says −1.
 func (d *Designer) delaySamples(sys frequency.System, bound float64) int {
 	n := sys.A.Rows
 	limit := int(bound/d.model.Period) + 2
-	if limit > 100 {
+	if limit > mostDelay {
 		return -1
 	}
 	var form schur.Form
@@ -132,30 +122,6 @@ func (d *Designer) delaySamples(sys frequency.System, bound float64) int {
 		}
 	}
 	return limit
-}
-
-// inputNoise returns the standard deviation of u = −K x̂ in the closed loop
-// whose matrix is a, with its Schur form at hand.
-func (d *Designer) inputNoise(l *broken, a, inverse *mat.Dense, form *schur.Form) []float64 {
-	m := d.model
-	_, inputs := l.b.Dims()
-	// u = −(I + D)⁻¹ (C x + direct·v)
-	var uc, uv mat.Dense
-	uc.Mul(inverse, l.c)
-	uv.Mul(inverse, l.direct)
-	cov := d.loopCovariance(l, m, &uv, form)
-	if cov == nil {
-		return nil
-	}
-	std := make([]float64, inputs)
-	for u := range std {
-		v := mat.Inner(uc.RowView(u), cov, uc.RowView(u))
-		if m.Discrete() {
-			v += mat.Inner(uv.RowView(u), m.R, uv.RowView(u))
-		}
-		std[u] = math.Sqrt(max(v, 0))
-	}
-	return std
 }
 
 // loopCovariance returns the steady-state covariance of plant and estimator in

@@ -6,8 +6,6 @@ import (
 	"math/cmplx"
 
 	"gonum.org/v1/gonum/mat"
-
-	"polewright/estimator/internal/schur"
 )
 
 func name(list []string, letter string, i int) string {
@@ -61,7 +59,7 @@ func (d *Designer) warn(out *Design) {
 	if mat.Norm(m.Q, 1) == 0 {
 		say("there is no process noise: the best estimator would in time stop listening to the sensors")
 	}
-	if m.K != nil && m.B != nil {
+	if d.control != nil {
 		d.warnLoop(say, out)
 	}
 }
@@ -76,44 +74,14 @@ func zeroNoise(r *mat.SymDense) bool {
 }
 
 func (d *Designer) warnLoop(say func(string, ...any), out *Design) {
-	m := d.model
-	var bk, lc, f mat.Dense
-	bk.Mul(m.B, m.K)
-	lc.Mul(out.Gain, m.C)
-	f.Sub(m.A, &bk)
-	var form schur.Form
-	if form.Factor(raw(&f)) != nil {
-		return
-	}
-	control := slowest(d.ownModes(form.Eigenvalues()), m.Discrete())
-	estimate := slowest(out.Reached, m.Discrete())
+	control := slowest(d.control.closed, d.model.Discrete())
+	estimate := slowest(out.Reached, d.model.Discrete())
 	if out.Stable && estimate < control {
 		say("the slowest pole of the estimator is slower than the controller's")
 	}
-	f.Sub(&f, &lc)
-	if form.Factor(raw(&f)) == nil && !stable(form.Eigenvalues(), m.Discrete()) {
+	if !d.control.aloneStable {
 		say("A − BK − LC is unstable: the controller with its estimator is unstable on its own, with the plant cut off")
 	}
-}
-
-// ownModes leaves out the eigenvalues on the stability limit that unknown states bring.
-func (d *Designer) ownModes(list []complex128) []complex128 {
-	unknown := 0
-	for _, r := range d.model.Roles {
-		if r == UnknownState {
-			unknown++
-		}
-	}
-	if unknown == 0 {
-		return list
-	}
-	var own []complex128
-	for _, v := range list {
-		if strictlyStable(v, d.model.Discrete()) {
-			own = append(own, v)
-		}
-	}
-	return own
 }
 
 // slowest returns the rate at which the slowest of the poles dies out, per
