@@ -31,10 +31,7 @@ func (s *Scenario) Judge(d *estimator.Design, m *estimator.Model, p *plants.Plan
 	}
 	var list []LimitResult
 	add := func(name, unit string, value, limit float64, atLeast bool) {
-		met := value <= limit
-		if atLeast {
-			met = value >= limit
-		}
+		met := Within(value, limit, atLeast)
 		list = append(list, LimitResult{name, value, limit, atLeast, met, unit})
 	}
 	sensitivity, phase, delay := math.NaN(), math.NaN(), math.NaN()
@@ -79,6 +76,17 @@ func (s *Scenario) Judge(d *estimator.Design, m *estimator.Model, p *plants.Plan
 		add("input_std "+v.Name, unit, value, v.Limit, false)
 	}
 	return list
+}
+
+// Within reports whether a value keeps a limit. What differs by rounding alone is
+// equal: 35 samples of 0.01 s are not more than 0.35 s. An undefined value keeps
+// none.
+func Within(value, limit float64, atLeast bool) bool {
+	slack := 1e-12 * math.Abs(limit)
+	if atLeast {
+		return value >= limit-slack
+	}
+	return value <= limit+slack
 }
 
 func stdOf(d *estimator.Design, m *estimator.Model, name string) float64 {

@@ -246,7 +246,7 @@ func (s *search) excess(d *estimator.Design, limits []scenarios.LimitResult) flo
 		add(l.Value, l.Limit, l.AtLeast, l.Met)
 	}
 	if s.p.Goal == Quietest {
-		add(d.Transient.Settle, s.p.SettleMax, false, d.Transient.Settle <= s.p.SettleMax)
+		add(d.Transient.Settle, s.p.SettleMax, false, scenarios.Within(d.Transient.Settle, s.p.SettleMax, false))
 	}
 	return sum
 }

@@ -1,0 +1,119 @@
+package study_test
+
+import (
+	"testing"
+	"time"
+
+	"polewright/estimator"
+	"polewright/plants"
+	"polewright/plants/library"
+	"polewright/scenarios"
+	"polewright/ui/aim"
+	"polewright/ui/desk"
+	"polewright/ui/study"
+)
+
+func bench(t *testing.T, name string) (*desk.Bench, *estimator.Design) {
+	t.Helper()
+	text, file, _ := library.Plant(name)
+	p, err := plants.Parse(file, text)
+	if err != nil {
+		t.Fatal(err)
+	}
+	f := library.Scenarios(name)[0]
+	s, err := scenarios.Parse(f.Name, f.Text, p)
+	if err != nil {
+		t.Fatal(err)
+	}
+	m, err := p.Model(plants.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	d, err := estimator.NewDesigner(m, estimator.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	list, err := aim.Start(m, d)
+	if err != nil {
+		t.Fatal(err)
+	}
+	design, err := d.Place(list, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return &desk.Bench{Plant: p, Model: m, Scenario: s}, design
+}
+
+// wait returns the last answer of a generation.
+func wait(t *testing.T, answers <-chan study.Answer, gen uint64) study.Answer {
+	t.Helper()
+	for {
+		select {
+		case a := <-answers:
+			if a.Gen == gen && a.Done {
+				if a.Err != nil {
+					t.Fatal(a.Err)
+				}
+				return a
+			}
+		case <-time.After(60 * time.Second):
+			t.Fatal("no answer")
+		}
+	}
+}
+
+func TestEveryStudyEnds(t *testing.T) {
+	b, design := bench(t, "lift")
+	answers := make(chan study.Answer, 1000)
+	s := study.New(b, func(a study.Answer) { answers <- a })
+	defer s.Close()
+
+	s.Ask(study.Request{Gen: 1, Kind: study.Tradeoff, Design: design})
+	a := wait(t, answers, 1)
+	if len(a.Scaling) == 0 || len(a.Family) == 0 {
+		t.Error("a curve is missing")
+	}
+	for _, p := range a.Family { // nothing is quieter than the floor
+		if p.Design != nil && p.OverFloor() < 1-1e-9 {
+			t.Errorf("%g over the floor", p.OverFloor())
+		}
+	}
+	s.Ask(study.Request{Gen: 2, Kind: study.Tolerances, Design: design})
+	if a = wait(t, answers, 2); a.Envelope == nil || a.Envelope.Cases < 2 {
+		t.Errorf("got %+v", a.Envelope)
+	}
+	s.Ask(study.Request{Gen: 3, Kind: study.Fastest, Design: design})
+	if a = wait(t, answers, 3); a.Found == nil || !a.Found.Met {
+		t.Errorf("got %+v", a.Found)
+	}
+	s.Ask(study.Request{Gen: 4, Kind: study.Quietest, Design: design, SettleMax: 0.35})
+	if a = wait(t, answers, 4); a.Found == nil || !a.Found.Met {
+		t.Errorf("got %+v", a.Found)
+	}
+}
+
+func TestNoneStopsASearch(t *testing.T) {
+	b, design := bench(t, "balancer")
+	answers := make(chan study.Answer, 1000)
+	s := study.New(b, func(a study.Answer) { answers <- a })
+	s.Ask(study.Request{Gen: 1, Kind: study.Fastest, Design: design})
+	s.Ask(study.Request{Gen: 2, Kind: study.None})
+	s.Ask(study.Request{Gen: 3, Kind: study.Quietest, Design: design}) // without a settle time
+	for {
+		select {
+		case a := <-answers:
+			if a.Gen == 1 && a.Done {
+				t.Fatal("the search went on to its end")
+			}
+			if a.Gen == 3 {
+				if a.Err == nil {
+					t.Error("quietest without a settle time was taken")
+				}
+				s.Close()
+				return
+			}
+		case <-time.After(60 * time.Second):
+			t.Fatal("no answer")
+		}
+	}
+}
