@@ -351,7 +351,9 @@ func TestKilledWhileKeeping(t *testing.T) {
 		if got := int(imag(w.Poles[0])); got < last || got > last+1 {
 			t.Errorf("kill %d: found change %d after %d was kept", kill, got, last)
 		}
-	}	if t.Logf("%d of %d kills came after work was kept", kept, kills); kept == 0 {
+	}
+	t.Logf("%d of %d kills came after work was kept", kept, kills)
+	if kept == 0 {
 		t.Error("no kill came late enough to say anything")
 	}
 }
