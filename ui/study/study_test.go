@@ -5,43 +5,16 @@ import (
 	"time"
 
 	"polewright/estimator"
-	"polewright/plants"
-	"polewright/plants/library"
-	"polewright/scenarios"
-	"polewright/ui/aim"
 	"polewright/ui/desk"
+	"polewright/ui/desk/desktest"
 	"polewright/ui/study"
 )
 
 func bench(t *testing.T, name string) (*desk.Bench, *estimator.Design) {
 	t.Helper()
-	text, file, _ := library.Plant(name)
-	p, err := plants.Parse(file, text)
-	if err != nil {
-		t.Fatal(err)
-	}
-	f := library.Scenarios(name)[0]
-	s, err := scenarios.Parse(f.Name, f.Text, p)
-	if err != nil {
-		t.Fatal(err)
-	}
-	m, err := p.Model(plants.Options{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	d, err := estimator.NewDesigner(m, estimator.Options{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	list, err := aim.Start(m, d)
-	if err != nil {
-		t.Fatal(err)
-	}
-	design, err := d.Place(list, nil)
-	if err != nil {
-		t.Fatal(err)
-	}
-	return &desk.Bench{Plant: p, Model: m, Scenario: s}, design
+	b := desktest.Bench(t, name)
+	_, _, design := desktest.Start(t, b, estimator.Options{})
+	return b, design
 }
 
 // wait returns the last answer of a generation.

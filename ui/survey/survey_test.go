@@ -7,48 +7,15 @@ import (
 	"time"
 
 	"polewright/estimator"
-	"polewright/plants"
-	"polewright/plants/library"
-	"polewright/scenarios"
-	"polewright/ui/aim"
 	"polewright/ui/desk"
+	"polewright/ui/desk/desktest"
 	"polewright/ui/survey"
 )
-
-func bench(t testing.TB, name string) *desk.Bench {
-	t.Helper()
-	text, file, _ := library.Plant(name)
-	p, err := plants.Parse(file, text)
-	if err != nil {
-		t.Fatal(err)
-	}
-	f := library.Scenarios(name)[0]
-	s, err := scenarios.Parse(f.Name, f.Text, p)
-	if err != nil {
-		t.Fatal(err)
-	}
-	m, err := p.Model(plants.Options{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	return &desk.Bench{Plant: p, PlantText: text, Model: m, Scenario: s}
-}
 
 // request maps the first pair of the start design over the left half plane.
 func request(t testing.TB, b *desk.Bench, width, height int) (survey.Request, *estimator.Designer) {
 	t.Helper()
-	d, err := estimator.NewDesigner(b.Model, estimator.Options{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	list, err := aim.Start(b.Model, d)
-	if err != nil {
-		t.Fatal(err)
-	}
-	from, err := d.Place(list, nil)
-	if err != nil {
-		t.Fatal(err)
-	}
+	d, list, from := desktest.Start(t, b, estimator.Options{})
 	r := survey.Request{Gen: 1, Pair: true, Width: width, Height: height, From: from}
 	held := -1
 	for i, v := range list {
@@ -73,7 +40,7 @@ func request(t testing.TB, b *desk.Bench, width, height int) (survey.Request, *e
 
 // What the map promises is what landing there gives.
 func TestTheMapKeepsItsPromise(t *testing.T) {
-	b := bench(t, "lift")
+	b := desktest.Bench(t, "lift")
 	r, d := request(t, b, 12, 6)
 	answers := make(chan survey.Answer, 100)
 	s := survey.New(b, func(a survey.Answer) { answers <- a })
@@ -137,7 +104,7 @@ func TestTheMapKeepsItsPromise(t *testing.T) {
 }
 
 func TestNewestMapWins(t *testing.T) {
-	b := bench(t, "balancer")
+	b := desktest.Bench(t, "balancer")
 	r, _ := request(t, b, 40, 20)
 	answers := make(chan survey.Answer, 10000)
 	s := survey.New(b, func(a survey.Answer) { answers <- a })
@@ -165,7 +132,7 @@ func TestNewestMapWins(t *testing.T) {
 
 func TestNoGrid(t *testing.T) {
 	answers := make(chan survey.Answer, 1)
-	s := survey.New(bench(t, "lift"), func(a survey.Answer) { answers <- a })
+	s := survey.New(desktest.Bench(t, "lift"), func(a survey.Answer) { answers <- a })
 	defer s.Close()
 	s.Ask(survey.Request{Width: 3, Height: 2, Cells: make([]complex128, 5)})
 	if a := <-answers; a.Err == nil {
@@ -177,7 +144,7 @@ func TestNoGrid(t *testing.T) {
 func BenchmarkMap(b *testing.B) {
 	for _, name := range []string{"lift", "pan-drive", "balancer"} {
 		b.Run(name, func(b *testing.B) {
-			place := bench(b, name)
+			place := desktest.Bench(b, name)
 			r, _ := request(b, place, 60, 20)
 			done := make(chan struct{}, 1)
 			s := survey.New(place, func(a survey.Answer) {
