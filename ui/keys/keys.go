@@ -12,7 +12,7 @@ type Map struct {
 	Place, Pattern, Floor, Faster, Slower   key.Binding
 	Undo, Redo                              key.Binding
 	Plane, ZoomIn, ZoomOut, Fit             key.Binding
-	Form                                    key.Binding
+	Method, Form                            key.Binding
 	NextState, PreviousState, Trace         key.Binding
 	Keep, Recall, Compare, Readings         key.Binding
 	Save, Help, Leave, Quit, Suspend        key.Binding
@@ -51,6 +51,8 @@ func Default() Map {
 		Fit:      bind("0", "fit plane and traces to what there is", "0"),
 		Form:     bind("c", "prediction or current form (sampled estimators)", "c"),
 
+		Method: bind("m", "robust or least-noise gain (where several sensors leave a choice)", "m"),
+
 		NextState:     bind(".", "traces of the next state", "."),
 		PreviousState: bind(",", "traces of the previous state", ","),
 		Trace:         bind("e", "traces: truth and estimate, error, innovation", "e"),
@@ -88,7 +90,7 @@ type Group struct {
 func (m Map) Groups() []Group {
 	return []Group{
 		{"Hold and move", []key.Binding{m.Next, m.Previous, m.Left, m.Down, m.Up, m.Right, m.FarLeft, m.FarDown, m.FarUp, m.FarRight}},
-		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Undo, m.Redo, m.Form}},
+		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Undo, m.Redo, m.Form, m.Method}},
 		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.NextState, m.PreviousState, m.Trace, m.Readings}},
 		{"Candidates", []key.Binding{m.Keep, m.Recall, m.Compare}},
 		{"Session", []key.Binding{m.Save, m.Help, m.Leave, m.Quit, m.Suspend}},

@@ -58,6 +58,7 @@ func (m *Model) bindings() map[string]action {
 	plain(k.Undo, func(m *Model) tea.Cmd { return m.undo() })
 	plain(k.Redo, func(m *Model) tea.Cmd { return m.redo() })
 	plain(k.Form, func(m *Model) tea.Cmd { return m.toggleForm() })
+	plain(k.Method, func(m *Model) tea.Cmd { return m.toggleMethod() })
 	plain(k.Plane, func(m *Model) tea.Cmd { return m.togglePlane() })
 	plain(k.ZoomIn, func(m *Model) tea.Cmd { return m.zoom(-2) })
 	plain(k.ZoomOut, func(m *Model) tea.Cmd { return m.zoom(2) })
@@ -152,6 +153,21 @@ func (m *Model) toggleForm() tea.Cmd {
 	text := "current form: this step's sample counts for this step's estimate"
 	if m.now.form == estimator.Current {
 		next.form, text = estimator.Prediction, "prediction form: this step's sample counts for the next estimate"
+	}
+	m.say(text)
+	return m.change(next, "")
+}
+
+func (m *Model) toggleMethod() tea.Cmd {
+	if _, _, p := m.cfg.Work.Bench.Model.Dims(); p == 1 {
+		m.refuse("with one sensor the poles leave no choice of gain")
+		return nil
+	}
+	next := m.now
+	next.method, next.gain = estimator.LeastNoise, nil
+	text := "least-noise gain: of all gains with these poles, the one with the least noise"
+	if m.now.method == estimator.LeastNoise {
+		next.method, text = estimator.Robust, "robust gain: of all gains with these poles, the one with the best-conditioned eigenvectors"
 	}
 	m.say(text)
 	return m.change(next, "")

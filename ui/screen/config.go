@@ -31,10 +31,6 @@ type Config struct {
 	// file is no longer what this session read or wrote. It runs outside Update.
 	Save func(file string, w desk.Work, replace bool) error
 
-	// Journal keeps unsaved work against a crash; it is called when the hands
-	// rest, outside Update. Nil for none.
-	Journal func(w desk.Work)
-
 	// Resolve turns a pole list or a pattern, typed in a plane ("s" or "z"), into
 	// movable poles of the model's own plane. It runs inside Update: short.
 	Resolve func(text, plane string, form estimator.Form) ([]complex128, error)
@@ -85,6 +81,11 @@ func New(cfg Config) Model {
 	if n, _, _ := w.Bench.Model.Dims(); m.trace >= n {
 		m.trace = 0
 	}
+	for v, name := range viewNames {
+		if name == w.View.Focus {
+			m.open = view(v)
+		}
+	}
 	m.resize(cfg.Width, cfg.Height)
 	m.half = w.View.Zoom
 	m.fitPlane()
@@ -111,7 +112,7 @@ func (m Model) Work() desk.Work {
 	}
 	w.Candidates = append([]desk.Candidate(nil), m.candidates...)
 	w.Current = m.current
-	w.View = desk.View{Plane: string(byte(m.plane)), Zoom: m.half, Selected: m.now.held, Trace: m.trace}
+	w.View = desk.View{Plane: string(byte(m.plane)), Zoom: m.half, Selected: m.now.held, Trace: m.trace, Focus: viewNames[m.open]}
 	return w
 }
 

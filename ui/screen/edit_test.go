@@ -329,3 +329,41 @@ func TestTinyAndUnknownSizes(t *testing.T) {
 		t.Errorf("%d lines for an unknown size, expected 24", n)
 	}
 }
+
+func TestMethodNeedsAChoice(t *testing.T) {
+	r := start(t)
+	asked := len(r.asked)
+	r.press("m")
+	r.wantShown("no choice of gain")
+	if len(r.asked) != asked {
+		t.Error("asked for nothing new")
+	}
+	two := strings.Replace(hoist, "C = [[1, 0, 0]]", "C = [[1, 0, 0], [0, 0, 1]]", 1)
+	two = strings.Replace(two, "[process_noise]", "[[sensors]]\nname = \"load cell\"\nnoise_std = 0.1\n[process_noise]", 1)
+	r = start(t, func(c *screen.Config) { c.Work.Bench = bench(t, two) })
+	r.wantShown("robust gain")
+	r.press("m")
+	if q := r.last(); q.Method != estimator.LeastNoise || q.From != nil || q.Gain != nil {
+		t.Errorf("asked for %v", q)
+	}
+	r.press("u")
+	if r.last().Method != estimator.Robust {
+		t.Error("undo kept the method")
+	}
+}
+
+func TestWorkBringsTheScreenBack(t *testing.T) {
+	r := start(t)
+	r.press("tab", ".", "z", "+", "a", "left", "r")
+	w := r.work()
+	w.Bench = bench(t, hoist)
+	again := newRig(t, nil, func(c *screen.Config) { c.Work = w })
+	got := again.work()
+	if got.View != w.View || w.View.Focus != "readings" || w.View.Plane != "z" || w.View.Zoom == 0 || w.View.Selected != 1 || w.View.Trace != 1 {
+		t.Errorf("view %v, expected %v", got.View, w.View)
+	}
+	again.wantPoles(w.Poles...)
+	if len(got.Candidates) != 1 || again.m.(screen.Model).Unsaved() {
+		t.Error("candidates lost, or unsaved at once")
+	}
+}

@@ -54,6 +54,9 @@ const (
 	compareView
 )
 
+// viewNames are the views' names in a session file.
+var viewNames = [...]string{none: "", helpView: "help", readingsView: "readings", compareView: "candidates"}
+
 // Model is the root model. Update works on its own copy and returns it; slices
 // and maps in it are replaced, not written to, except the axes and canvases,
 // which only Update touches.
@@ -83,7 +86,6 @@ type Model struct {
 	quitAfterSave  bool
 	saving         bool
 	saveWanted     *saveOrder // until the figures of the design in hand are there
-	journalled     uint64
 	lastEdit       time.Time
 	resting        bool // a rest tick is on its way
 	pending        time.Time

@@ -6,6 +6,7 @@ import (
 
 	"polewright/estimator"
 	"polewright/ui/canvas"
+	"polewright/ui/measures"
 	"polewright/ui/plane"
 	"polewright/ui/plane/targets"
 	"polewright/ui/readings"
@@ -169,6 +170,9 @@ func (m *Model) header() string {
 			form = "current form"
 		}
 		kind = fmt.Sprintf("every %g s%s%s", T, g.Middle, form)
+	}
+	if _, _, p := bench.Model.Dims(); p > 1 {
+		kind += g.Middle + measures.MethodName(m.now.method) + " gain"
 	}
 	c.Text(x, 0, canvas.Cut(kind, room-x, g.Ellipsis), theme.Faint)
 	return c.Lines(m.theme, true)[0]

@@ -113,12 +113,7 @@ func (m *Model) restTick() tea.Cmd {
 	}
 	m.settleAxes()
 	m.dirty |= tracesRegion
-	if m.cfg.Journal == nil || m.journalled == m.revision {
-		return nil
-	}
-	m.journalled = m.revision
-	work, journal := m.Work(), m.cfg.Journal
-	return func() tea.Msg { journal(work); return nil }
+	return nil
 }
 
 func (m *Model) say(text string)    { m.message, m.trouble = text, false }

@@ -14,7 +14,7 @@ type Glyphs struct {
 	Estimate Line
 	Band     rune
 
-	Minus, PlusMinus, AtMost, AtLeast, Undefined, Middle, Times, Sigma, Arrows string
+	PlusMinus, AtMost, AtLeast, Undefined, Middle, Sigma, Arrows string
 }
 
 // Line is what a trace is drawn with.
@@ -27,18 +27,18 @@ var unicode = Glyphs{
 	Target: '○', Selected: '●', Fixed: '■', Plant: '×', Controller: '△', Floor: '◇',
 	Rule: '─', Vertical: '│', Cross: '┼', Dot: '·', Limit: '╌',
 	Left: '◂', Right: '▸', Up: '▴', Down: '▾', Cursor: '▏', Ellipsis: '…',
-	Truth:    Line{"─", "│", "╭", "╮", "╰", "╯", "╶", "╴", "───"},
-	Estimate: Line{"•", "•", "•", "•", "•", "•", "•", "•", "•••"},
-	Band:     '┄',
-	Minus:    "−", PlusMinus: "±", AtMost: "≤", AtLeast: "≥", Undefined: "–", Middle: " · ", Times: "×", Sigma: "σ", Arrows: "←↓↑→",
+	Truth:     Line{"─", "│", "╭", "╮", "╰", "╯", "╶", "╴", "───"},
+	Estimate:  Line{"•", "•", "•", "•", "•", "•", "•", "•", "•••"},
+	Band:      '┄',
+	PlusMinus: "±", AtMost: "≤", AtLeast: "≥", Undefined: "–", Middle: " · ", Sigma: "σ", Arrows: "←↓↑→",
 }
 
 var ascii = Glyphs{
 	Target: 'o', Selected: '@', Fixed: '#', Plant: 'x', Controller: '^', Floor: 'v',
 	Rule: '-', Vertical: '|', Cross: '+', Dot: '.', Limit: '=',
 	Left: '<', Right: '>', Up: '^', Down: 'v', Cursor: '_', Ellipsis: '~',
-	Truth:    Line{"-", "|", ".", ".", "'", "'", "-", "-", "---"},
-	Estimate: Line{"*", "*", "*", "*", "*", "*", "*", "*", "***"},
-	Band:     '~',
-	Minus:    "-", PlusMinus: "+-", AtMost: "<=", AtLeast: ">=", Undefined: "-", Middle: ", ", Times: "x", Sigma: "sigma", Arrows: "hjkl",
+	Truth:     Line{"-", "|", ".", ".", "'", "'", "-", "-", "---"},
+	Estimate:  Line{"*", "*", "*", "*", "*", "*", "*", "*", "***"},
+	Band:      '~',
+	PlusMinus: "+-", AtMost: "<=", AtLeast: ">=", Undefined: "-", Middle: ", ", Sigma: "sigma", Arrows: "hjkl",
 }
