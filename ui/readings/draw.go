@@ -21,17 +21,18 @@ func Draw(c *canvas.Canvas, x, y, w, h int, f Facts, t *theme.Theme) {
 		gap = 1
 	}
 	at, end := y, y+h-1
-	hidden := false
+	hidden, unseen := false, false // unseen: limits
 	for k, s := range sections {
 		if at >= end-1 {
 			hidden = true
-			break
+			unseen = unseen || s.Title == limitsTitle
+			continue
 		}
 		title(c, x, at, w, s, f.Late, g)
 		at++
 		for _, r := range s.Rows {
 			if at >= end {
-				hidden = true
+				hidden, unseen = true, unseen || s.Title == limitsTitle
 				break
 			}
 			drawRow(c, x, at, w, r, rowInk(s, f.Late, k == 0 && r.Label == string(byte(f.Plane))), s.Figures && f.Late, g)
@@ -39,15 +40,23 @@ func Draw(c *canvas.Canvas, x, y, w, h int, f Facts, t *theme.Theme) {
 		}
 		at += gap
 	}
-	more(c, x+w, y+h-1, f, hidden)
+	more(c, x+w, y+h-1, f, hidden, unseen)
 }
 
 // more says on the last row what the view of all readings has.
-func more(c *canvas.Canvas, right, y int, f Facts, hidden bool) {
+func more(c *canvas.Canvas, right, y int, f Facts, hidden, unseenLimits bool) {
 	if f.Design == nil {
 		return
 	}
+	broken := 0
+	for _, l := range f.Limits {
+		if !l.Met {
+			broken++
+		}
+	}
 	switch n := len(f.Design.Warnings); {
+	case unseenLimits && broken > 0:
+		c.Right(right, y, fmt.Sprintf("%d of %d limits broken, r", broken, len(f.Limits)), theme.Trouble)
 	case n > 0:
 		c.Right(right, y, fmt.Sprintf("%d warning%s, r shows all", n, plural(n)), theme.Trouble)
 	case hidden:
@@ -71,7 +80,7 @@ func title(c *canvas.Canvas, x, y, w int, s Section, late bool, g *theme.Glyphs)
 		return
 	}
 	ink := theme.Faint
-	if s.Title == "limits" && s.Note != "all met" && !late || s.Note == "unstable" || s.Note == "undefined: unstable" {
+	if s.Title == limitsTitle && s.Note != "all met" && !late || s.Note == "unstable" || s.Note == "undefined: unstable" {
 		ink = theme.Trouble
 	}
 	note := canvas.Cut(s.Note, w-(end-x)-1, g.Ellipsis)

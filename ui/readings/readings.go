@@ -231,8 +231,10 @@ var limitWords = map[string]struct {
 	"phase_margin_deg": {"phase margin", "deg", true}, "delay_margin_s": {"delay margin", "s", true},
 }
 
+const limitsTitle = "limits"
+
 func limits(f Facts, g *theme.Glyphs) Section {
-	s := Section{Title: "limits", Figures: true}
+	s := Section{Title: limitsTitle, Figures: true}
 	over := 0
 	for _, l := range f.Limits {
 		words, ok := limitWords[l.Name]
