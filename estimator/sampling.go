@@ -26,6 +26,16 @@ const (
 	Gone
 )
 
+func (v Verdict) String() string {
+	switch v {
+	case Told:
+		return "told apart"
+	case Faint:
+		return "faint"
+	}
+	return "gone"
+}
+
 // Fold is a set of modes of a continuous plant that sampling maps onto each other,
 // or nearly so. Kalman, Ho and Narendra, "Controllability of linear dynamical
 // systems", Contributions to Differential Equations 1 (1963), call a period

@@ -9,8 +9,12 @@ import (
 	"polewright/plants"
 )
 
-// listed is how many unstable or failed cases are listed.
-const listed = 10
+const (
+	// listed is how many unstable or failed cases are listed.
+	listed = 10
+	// rounding is the bias, over the state's scale, that is rounding alone.
+	rounding = 1e-12
+)
 
 // Envelope is what a study found.
 type Envelope struct {
@@ -78,7 +82,8 @@ type Measure struct {
 	// Case gave Worst.
 	Case Case
 
-	of func(*estimator.Mismatch) float64
+	about string // the state of Noise
+	of    func(*estimator.Mismatch) float64
 }
 
 // Stress returns the case to try the design on: that of the stability measure
@@ -137,6 +142,7 @@ func (s Study) measures(m *estimator.Model) []Measure {
 	for i, state := range names {
 		add(func(q *Measure) {
 			q.Figure, q.State, q.Name, q.Unit = Noise, i, "noise of "+state.name, state.unit
+			q.about = state.name
 			q.of = func(r *estimator.Mismatch) float64 {
 				if r.Std == nil {
 					return math.NaN()
@@ -157,7 +163,11 @@ func (s Study) measures(m *estimator.Model) []Measure {
 					if r.Bias == nil {
 						return math.NaN()
 					}
-					return math.Abs(r.Bias.At(i, j)) * u.Scale
+					v := math.Abs(r.Bias.At(i, j)) * u.Scale
+					if v <= rounding*state.scale {
+						return 0
+					}
+					return v
 				}
 			})
 		}
@@ -195,6 +205,7 @@ var margins = []struct {
 // state is a state of the design model that is no unknown.
 type state struct {
 	name, unit string
+	scale      float64
 	register   bool // of a lag or a delay: it repeats a signal
 }
 
@@ -205,7 +216,10 @@ func (s Study) states(m *estimator.Model) []state {
 		if role == estimator.UnknownState {
 			continue
 		}
-		q := state{name: name, register: role != estimator.PlantState}
+		q := state{name: name, scale: 1, register: role != estimator.PlantState}
+		if m.StateScale != nil {
+			q.scale = m.StateScale[i]
+		}
 		if i < len(s.Plant.States) {
 			q.unit = s.Plant.States[i].Unit
 		}

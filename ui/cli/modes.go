@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strings"
 	"text/tabwriter"
 
@@ -28,6 +29,22 @@ type modesDocument struct {
 	StateNames    []string               `json:"state_names"`
 	Observability measures.Observability `json:"observability"`
 	Subsets       []subset               `json:"subsets"`
+	// Sampling lists the modes that the sample period folds together; null where
+	// the plant is not continuous, or not sampled.
+	Sampling     []fold `json:"sampling"`
+	SamplingNote string `json:"sampling_note,omitempty"` // why it could not be judged
+}
+
+// fold is modes of the continuous plant that sampling maps onto each other.
+type fold struct {
+	Modes   []measures.Complex `json:"modes"`   // s-plane
+	Sampled measures.Complex   `json:"sampled"` // z-plane
+	Period  measures.Number    `json:"period_s"`
+	Verdict string             `json:"verdict"` // told apart, faint or gone
+	// Visible is what is left of how well the sensors see the modes, 1 being all.
+	Visible measures.Number `json:"visible"`
+	Better  measures.Number `json:"better_period_s"`
+	Text    string          `json:"text"`
 }
 
 // maxSubsetSensors bounds the number of sensors for which every subset is judged.
@@ -42,7 +59,8 @@ func newModes() *cobra.Command {
 		Long: `For every eigenvalue of the plant, print how well the sensors see it (the smallest
 singular value of [A − λI; C] in scaled coordinates) and whether an estimator can
 move it at all; then the same for every smaller set of sensors, to see what is
-lost with each.`,
+lost with each. For a continuous plant with a sample period, modes are named that
+sampling maps onto each other, so that the sensors no longer tell them apart.`,
 		Args: cobra.ExactArgs(1),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			src, err := loadPlant(args[0])
@@ -79,6 +97,7 @@ func examineModes(src *source, o plants.Options) (*modesDocument, *estimator.Obs
 	}
 	seen := &d.Analysis().Observability
 	doc := &modesDocument{Format: 1, Plant: src.plant.Name, StateNames: model.StateNames, Observability: measures.Observe(seen)}
+	doc.Sampling, doc.SamplingNote = examineSampling(src.plant, model.Period)
 	enabled := src.plant.Enabled()
 	for _, set := range subsets(enabled) {
 		o.Sensors = set
@@ -98,6 +117,40 @@ func examineModes(src *source, o plants.Options) (*modesDocument, *estimator.Obs
 		doc.Subsets = append(doc.Subsets, s)
 	}
 	return doc, seen, nil
+}
+
+// examineSampling names what a sample period hides of a continuous plant. Delays in
+// samples have no continuous counterpart and are left out; they hide nothing.
+func examineSampling(p *plants.Plant, period float64) (list []fold, note string) {
+	if !p.Continuous || period == 0 {
+		return nil, ""
+	}
+	bare := *p
+	bare.Inputs, bare.Sensors = slices.Clone(p.Inputs), slices.Clone(p.Sensors)
+	for i := range bare.Inputs {
+		bare.Inputs[i].DelaySamples = 0
+	}
+	for i := range bare.Sensors {
+		bare.Sensors[i].DelaySamples = 0
+	}
+	var folds []estimator.Fold
+	m, err := bare.Model(plants.Options{Period: new(float64)})
+	if err == nil {
+		folds, err = estimator.Folds(m, period)
+	}
+	if err != nil {
+		return nil, oneLine(err)
+	}
+	list = []fold{}
+	for _, f := range folds {
+		entry := fold{Sampled: measures.Complex{real(f.Sampled), imag(f.Sampled)}, Period: measures.Number(f.Period),
+			Verdict: f.Verdict.String(), Visible: measures.Number(f.Sigma), Better: measures.Number(f.Better), Text: f.String()}
+		for _, v := range f.Modes {
+			entry.Modes = append(entry.Modes, measures.Complex{real(v), imag(v)})
+		}
+		list = append(list, entry)
+	}
+	return list, ""
 }
 
 // subsets lists every non-empty set of the enabled sensors, larger sets first
@@ -148,6 +201,15 @@ func printModes(w io.Writer, doc *modesDocument, seen *estimator.Observability) 
 			fixed = append(fixed, shown(complex(f[0], f[1]), "", 0))
 		}
 		fmt.Fprintf(tw, "%s\t%d\t%.3g\t%s\n", strings.Join(s.Sensors, " + "), s.Rank, float64(s.Weakest), strings.Join(fixed, ", "))
+	}
+	if len(doc.Sampling) > 0 || doc.SamplingNote != "" {
+		fmt.Fprintf(tw, "\nsampling\n")
+	}
+	for _, f := range doc.Sampling {
+		fmt.Fprintf(tw, "%s\n", f.Text)
+	}
+	if doc.SamplingNote != "" {
+		fmt.Fprintf(tw, "not judged: %s\n", doc.SamplingNote)
 	}
 	return tw.Flush()
 }
