@@ -19,7 +19,10 @@ func TestStories(t *testing.T) {
 	testscript.Run(t, testscript.Params{
 		Dir:                 "testdata/script",
 		RequireExplicitExec: true,
-		Cmds:                map[string]func(*testscript.TestScript, bool, []string){"status": status, "saved": savedCmd, "change": changeCmd},
+		Cmds: map[string]func(*testscript.TestScript, bool, []string){
+			"status": status, "saved": savedCmd, "change": changeCmd,
+			"blob": blobCmd, "longline": longLineCmd, "leftovers": leftoversCmd, "provenance": provenanceCmd,
+		},
 	})
 }
 
