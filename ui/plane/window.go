@@ -28,6 +28,9 @@ func Fit(points []complex128, plane targets.Plane, period float64, w, h int) Win
 		if plane == targets.Z && math.Hypot(real(p), imag(p)) > 3 {
 			continue // one far pole must not squeeze the unit circle
 		}
+		if plane == targets.S && period > 0 && math.Abs(real(p)) > 1.2*math.Pi/period {
+			continue // nor one that is gone within a sample, all the others
+		}
 		left, right, up = min(left, real(p)), max(right, real(p)), max(up, math.Abs(imag(p)))
 	}
 	if plane == targets.Z {

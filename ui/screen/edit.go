@@ -38,10 +38,7 @@ func (m *Model) repeated(name string) bool {
 // of a key goes on with the same step of undo while that key is held.
 func (m *Model) change(next state, held string) tea.Cmd {
 	if !m.repeated(held) {
-		m.past = append(m.past[:len(m.past):len(m.past)], m.now)
-		if k := len(m.past) - 1 - runsKept; k >= 0 {
-			m.past[k].run, m.past[k].traced = nil, false
-		}
+		m.past = m.past.push(m.now)
 	}
 	m.future = nil
 	next.design, next.run, next.limits, next.traced = nil, nil, nil, false
@@ -174,24 +171,22 @@ func (m *Model) snapToFloor() tea.Cmd {
 }
 
 func (m *Model) undo() tea.Cmd {
-	if len(m.past) == 0 {
+	if m.past == nil {
 		m.refuse("nothing to undo")
 		return nil
 	}
-	last := len(m.past) - 1
-	m.future = append(m.future[:len(m.future):len(m.future)], m.now)
-	m.now, m.past = m.past[last], m.past[:last]
+	m.future = m.future.push(m.now)
+	m.now, m.past = m.past.state, m.past.next
 	return m.restore()
 }
 
 func (m *Model) redo() tea.Cmd {
-	if len(m.future) == 0 {
+	if m.future == nil {
 		m.refuse("nothing to redo")
 		return nil
 	}
-	last := len(m.future) - 1
-	m.past = append(m.past[:len(m.past):len(m.past)], m.now)
-	m.now, m.future = m.future[last], m.future[:last]
+	m.past = m.past.push(m.now)
+	m.now, m.future = m.future.state, m.future.next
 	return m.restore()
 }
 

@@ -367,3 +367,25 @@ func TestWorkBringsTheScreenBack(t *testing.T) {
 		t.Error("candidates lost, or unsaved at once")
 	}
 }
+
+func TestUndoHasNoEnd(t *testing.T) {
+	r := start(t)
+	for i := range 300 {
+		r.press([]string{"left", "up", "right"}[i%3])
+		r.reply(desk.Traced)
+	}
+	for range 300 {
+		r.press("u")
+	}
+	r.wantPoles(z(-8+6i), z(-8-6i), z(-12))
+	r.press("u")
+	r.wantShown("nothing to undo")
+	for range 300 {
+		r.press("U")
+	}
+	r.press("U")
+	r.wantShown("nothing to redo")
+	if near(r.work().Poles[0], z(-8+6i)) {
+		t.Error("redo did not come back")
+	}
+}

@@ -38,6 +38,26 @@ type state struct {
 // large part of a state: an older one is run again when it is gone back to.
 const runsKept = 20
 
+// step is a state and those behind it. Steps are shared between the models of
+// before and after a key, so they are not changed but for giving up a run.
+type step struct {
+	state
+	next *step
+}
+
+// push puts a state on top. It costs the same however many there are.
+func (s *step) push(top state) *step {
+	deep := &step{state: top, next: s}
+	old := deep
+	for i := 0; old != nil && i < runsKept; i++ {
+		old = old.next
+	}
+	if old != nil {
+		old.run, old.traced = nil, false
+	}
+	return deep
+}
+
 // axisKey names a trace whose axis is kept.
 type axisKey struct {
 	mode  traces.Mode
@@ -68,7 +88,7 @@ type Model struct {
 
 	// the design
 	now            state
-	past, future   []state
+	past, future   *step
 	fixed          []targets.Target
 	analysis       *estimator.Analysis
 	controller     []complex128 // poles of the loop that are not the estimator's
