@@ -27,6 +27,10 @@ const keepAfter = 300 * time.Millisecond
 type keeper struct {
 	journal *journal.Journal // nil where there is none
 	mark    func() session.Mark
+	// recovered work is in the journal from the start, and unsaved until saved says
+	// otherwise.
+	recovered bool
+	saved     func() bool
 
 	mu      sync.Mutex
 	latest  screen.Model
@@ -66,9 +70,9 @@ func (k *keeper) see(m screen.Model) tea.Cmd {
 	if k.journal == nil {
 		return nil
 	}
-	if !m.Unsaved() {
-		if k.last != nil {
-			k.last = nil
+	if !k.unsaved() {
+		if k.last != nil || k.recovered {
+			k.last, k.recovered = nil, false
 			k.journal.Saved()
 		}
 		return nil
@@ -80,6 +84,9 @@ func (k *keeper) see(m screen.Model) tea.Cmd {
 	return tea.Tick(keepAfter, func(time.Time) tea.Msg { return keepMsg{} })
 }
 
+// unsaved reports whether something would be lost.
+func (k *keeper) unsaved() bool { return k.latest.Unsaved() || k.recovered && !k.saved() }
+
 func (k *keeper) tick() {
 	k.mu.Lock()
 	defer k.mu.Unlock()
@@ -89,7 +96,7 @@ func (k *keeper) tick() {
 
 // keep hands unsaved work to the journal where it changed.
 func (k *keeper) keep() {
-	if k.journal == nil || !k.latest.Unsaved() {
+	if k.journal == nil || !k.unsaved() {
 		return
 	}
 	w := k.latest.Work()
@@ -134,8 +141,8 @@ func (k *keeper) guard(program *tea.Program) (stop func()) {
 	}
 }
 
-// finish decides what becomes of the journal when the screen is gone. quit tells
-// that the person left, so that what is unsaved was given up.
+// finish decides what becomes of the journal when the screen is gone, and says what
+// ended it where that was not the person, who gives up what is unsaved.
 func (k *keeper) finish(runErr error) error {
 	k.mu.Lock()
 	defer k.mu.Unlock()
@@ -143,7 +150,8 @@ func (k *keeper) finish(runErr error) error {
 		if k.journal == nil {
 			return nil
 		}
-		return k.journal.Close(false)
+		// the screen asks about what was changed, not about what was recovered
+		return k.journal.Close(k.unsaved() && !k.latest.Unsaved())
 	}
 	why := "ended"
 	switch {
@@ -156,7 +164,7 @@ func (k *keeper) finish(runErr error) error {
 	case runErr != nil:
 		why = "the terminal failed: " + runErr.Error()
 	}
-	if !k.latest.Unsaved() {
+	if !k.unsaved() {
 		if k.journal != nil {
 			_ = k.journal.Close(false)
 		}

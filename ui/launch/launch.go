@@ -45,7 +45,7 @@ func Run(ctx context.Context, o Options) (saved string, err error) {
 	}
 	keeper, message := &keeper{}, ""
 	if left != nil {
-		o.Work, o.Known, keeper.journal = *left.work, left.sum, left.journal
+		o.Work, o.Known, keeper.journal, keeper.recovered = *left.work, left.sum, left.journal, true
 		message = "recovered; not saved yet"
 	} else if keeper.journal, err = journal.Open(journal.Folder(), o.Program); err != nil {
 		message = "unsaved work cannot be kept against a crash: " + err.Error()
@@ -54,7 +54,7 @@ func Run(ctx context.Context, o Options) (saved string, err error) {
 	if err != nil {
 		return "", err
 	}
-	keeper.mark = store.mark
+	keeper.mark, keeper.saved = store.mark, func() bool { return store.where() != "" }
 	err = keeper.finish(show(ctx, &o, keeper, store, message))
 	return store.where(), err
 }
