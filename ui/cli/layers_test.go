@@ -30,6 +30,7 @@ var layers = []struct {
 	{folder: "ui/session", never: []string{"github.com/charmbracelet/"}},
 	{folder: "ui/solver", never: []string{"github.com/charmbracelet/"}},
 	{folder: "ui/aim", never: []string{"github.com/charmbracelet/"}},
+	{folder: "ui/report", never: []string{"github.com/charmbracelet/"}},
 	{folder: "ui/verify", never: []string{"github.com/charmbracelet/"}},
 }
 

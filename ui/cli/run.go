@@ -94,7 +94,7 @@ the others. With a session file it goes on where you left off.
 	}
 	open.register(root)
 	root.SetVersionTemplate("polewright {{.Version}}\n")
-	root.AddCommand(newDesign(), newModes(), newSimulate(), newStress(), newVerify(), newReplay(), newEmit(), newLibrary())
+	root.AddCommand(newDesign(), newModes(), newSimulate(), newStress(), newVerify(), newReplay(), newEmit(), newReport(), newLibrary())
 	return root
 }
 
