@@ -63,7 +63,7 @@ type Fold struct {
 }
 
 func (f Fold) String() string {
-	names := make([]string, 0, len(f.Modes))
+	names, more := make([]string, 0, len(f.Modes)), 0
 	for _, v := range f.Modes {
 		if imag(v) < 0 && slices.Contains(f.Modes, cmplx.Conj(v)) {
 			continue // its partner stands for both
@@ -72,7 +72,14 @@ func (f Fold) String() string {
 		if imag(v) > 0 && slices.Contains(f.Modes, cmplx.Conj(v)) {
 			name = strings.Replace(name, "+", "±", 1)
 		}
+		if len(names) == namedModes {
+			more++
+			continue
+		}
 		names = append(names, name)
+	}
+	if more > 0 {
+		names = append(names, fmt.Sprintf("%d more", more))
 	}
 	how := "onto each other"
 	if f.Gap > exactFold {
@@ -102,10 +109,11 @@ func sixDigits(v float64) float64 {
 }
 
 const (
-	exactFold = 1e-7 // relative gap that rounding explains
-	nearFold  = 0.1  // relative gap below which a fold is looked at
-	clearFold = 0.3  // gap that a better period keeps
-	faint     = 0.1  // part of a mode's visibility that is too little
+	exactFold  = 1e-7 // relative gap that rounding explains
+	nearFold   = 0.1  // relative gap below which a fold is looked at
+	clearFold  = 0.3  // gap that a better period keeps
+	faint      = 0.1  // part of a mode's visibility that is too little
+	namedModes = 4    // that a sentence names
 )
 
 // ErrSampling reports a plant whose sampling cannot be judged.
@@ -265,27 +273,36 @@ func visibility(ad, c *mat.Dense, lambda complex128, period float64) (float64, e
 	return values[len(values)-1], nil
 }
 
-// groups joins the modes that sampling turns onto each other; of two conjugate
-// groups one stands for both.
+// groups joins the modes that sampling turns onto each other, the closest first, so
+// that all of a group lie close together; of two conjugate groups one stands for both.
 func (s *folding) groups(period float64) [][]int {
-	n := len(s.seen)
-	root := all(n)
-	find := func(i int) int {
-		for root[i] != i {
-			i = root[i]
-		}
-		return i
+	type meeting struct {
+		i, j int
+		gap  float64
 	}
-	for i := range n {
+	var list []meeting
+	for i := range s.seen {
 		for j := range i {
 			if d, turned := gap(s.seen[i].Eigenvalue, s.seen[j].Eigenvalue, period); turned && d < nearFold {
-				root[find(i)] = find(j)
+				list = append(list, meeting{i, j, d})
 			}
 		}
 	}
-	members := make([][]int, n)
-	for i := range n {
-		members[find(i)] = append(members[find(i)], i)
+	slices.SortStableFunc(list, func(a, b meeting) int { return cmp.Compare(a.gap, b.gap) })
+	members := make([][]int, len(s.seen)) // by the group's first mode
+	at := all(len(s.seen))                // the first mode of each mode's group
+	for i := range members {
+		members[i] = []int{i}
+	}
+	for _, m := range list {
+		into, from := at[m.i], at[m.j]
+		if into == from || !s.close(members[into], members[from], period) {
+			continue
+		}
+		for _, k := range members[from] {
+			at[k] = into
+		}
+		members[into], members[from] = append(members[into], members[from]...), nil
 	}
 	var out [][]int
 	for _, group := range members {
@@ -294,6 +311,18 @@ func (s *folding) groups(period float64) [][]int {
 		}
 	}
 	return out
+}
+
+// close tells whether every mode of a group is sampled close to all of another.
+func (s *folding) close(a, b []int, period float64) bool {
+	for _, i := range a {
+		for _, j := range b {
+			if d, _ := gap(s.seen[i].Eigenvalue, s.seen[j].Eigenvalue, period); d >= nearFold {
+				return false
+			}
+		}
+	}
+	return true
 }
 
 // angle is where a group's sampled poles lie, by their mean direction, in rad: from

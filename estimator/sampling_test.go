@@ -224,3 +224,41 @@ func TestBadSampling(t *testing.T) {
 		t.Errorf("a plant that outgrows the numbers: %v", err)
 	}
 }
+
+// Whatever the numbers, there is an answer or an error.
+func TestFoldsOfWildPlants(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := wildModel(t)
+		m.Period = 0
+		period := math.Pow(10, rapid.Float64Range(-9, 9).Draw(t, "period"))
+		list, err := estimator.Folds(m, period)
+		if err != nil {
+			return
+		}
+		for _, f := range list {
+			if len(f.Modes) < 2 || math.IsNaN(f.Sigma) || math.IsNaN(f.Gap) || f.Better <= 0 || f.String() == "" {
+				t.Errorf("%+v", f)
+			}
+		}
+	})
+}
+
+// wildModel is of any scale, and may be singular, unobservable or unstable.
+func wildModel(t *rapid.T) *estimator.Model {
+	n := rapid.IntRange(1, 5).Draw(t, "n")
+	p := rapid.IntRange(1, 2).Draw(t, "p")
+	number := rapid.Custom(func(t *rapid.T) float64 {
+		v := math.Pow(10, rapid.Float64Range(-12, 12).Draw(t, "size"))
+		return v * float64(rapid.IntRange(-1, 1).Draw(t, "sign"))
+	})
+	fill := func(r, c int) *mat.Dense {
+		out := mat.NewDense(r, c, nil)
+		for i := range r {
+			for j := range c {
+				out.Set(i, j, number.Draw(t, "entry"))
+			}
+		}
+		return out
+	}
+	return &estimator.Model{A: fill(n, n), B: fill(n, 1), C: fill(p, n), K: fill(1, n), Q: unit(n), R: unit(p)}
+}

@@ -356,3 +356,35 @@ func TestBadWordStudies(t *testing.T) {
 		t.Errorf("a limit beyond float64: %v, %v", w, err)
 	}
 }
+
+// Whatever the numbers, there is an answer or an error.
+func TestWordsOfWildDesigns(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		m := wildModel(t)
+		m.Period = 0.1
+		d, err := estimator.NewDesigner(m, estimator.Options{})
+		if err != nil {
+			return
+		}
+		n, _, p := m.Dims()
+		l := mat.NewDense(n, p, nil)
+		l.Apply(func(_, _ int, _ float64) float64 { return math.Pow(10, rapid.Float64Range(-9, 9).Draw(t, "L")) }, l)
+		got, err := d.Judge(estimator.Given{L: l})
+		if err != nil {
+			return
+		}
+		o := estimator.WordOptions{Bits: rapid.IntRange(8, 64).Draw(t, "bits"), Common: rapid.Bool().Draw(t, "common")}
+		w, err := estimator.RoundWords(m, got, o)
+		if err != nil {
+			return
+		}
+		for _, q := range []estimator.Point{w.A, w.B, w.C, w.Gain, w.States[0].Point} {
+			if q.Bits() != o.Bits {
+				t.Errorf("%v in a word of %d bits", q, o.Bits)
+			}
+		}
+		if s := w.Poles[w.Worst].Relative; math.IsNaN(s) || w.Stable && math.IsNaN(w.Settle) && w.Poles[w.Worst].Distance == 0 {
+			t.Errorf("%+v", w)
+		}
+	})
+}

@@ -140,6 +140,9 @@ func (s Study) measures(m *estimator.Model) []Measure {
 	})
 	names := s.states(m)
 	for i, state := range names {
+		if state.carried {
+			continue
+		}
 		add(func(q *Measure) {
 			q.Figure, q.State, q.Name, q.Unit = Noise, i, "noise of "+state.name, state.unit
 			q.about = state.name
@@ -153,7 +156,7 @@ func (s Study) measures(m *estimator.Model) []Measure {
 	}
 	for j, u := range s.Plant.Inputs {
 		for i, state := range names {
-			if state.register {
+			if state.carried {
 				continue
 			}
 			add(func(q *Measure) {
@@ -206,7 +209,7 @@ var margins = []struct {
 type state struct {
 	name, unit string
 	scale      float64
-	register   bool // of a lag or a delay: it repeats a signal
+	carried    bool // by a lag or a delay: it repeats another signal
 }
 
 func (s Study) states(m *estimator.Model) []state {
@@ -216,7 +219,7 @@ func (s Study) states(m *estimator.Model) []state {
 		if role == estimator.UnknownState {
 			continue
 		}
-		q := state{name: name, scale: 1, register: role != estimator.PlantState}
+		q := state{name: name, scale: 1, carried: role != estimator.PlantState}
 		if m.StateScale != nil {
 			q.scale = m.StateScale[i]
 		}

@@ -413,3 +413,39 @@ func TestBadStudies(t *testing.T) {
 		t.Errorf("current form in continuous time: %v", err)
 	}
 }
+
+// The worst figures are held against the limits; an unstable case meets none.
+func TestLimitsHoldAtWorst(t *testing.T) {
+	s := study(t, builtIn(t, "lift"))
+	e := run(t, s)
+	phase, speed := find(t, e, tolerance.PhaseMargin), e.Measures[2]
+	limits := func(margin, noise float64) *scenarios.Limits {
+		return &scenarios.Limits{PhaseMargin: &margin, Std: []scenarios.NamedLimit{{Name: "climb speed", Limit: noise}, {Name: "no state", Limit: 1}}}
+	}
+	for _, c := range []struct {
+		margin, noise float64
+		met           []bool
+	}{
+		{phase.Worst, speed.Worst, []bool{true, true}},
+		{phase.Nominal, speed.Worst, []bool{false, true}},
+		{phase.Worst - 1, speed.Nominal, []bool{true, false}},
+	} {
+		got := e.Judge(limits(c.margin, c.noise))
+		if len(got) != 2 || got[0].Name != "phase_margin_deg" || got[1].Name != "std climb speed" {
+			t.Fatalf("%+v", got)
+		}
+		for i, l := range got {
+			if l.Met != c.met[i] {
+				t.Errorf("%+v, expected met %v", l, c.met[i])
+			}
+		}
+	}
+	if e.Judge(nil) != nil {
+		t.Error("limits out of nothing")
+	}
+	e = run(t, study(t, falling, -2))
+	none := 0.0
+	if got := e.Judge(&scenarios.Limits{PhaseMargin: &none}); len(got) != 1 || got[0].Met || !math.IsNaN(got[0].Value) {
+		t.Errorf("with unstable cases: %+v", got)
+	}
+}
