@@ -13,12 +13,14 @@ import (
 
 // talk is the line dialogue in place of the screen. A script's input ends where it
 // ends: what it did not save is lost, and the exit status says so.
-func talk(cmd *cobra.Command, w *desk.Work) error {
+func talk(cmd *cobra.Command, w *desk.Work, known session.Sum) error {
+	save, err := launch.Saver("polewright "+Version, *w, known)
+	if err != nil {
+		return err
+	}
 	c := lines.Config{
-		Work: *w,
-		Save: func(file string, w desk.Work, replace bool) error {
-			return session.Save(file, "polewright "+Version, &w, replace)
-		},
+		Work:    *w,
+		Save:    save,
 		Resolve: aim.Resolver(w.Bench.Model),
 		In:      cmd.InOrStdin(),
 		Out:     cmd.OutOrStdout(),

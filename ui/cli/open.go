@@ -95,7 +95,7 @@ func openScreen(cmd *cobra.Command, o screenOptions, args []string) error {
 		return err
 	}
 	if o.lines || os.Getenv("TERM") == "dumb" {
-		return talk(cmd, w)
+		return talk(cmd, w, known)
 	}
 	in, out, ok := launch.IsTerminal(cmd.InOrStdin(), cmd.OutOrStdout())
 	if !ok {

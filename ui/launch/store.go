@@ -30,9 +30,22 @@ type content struct {
 	sum  session.Sum
 }
 
+// Saver returns what saves the work of a dialogue: a file that is not its own, and
+// one that someone else changed since it was read or saved, is refused with an error
+// that is fs.ErrExist, unless replace says so. known stands for the content of the
+// session file that the work was read from.
+func Saver(program string, w desk.Work, known session.Sum) (func(file string, w desk.Work, replace bool) error, error) {
+	s, err := newStore(&Options{Program: program, Work: w, Known: known})
+	if err != nil {
+		return nil, err
+	}
+	return s.save, nil
+}
+
 // save writes a session file. A file that is not this session's own, and one that
-// someone else changed meanwhile, is refused with an error that is fs.ErrExist;
-// with replace, the very content that was refused before is replaced.
+// someone else changed meanwhile, is refused with an error that is fs.ErrExist.
+// With replace, the very content that was refused before is replaced; the session's
+// own file never without having been refused.
 func (s *store) save(file string, w desk.Work, replace bool) error {
 	data, err := session.Encode(s.program, &w)
 	if err != nil {
@@ -62,8 +75,12 @@ func (s *store) write(path string, data []byte, replace bool) error {
 	} else {
 		err = session.WriteNew(path, data, false)
 	}
-	if replace && path == s.asked.path && errors.Is(err, fs.ErrExist) {
+	switch {
+	case !replace || !errors.Is(err, fs.ErrExist):
+	case path == s.asked.path:
 		err = session.Replace(path, data, s.asked.sum)
+	case path != s.own.path: // named outright, without having been refused
+		err = session.WriteNew(path, data, true)
 	}
 	if errors.Is(err, fs.ErrExist) {
 		s.asked = content{path: path}

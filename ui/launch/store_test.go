@@ -144,6 +144,13 @@ func TestStoreRefusesStrangers(t *testing.T) {
 	if err := s.save(file, work(t, 1), true); err != nil {
 		t.Error(err)
 	}
+	other := filepath.Join(filepath.Dir(file), "other.json")
+	if err := os.WriteFile(other, []byte("more notes"), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	if err := s.save(other, work(t, 1), true); err != nil { // named outright
+		t.Error(err)
+	}
 }
 
 // What cannot be saved is said in words, and saved elsewhere.

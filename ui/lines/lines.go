@@ -19,8 +19,11 @@ import (
 
 // Config is what the dialogue needs from outside.
 type Config struct {
-	Work    desk.Work
-	Answer  func(desk.Request) desk.Answer
+	Work   desk.Work
+	Answer func(desk.Request) desk.Answer
+	// Save writes a session file. A file that is not the session's own, and one that
+	// someone else changed, it refuses with an error that is fs.ErrExist unless
+	// replace says so.
 	Save    func(file string, w desk.Work, replace bool) error
 	Resolve func(text, plane string, form estimator.Form) ([]complex128, error)
 	In      io.Reader
@@ -176,7 +179,7 @@ func (d *dialogue) save(file string, replace bool) error {
 	if !strings.HasSuffix(file, ".json") {
 		file += ".session.json"
 	}
-	err := d.Save(file, d.work(), replace || file == d.file)
+	err := d.Save(file, d.work(), replace)
 	if errors.Is(err, fs.ErrExist) {
 		return fmt.Errorf("%s exists or was changed by someone else; replace %s overwrites it", file, file)
 	}
