@@ -13,7 +13,8 @@ import (
 
 // Complete returns a quick design of this Designer with the figures that were left
 // out; a complete one is returned as it is.
-func (d *Designer) Complete(quick *Design) (*Design, error) {
+func (d *Designer) Complete(quick *Design) (_ *Design, err error) {
+	defer guard(&err)
 	if err := d.owns(quick); err != nil {
 		return nil, err
 	}
@@ -26,10 +27,11 @@ func (d *Designer) Complete(quick *Design) (*Design, error) {
 	out.Warnings = append([]string(nil), quick.Warnings...)
 	ls := d.scaleGain(out.Gain)
 	if out.Stable && out.Noise.Covariance != nil {
-		if err := d.form.Factor(raw(d.errorMatrix(ls))); err != nil {
+		f := d.errorMatrix(ls)
+		if err := d.form.Factor(raw(f)); err != nil {
 			return nil, fmt.Errorf("eigenvalues of A − LC: %w", err)
 		}
-		d.sensorNoise(&out.Noise, ls)
+		d.sensorNoise(&out.Noise, f, ls)
 		d.peakGains(out)
 	}
 	d.exactLoop(out)
@@ -87,13 +89,13 @@ func (d *Designer) compareMethods(out *Design) {
 	}
 }
 
-func (d *Designer) sensorNoise(noise *Noise, ls *mat.Dense) {
+func (d *Designer) sensorNoise(noise *Noise, f, ls *mat.Dense) {
 	s := mat.NewDense(d.n, d.p, nil)
 	q := mat.NewDense(d.n, d.n, nil)
 	for j := range d.p {
 		col := ls.ColView(j)
 		q.Outer(1, col, col)
-		p, err := d.solveNoise(q)
+		p, err := d.solveNoise(f, q)
 		if err != nil {
 			return
 		}

@@ -55,6 +55,11 @@ func (d *Designer) prepareControl() error {
 			c.a.Set(i, j, d.a.At(r, s)-bk.At(r, s))
 		}
 	}
+	for _, part := range []*mat.Dense{c.b, c.k, c.a, c.bk} {
+		if err := checkScaled("the controller", part, mostGiven); err != nil {
+			return err
+		}
+	}
 	if err := c.form.Factor(raw(free)); err != nil {
 		return fmt.Errorf("eigenvalues of the plant: %w", err)
 	}

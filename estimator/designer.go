@@ -63,8 +63,12 @@ func (e *FixedModesError) Error() string {
 	case e.Unstable:
 		return fmt.Sprintf("the sensors do not see the modes at %s, and not all of these die out by themselves: no gain can help", strings.Join(list, ", "))
 	}
-	return fmt.Sprintf("the sensors do not see the modes at %s, which no gain can move; expected the other %d poles alone, or all with these among them (%d were given)",
-		strings.Join(list, ", "), e.Movable, e.Wanted)
+	others := fmt.Sprintf("%d poles", e.Movable)
+	if e.Movable == 1 {
+		others = "pole"
+	}
+	return fmt.Sprintf("the sensors do not see the modes at %s, which no gain can move; expected the other %s alone, or all with these among them (%d were given)",
+		strings.Join(list, ", "), others, e.Wanted)
 }
 
 var (
@@ -78,12 +82,19 @@ var (
 // NewDesigner checks and analyses a model. It fails where the model does
 // (Model.Check), where the current form is asked for in continuous time, or
 // where an eigenvalue iteration gives up.
-func NewDesigner(m *Model, opt Options) (*Designer, error) {
+func NewDesigner(m *Model, opt Options) (_ *Designer, err error) {
+	defer guard(&err)
 	if err := m.Check(); err != nil {
 		return nil, err
 	}
 	if opt.Form == Current && !m.Discrete() {
 		return nil, fmt.Errorf("the current form needs a sample period: %w", ErrMethod)
+	}
+	if math.IsNaN(opt.Tolerance) || opt.Tolerance < 0 || opt.Tolerance >= 1 {
+		return nil, fmt.Errorf("tolerance %g, expected 0 to 1: %w", opt.Tolerance, ErrRange)
+	}
+	if opt.Form > Current || opt.Method > LeastNoise {
+		return nil, fmt.Errorf("form %d, method %d: %w", opt.Form, opt.Method, ErrMethod)
 	}
 	if opt.Tolerance == 0 {
 		opt.Tolerance = 1e-12
@@ -91,6 +102,15 @@ func NewDesigner(m *Model, opt Options) (*Designer, error) {
 	d := &Designer{model: m, opt: opt}
 	d.n, _, d.p = m.Dims()
 	d.scale()
+	for _, part := range []struct {
+		name string
+		m    *mat.Dense
+		most float64
+	}{{"A", d.a, mostScaled}, {"C", d.c, mostScaled}, {"the process noise", d.w, mostNoise}, {"R", d.r, mostNoise}} {
+		if err := checkScaled(part.name, part.m, part.most); err != nil {
+			return nil, err
+		}
+	}
 	if err := d.analyse(); err != nil {
 		return nil, err
 	}

@@ -32,7 +32,8 @@ func (d *Designer) Judge(g Given) (*Design, error) {
 }
 
 // QuickJudge is Judge without what Design.Partial lists.
-func (d *Designer) QuickJudge(g Given) (*Design, error) {
+func (d *Designer) QuickJudge(g Given) (_ *Design, err error) {
+	defer guard(&err)
 	for _, l := range []*mat.Dense{g.L, g.Lf} {
 		if l == nil {
 			continue
@@ -43,8 +44,8 @@ func (d *Designer) QuickJudge(g Given) (*Design, error) {
 		if r, c := l.Dims(); r != d.n || c != d.p {
 			return nil, fmt.Errorf("the gain is %d×%d, expected %d×%d: %w", r, c, d.n, d.p, ErrShape)
 		}
-		if !finite(l) {
-			return nil, fmt.Errorf("the gain: %w", ErrNotFinite)
+		if err := checkEntries("the gain", l); err != nil {
+			return nil, err
 		}
 	}
 	l, lf := g.L, g.Lf
@@ -80,8 +81,8 @@ func (d *Designer) QuickJudge(g Given) (*Design, error) {
 // gain again gives the same figures. current is its current form where that is
 // known, wanted the poles asked for where there are any.
 func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design, error) {
-	if !finite(gain) {
-		return nil, fmt.Errorf("the gain for these poles: %w", ErrNotFinite)
+	if err := checkEntries("the gain for these poles", gain); err != nil {
+		return nil, err
 	}
 	out := &Design{Form: d.opt.Form, Method: d.opt.Method, Partial: true, WorstError: math.NaN(), Float32Shift: math.NaN()}
 	out.Gain = mat.DenseCopyOf(gain)
@@ -114,7 +115,7 @@ func (d *Designer) judge(gain, current *mat.Dense, wanted []complex128) (*Design
 	if k, err := d.form.VectorCondition(); err == nil && !math.IsInf(k, 0) && !d.tooManyAlike(wanted) {
 		out.EigenvectorCondition = k
 	}
-	d.judgeNoise(out, ls, lf)
+	d.judgeNoise(out, f, ls, lf)
 	d.judgeTransient(out, f, ls, lf)
 	if err := d.judgeLoop(out, ls, lf); err != nil {
 		return nil, err
@@ -201,19 +202,8 @@ func matchPoles(wanted, have []complex128) (ordered []complex128, worst float64)
 	return ordered, worst
 }
 
-// solveNoise solves for the covariance that a noise q leaves, on the Schur form
-// of F at hand.
-func (d *Designer) solveNoise(q *mat.Dense) (*mat.Dense, error) {
-	n, _ := q.Dims()
-	p := mat.NewDense(n, n, nil)
-	if d.model.Discrete() {
-		return p, d.form.Stein(raw(p), raw(q))
-	}
-	return p, d.form.Lyapunov(raw(p), raw(q))
-}
-
 // judgeNoise fills the steady-state figures from the Schur form of F at hand.
-func (d *Designer) judgeNoise(out *Design, ls, lf *mat.Dense) {
+func (d *Designer) judgeNoise(out *Design, f, ls, lf *mat.Dense) {
 	out.Noise.OverFloorRMS = math.NaN()
 	if !out.Stable {
 		return
@@ -222,7 +212,7 @@ func (d *Designer) judgeNoise(out *Design, ls, lf *mat.Dense) {
 	lr.Mul(ls, d.r)
 	q.Mul(&lr, ls.T())
 	q.Add(&q, d.w)
-	p, err := d.solveNoise(&q)
+	p, err := d.solveNoise(f, &q)
 	if err != nil {
 		out.Warnings = append(out.Warnings, "the noise has no steady state that can be computed: "+err.Error())
 		return

@@ -31,7 +31,8 @@ type Mismatch struct {
 // Against judges a design of this Designer on a real plant: a model with the
 // same inputs, sensors and period, and the same states but for the unknowns. The
 // error of a state is the real one minus its estimate.
-func (d *Designer) Against(real *Model, design *Design) (*Mismatch, error) {
+func (d *Designer) Against(real *Model, design *Design) (_ *Mismatch, err error) {
+	defer guard(&err)
 	if err := real.Check(); err != nil {
 		return nil, err
 	}
@@ -41,6 +42,9 @@ func (d *Designer) Against(real *Model, design *Design) (*Mismatch, error) {
 	if _, ri, rp := real.Dims(); ri != inputs || rp != d.p || len(own) != len(mine) {
 		return nil, fmt.Errorf("the real plant has %d states, %d inputs and %d sensors, expected %d, %d and %d: %w",
 			len(own), ri, rp, len(mine), inputs, d.p, ErrShape)
+	}
+	if len(own) == 0 {
+		return nil, fmt.Errorf("every state is an unknown, there is no plant: %w", ErrShape)
 	}
 	if real.Period != m.Period {
 		return nil, fmt.Errorf("the real plant has the period %g s, expected %g: %w", real.Period, m.Period, ErrMethod)

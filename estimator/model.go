@@ -87,14 +87,17 @@ func (m *Model) Dims() (states, inputs, sensors int) {
 }
 
 // Check reports the first thing that makes the model unusable: a missing or
-// mis-shaped matrix (ErrShape), a number that is not finite (ErrNotFinite), or
-// a Q or R that is not a covariance (ErrNoise).
+// mis-shaped matrix (ErrShape), a number that is not finite (ErrNotFinite) or beyond
+// 1e100 (ErrRange), or a Q or R that is not a covariance (ErrNoise).
 func (m *Model) Check() error {
 	if m == nil || m.A == nil || m.C == nil || m.A.IsEmpty() || m.C.IsEmpty() {
 		return fmt.Errorf("A and C are needed and must not be empty: %w", ErrShape)
 	}
 	if math.IsNaN(m.Period) || math.IsInf(m.Period, 0) || m.Period < 0 {
 		return fmt.Errorf("period %g s: %w", m.Period, ErrNotFinite)
+	}
+	if m.Period > mostGiven || m.Period != 0 && m.Period < 1/mostGiven {
+		return fmt.Errorf("period %g s: %w", m.Period, ErrRange)
 	}
 	n, inputs, p := m.Dims()
 	q := n
@@ -123,8 +126,8 @@ func (m *Model) Check() error {
 		if r, c := s.have.Dims(); r != s.rows || c != s.cols {
 			return fmt.Errorf("%s is %d×%d, expected %d×%d: %w", s.name, r, c, s.rows, s.cols, ErrShape)
 		}
-		if !finite(s.have) {
-			return fmt.Errorf("%s: %w", s.name, ErrNotFinite)
+		if err := checkEntries(s.name, s.have); err != nil {
+			return err
 		}
 	}
 	if m.Q == nil || m.R == nil {
@@ -134,8 +137,8 @@ func (m *Model) Check() error {
 		if _, c := m.Outputs.Dims(); c != n {
 			return fmt.Errorf("an output row has %d entries, expected %d: %w", c, n, ErrShape)
 		}
-		if !finite(m.Outputs) {
-			return fmt.Errorf("outputs: %w", ErrNotFinite)
+		if err := checkEntries("outputs", m.Outputs); err != nil {
+			return err
 		}
 	}
 	if m.Roles != nil && len(m.Roles) != n {
@@ -163,6 +166,9 @@ func checkScale(what string, s []float64, want int) error {
 	for _, v := range s {
 		if !(v > 0) || math.IsInf(v, 0) {
 			return fmt.Errorf("%s scale %g must be above 0: %w", what, v, ErrNotFinite)
+		}
+		if v > mostGiven || v < 1/mostGiven {
+			return fmt.Errorf("%s scale %g, expected between %.0g and %.0g: %w", what, v, 1/mostGiven, mostGiven, ErrRange)
 		}
 	}
 	return nil

@@ -34,7 +34,8 @@ func (d *Designer) Place(wanted []complex128, prev *Design) (*Design, error) {
 
 // QuickPlace is Place for a pole that is being dragged: it leaves to Complete what
 // Design.Partial lists.
-func (d *Designer) QuickPlace(wanted []complex128, prev *Design) (*Design, error) {
+func (d *Designer) QuickPlace(wanted []complex128, prev *Design) (_ *Design, err error) {
+	defer guard(&err)
 	movable, err := d.movable(wanted)
 	if err != nil {
 		return nil, err

@@ -107,14 +107,15 @@ func (d *Designer) weightedNoise(g *mat.Dense, weights []float64) (float64, bool
 		ls = new(mat.Dense)
 		ls.Mul(d.a, g)
 	}
-	if d.form.Factor(raw(d.errorMatrix(ls))) != nil || !stable(d.form.Eigenvalues(), d.model.Discrete()) {
+	f := d.errorMatrix(ls)
+	if d.form.Factor(raw(f)) != nil || !stable(d.form.Eigenvalues(), d.model.Discrete()) {
 		return 0, false
 	}
 	var lr, q mat.Dense
 	lr.Mul(ls, d.r)
 	q.Mul(&lr, ls.T())
 	q.Add(&q, d.w)
-	p, err := d.solveNoise(&q)
+	p, err := d.solveNoise(f, &q)
 	if err != nil {
 		return 0, false
 	}
