@@ -91,6 +91,11 @@ func (w *work) stages(ctx context.Context, r desk.Request, send func(desk.Answer
 		return
 	}
 	a.Stage = desk.Traced
+	if whole, err := w.complete(r, a.Design); err != nil {
+		a.Err = err
+	} else {
+		a.Design = whole
+	}
 	if err != nil {
 		a.Err = fmt.Errorf("the scenario's run: %w", err)
 	} else {
@@ -112,20 +117,29 @@ func (w *work) judge(r desk.Request) (desk.Answer, error) {
 	wanted := r.Poles
 	switch {
 	case r.Gain != nil || r.GainCurrent != nil:
-		a.Design, err = d.Judge(estimator.Given{L: r.Gain, Lf: r.GainCurrent, Wanted: wanted})
+		a.Design, err = d.QuickJudge(estimator.Given{L: r.Gain, Lf: r.GainCurrent, Wanted: wanted})
 	default:
 		if wanted == nil {
 			if wanted, err = aim.Start(w.bench.Model, d); err != nil {
 				return a, err
 			}
 		}
-		a.Design, err = d.Place(wanted, r.From)
+		a.Design, err = d.QuickPlace(wanted, r.From)
 	}
 	if err != nil {
 		return a, err
 	}
 	a.Limits = w.bench.Scenario.Judge(a.Design, w.bench.Model, w.bench.Plant, nil)
 	return a, nil
+}
+
+// complete adds the figures that the first stage left out.
+func (w *work) complete(r desk.Request, quick *estimator.Design) (*estimator.Design, error) {
+	d, err := w.designer(estimator.Options{Form: r.Form, Method: r.Method})
+	if err != nil {
+		return nil, err
+	}
+	return d.Complete(quick)
 }
 
 func (w *work) designer(o estimator.Options) (*estimator.Designer, error) {
