@@ -16,12 +16,15 @@ import (
 	"time"
 
 	"github.com/adrg/xdg"
+
+	"polewright/ui/session"
 )
 
 const (
-	ending     = ".work.json"
-	lockEnding = ".lock"
-	// Kept is how long a journal that nobody takes up is kept.
+	ending       = ".work.json"
+	lockEnding   = ".lock"
+	reportEnding = ".fault.txt"
+	// Kept is how long a journal that nobody takes up is kept, and a report of a fault.
 	Kept = 30 * 24 * time.Hour
 )
 
@@ -44,14 +47,31 @@ func prepare(folder string) error {
 	return nil
 }
 
-// Clean removes journals that nobody took up for longer than Kept, and the locks
-// of programs that left none. What a running program holds stays.
+// Report writes what is known of a fault in the program, for its owner's eyes, and
+// returns where.
+func Report(folder string, text []byte, now time.Time) (string, error) {
+	if err := prepare(folder); err != nil {
+		return "", err
+	}
+	path := filepath.Join(folder, now.UTC().Format("20060102-150405.000000000")+reportEnding)
+	return path, session.WritePrivate(path, text)
+}
+
+// Clean removes journals that nobody took up for longer than Kept, reports as old,
+// and the locks of programs that left no journal. What a running program holds
+// stays.
 func Clean(folder string, now time.Time) {
 	entries, err := os.ReadDir(folder)
 	if err != nil {
 		return
 	}
 	for _, e := range entries {
+		if strings.HasSuffix(e.Name(), reportEnding) {
+			if info, err := e.Info(); err == nil && now.Sub(info.ModTime()) > Kept {
+				_ = os.Remove(filepath.Join(folder, e.Name()))
+			}
+			continue
+		}
 		stem, isLock := strings.CutSuffix(e.Name(), lockEnding)
 		if !isLock {
 			var isWork bool

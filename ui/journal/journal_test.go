@@ -267,6 +267,11 @@ func TestCleanAfterThirtyDays(t *testing.T) {
 		t.Fatalf("%d files before their time is over", n)
 	}
 	running := leave()
+	if report, err := journal.Report(folder, []byte("it broke"), now); err != nil {
+		t.Error(err)
+	} else if info, err := os.Stat(report); err != nil || info.Mode().Perm() != 0o600 {
+		t.Errorf("%s: %v", report, err)
+	}
 	other := filepath.Join(folder, "somebody's.json")
 	if err := os.WriteFile(other, nil, 0o600); err != nil {
 		t.Fatal(err)

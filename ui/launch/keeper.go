@@ -5,6 +5,8 @@ import (
 	"fmt"
 	"os"
 	"os/signal"
+	"runtime"
+	"runtime/debug"
 	"slices"
 	"sync"
 	"syscall"
@@ -25,6 +27,8 @@ const keepAfter = 300 * time.Millisecond
 // keeper sees to it that unsaved work is in the journal within a second, also
 // while the hands never rest.
 type keeper struct {
+	program string           // name and version
+	folder  string           // of journals and reports
 	journal *journal.Journal // nil where there is none
 	mark    func() session.Mark
 	// recovered work is in the journal from the start, and unsaved until saved says
@@ -36,6 +40,7 @@ type keeper struct {
 	latest  screen.Model
 	last    *desk.Work // what was handed to the journal; nil where it has nothing
 	ended   os.Signal  // that ended the program
+	failed  string     // why a fault did; empty without one
 	ticking bool
 }
 
@@ -47,19 +52,26 @@ type kept struct {
 
 type keepMsg struct{}
 
-// Update passes everything on to the screen and looks at what came of it.
-func (k kept) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
+// Update passes everything on to the screen and looks at what came of it. A fault in
+// the screen ends the program in order, with the state before it kept.
+func (k kept) Update(msg tea.Msg) (model tea.Model, cmd tea.Cmd) {
+	defer func() {
+		if r := recover(); r != nil {
+			k.keeper.fault(r, debug.Stack())
+			model, cmd = k, tea.Quit
+		}
+	}()
 	if _, ok := msg.(keepMsg); ok {
 		k.keeper.tick()
 		return k, nil
 	}
-	next, cmd := k.Model.Update(msg)
+	next, more := k.Model.Update(msg)
 	m, ok := next.(screen.Model)
 	if !ok {
-		return next, cmd
+		return next, more
 	}
 	k.Model = m
-	return k, tea.Batch(cmd, k.keeper.see(m))
+	return k, tea.Batch(more, k.keeper.see(m))
 }
 
 // see notes the newest state of the screen and starts the one tick that keeps it.
@@ -141,12 +153,26 @@ func (k *keeper) guard(program *tea.Program) (stop func()) {
 	}
 }
 
+// fault writes a report of what went wrong.
+func (k *keeper) fault(what any, stack []byte) {
+	k.mu.Lock()
+	defer k.mu.Unlock()
+	if k.failed != "" {
+		return
+	}
+	k.failed = fmt.Sprintf("ended by a fault in the program, %v", what)
+	text := fmt.Sprintf("%s, %s %s/%s\n%v\n\n%s", k.program, runtime.Version(), runtime.GOOS, runtime.GOARCH, what, stack)
+	if path, err := journal.Report(k.folder, []byte(text), time.Now()); err == nil {
+		k.failed = "ended by a fault in the program, described in " + path
+	}
+}
+
 // finish decides what becomes of the journal when the screen is gone, and says what
 // ended it where that was not the person, who gives up what is unsaved.
 func (k *keeper) finish(runErr error) error {
 	k.mu.Lock()
 	defer k.mu.Unlock()
-	if runErr == nil && k.ended == nil {
+	if runErr == nil && k.ended == nil && k.failed == "" {
 		if k.journal == nil {
 			return nil
 		}
@@ -155,6 +181,8 @@ func (k *keeper) finish(runErr error) error {
 	}
 	why := "ended"
 	switch {
+	case k.failed != "":
+		why = k.failed
 	case k.ended != nil:
 		why = "ended by signal: " + k.ended.String()
 	case errors.Is(runErr, tea.ErrProgramPanic):

@@ -39,15 +39,16 @@ type Options struct {
 // terminal is restored in any case; where a signal or a fault ends the screen, the
 // unsaved work stays in the journal and the error says so.
 func Run(ctx context.Context, o Options) (saved string, err error) {
-	left, err := offer(ctx, &o, journal.Folder(), time.Now())
+	folder := journal.Folder()
+	left, err := offer(ctx, &o, folder, time.Now())
 	if err != nil {
 		return "", err
 	}
-	keeper, message := &keeper{}, ""
+	keeper, message := &keeper{program: o.Program, folder: folder}, ""
 	if left != nil {
 		o.Work, o.Known, keeper.journal, keeper.recovered = *left.work, left.sum, left.journal, true
 		message = "recovered; not saved yet"
-	} else if keeper.journal, err = journal.Open(journal.Folder(), o.Program); err != nil {
+	} else if keeper.journal, err = journal.Open(folder, o.Program); err != nil {
 		message = "unsaved work cannot be kept against a crash: " + err.Error()
 	}
 	store, err := newStore(&o)
