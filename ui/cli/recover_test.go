@@ -203,3 +203,15 @@ func TestTwoProgramsOnOneSession(t *testing.T) {
 	q.press("n" + "qy")
 	q.quits()
 }
+
+// Where nothing can be kept, the screen says so and works all the same.
+func TestWithoutAStateFolder(t *testing.T) {
+	program, dir := build(t), t.TempDir()
+	if err := os.WriteFile(filepath.Join(dir, "polewright"), nil, 0o600); err != nil { // in the folder's place
+		t.Fatal(err)
+	}
+	p := open(t, program, dir, "lift")
+	p.waitFor("cannot be kept against a crash")
+	p.press("q")
+	p.quits()
+}

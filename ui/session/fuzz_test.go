@@ -8,6 +8,7 @@ import (
 	"path/filepath"
 	"strings"
 	"testing"
+	"time"
 	"unicode"
 
 	"polewright/ui/session"
@@ -17,7 +18,11 @@ import (
 // answers in more than a line, or brings to the screen what a terminal could take
 // for a command.
 func FuzzLoad(f *testing.F) {
-	good, err := os.ReadFile(golden)
+	w, err := session.Load(golden)
+	if err != nil {
+		f.Fatal(err)
+	}
+	good, err := session.EncodeDraft("fuzz", w, &session.Mark{File: "/x/y.session.json", Plant: "x"})
 	if err != nil {
 		f.Fatal(err)
 	}
@@ -33,7 +38,14 @@ func FuzzLoad(f *testing.F) {
 		f.Add([]byte(text))
 	}
 	f.Fuzz(func(t *testing.T, data []byte) {
+		if m := session.DraftMark(data); m != nil {
+			tame(t, "title", session.Printable(m.Plant, 60))
+		}
+		began := time.Now()
 		w, err := session.Decode("fuzz.session.json", data)
+		if d := time.Since(began); d > 10*time.Second {
+			t.Fatalf("decoding took %v", d)
+		}
 		if err != nil {
 			tame(t, "error", err.Error())
 			return
