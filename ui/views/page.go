@@ -1,5 +1,5 @@
 // Package views draws what opens on top of the screen: help, all readings, the
-// candidates side by side.
+// candidates side by side, the trade-off, sensors and modes, the worst case.
 package views
 
 import (
