@@ -18,6 +18,18 @@ type PoleShift struct {
 	Distance, Relative float64
 }
 
+// farthest is the largest relative movement of a pole that does not stay within
+// near of 0, its size being at least near.
+func farthest(list []PoleShift, near float64) float64 {
+	worst := 0.0
+	for _, s := range list {
+		if from := cmplx.Abs(s.From); max(from, cmplx.Abs(s.To)) > near {
+			worst = max(worst, s.Distance/max(from, near))
+		}
+	}
+	return worst
+}
+
 // Float32Poles returns where the poles go when A, L and C are rounded to float32,
 // in the order of the design's Reached, and the index of the one that moves most,
 // relatively.

@@ -3,7 +3,6 @@ package estimator
 import (
 	"errors"
 	"fmt"
-	"math"
 )
 
 // Shortest and longest word of a rounding study, in bits with the sign.
@@ -96,8 +95,11 @@ func RoundWords(m *Model, d *Design, o WordOptions) (*Words, error) {
 
 // WordLimits are what a word length must keep.
 type WordLimits struct {
-	// Shift is the largest relative movement of a pole, > 0.
-	Shift float64
+	// Shift is the largest relative movement of a pole, > 0. Poles that stay within
+	// NearZero of z = 0 do not count, and NearZero is the least size to compare with:
+	// they die out within a sample or two wherever exactly they are, and several at
+	// 0 spread at the slightest rounding. If zero, it is 0.1.
+	Shift, NearZero float64
 	// Settle is the largest relative growth of the settle time; if zero, it is not
 	// judged.
 	Settle float64
@@ -110,8 +112,11 @@ type WordLimits struct {
 // as well. Where none does the error is ErrWord, with the study of the longest
 // word beside it.
 func SmallestWord(m *Model, d *Design, o WordOptions, limits WordLimits) (*Words, error) {
-	if !(limits.Shift > 0) || limits.Settle < 0 || math.IsNaN(limits.Settle) {
-		return nil, fmt.Errorf("limits of %g on the poles and %g on the settle time, expected above 0: %w", limits.Shift, limits.Settle, ErrMethod)
+	if !(limits.Shift > 0) || !(limits.Settle >= 0) || !(limits.NearZero >= 0) {
+		return nil, fmt.Errorf("limits %+v, expected numbers above 0: %w", limits, ErrMethod)
+	}
+	if limits.NearZero == 0 {
+		limits.NearZero = 0.1
 	}
 	o.Bits = MaxWord
 	r, err := newRounding(m, d, o)
@@ -124,7 +129,7 @@ func SmallestWord(m *Model, d *Design, o WordOptions, limits WordLimits) (*Words
 		if w, err = r.poles(bits); err != nil {
 			return nil, err
 		}
-		if !w.Stable || w.Poles[w.Worst].Relative > limits.Shift {
+		if !w.Stable || farthest(w.Poles, limits.NearZero) > limits.Shift {
 			break
 		}
 		shortest = bits
@@ -142,5 +147,5 @@ func SmallestWord(m *Model, d *Design, o WordOptions, limits WordLimits) (*Words
 			return w, nil
 		}
 	}
-	return w, fmt.Errorf("at %d bits a pole moves by %.2g and the start-up takes %.3g s: %w", MaxWord, w.Poles[w.Worst].Relative, w.Settle, ErrWord)
+	return w, fmt.Errorf("at %d bits a pole moves by %.2g and the start-up takes %.3g s: %w", MaxWord, farthest(w.Poles, limits.NearZero), w.Settle, ErrWord)
 }

@@ -199,12 +199,16 @@ func TestSmallestWordIsTheSmallest(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
+			farthest := 0.0
 			for _, s := range w.Poles {
+				if cmplx.Abs(s.From) > 0.1 || cmplx.Abs(s.To) > 0.1 {
+					farthest = max(farthest, s.Distance/max(cmplx.Abs(s.From), 0.1))
+				}
 				if s.Relative > w.Poles[w.Worst].Relative {
 					t.Errorf("pole %v moves more than the worst", s.From)
 				}
 			}
-			return w.Stable && w.Poles[w.Worst].Relative <= limit && (w.Loop == nil || w.Loop.Stable)
+			return w.Stable && farthest <= limit && (w.Loop == nil || w.Loop.Stable)
 		}
 		if !keeps(w.Bits) || !keeps(min(w.Bits+3, estimator.MaxWord)) || !keeps(estimator.MaxWord) {
 			t.Errorf("%d bits do not keep the limit", w.Bits)
@@ -347,7 +351,7 @@ func TestBadWordStudies(t *testing.T) {
 			t.Errorf("%s: %v", name, err)
 		}
 	}
-	for _, l := range []estimator.WordLimits{{}, {Shift: math.NaN()}, {Shift: 1, Settle: -1}} {
+	for _, l := range []estimator.WordLimits{{}, {Shift: math.NaN()}, {Shift: 1, Settle: -1}, {Shift: 1, NearZero: math.NaN()}} {
 		if _, err := estimator.SmallestWord(m, d, ok, l); !errors.Is(err, estimator.ErrMethod) {
 			t.Errorf("limits %+v: %v", l, err)
 		}
@@ -387,4 +391,29 @@ func TestWordsOfWildDesigns(t *testing.T) {
 			t.Errorf("%+v", w)
 		}
 	})
+}
+
+// Three poles at 0 spread at the slightest rounding, but stay harmless there.
+func TestWordsOfDeadbeat(t *testing.T) {
+	m := &estimator.Model{Period: 0.1, A: mat.NewDense(3, 3, []float64{0.9, 0.1, 0, 0, 0.8, 0.1, 0, 0, 0.7}), C: mat.NewDense(1, 3, []float64{1, 0, 0}), Q: unit(3), R: unit(1)}
+	d, err := newDesigner(t, m, estimator.Options{}).Place(make([]complex128, 3), nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	w, err := estimator.SmallestWord(m, d, estimator.WordOptions{}, estimator.WordLimits{Shift: 0.01})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, s := range w.Poles {
+		if cmplx.Abs(s.To) > 0.1 || s.Relative != s.Distance {
+			t.Errorf("%+v", s)
+		}
+	}
+	if w.Bits > 20 {
+		t.Errorf("%d bits", w.Bits)
+	}
+	tight, err := estimator.SmallestWord(m, d, estimator.WordOptions{}, estimator.WordLimits{Shift: 0.01, NearZero: 1e-3})
+	if err != nil || tight.Bits < w.Bits+15 { // a third root: 1/100 less takes 20 bits more
+		t.Errorf("poles held within 1e-3 of 0: %v, %v", tight, err)
+	}
 }

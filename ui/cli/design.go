@@ -151,7 +151,7 @@ func (t *task) print(w io.Writer, limits []scenarios.LimitResult) error {
 	line("start-up settles to 2 %% in\t%s s", figure(d.Transient.Settle))
 	line("start-up peak\t%s", figure(d.Transient.Peak))
 	line("eigenvector condition\t%s", figure(d.EigenvectorCondition))
-	line("pole shift in float32\t%s relative", figure(d.Float32Shift))
+	t.printRounding(line)
 	t.printLoop(line)
 	if len(limits) > 0 {
 		line("")
