@@ -118,7 +118,7 @@ func TestParseRefuses(t *testing.T) {
 		{drive("input = \"forcf\""), `s.toml: drive 1, input: unknown input "forcf"; expected one of "force"`},
 		{drive(force), `s.toml: drive 1, shape: missing; expected "step", "ramp", "pulse", "sine", "chirp" or "random-binary"`},
 		{drive(force + "shape = \"jump\""), `s.toml: drive 1, shape: "jump"; expected "step", "ramp", "pulse", "sine", "chirp" or "random-binary"`},
-		{drive(force + "shape = \"file\"\nfile = \"log.csv\"\ncolumn = \"u\""), `s.toml: drive 1, shape: "file"; recorded drives come with the log reader, which this version does not have yet`},
+		{drive(force + "shape = \"file\"\nfile = \"log.csv\"\ncolumn = \"u\""), `s.toml: drive 1, shape: "file"; expected one of the other shapes: a session cannot hold a recorded drive yet`},
 		{drive(force + "shape = \"step\"\nsize = 1\nfile = \"log.csv\""), `s.toml: drive 1: a file for "step"; expected a file with the shape "file" only`},
 		{drive(force + "shape = \"step\""), "s.toml: drive 1, size: missing; expected a number"},
 		{drive(force + "shape = \"step\"\nsize = 1\nat_s = 5"), "s.toml: drive 1, at_s: 5; expected 0 to duration_s, 4"},

@@ -36,7 +36,7 @@ func (r *reader) drive(at string, raw rawDrive) (Drive, *plants.Error) {
 		return d, unknown(at+", input", "input", raw.Input, namesOf(r.plant.Inputs, func(s plants.Input) string { return s.Name }))
 	}
 	if raw.Shape == "file" {
-		return d, wrong(at+", shape", `"file"`, "recorded drives come with the log reader, which this version does not have yet")
+		return d, wrong(at+", shape", `"file"`, "expected one of the other shapes: a session cannot hold a recorded drive yet")
 	}
 	shapes := []Shape{Step, Ramp, Pulse, Sine, Chirp, RandomBinary}
 	if !slices.Contains(shapes, d.Shape) {

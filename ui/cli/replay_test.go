@@ -244,3 +244,64 @@ func TestReplayPrintsEveryKey(t *testing.T) {
 		}
 	}
 }
+
+// The level of the Nile with the variances of Durbin & Koopman, "Time Series
+// Analysis by State Space Methods": 15099 of the observations, 1469.1 of the level.
+const nile = `
+format = 1
+name = "Level of the Nile at Aswan"
+[model]
+time = "discrete"
+period_s = 1.0 # one row per year, time counted in years
+A = [[1]]
+C = [[1]]
+[operating_point]
+states = [1120]
+sensors = [1120]
+[[states]]
+name = "level"
+[[sensors]]
+name = "flow"
+noise_std = 122.87798826478244 # sqrt(15099)
+[process_noise]
+std = [38.328840317953]        # sqrt(1469.1)
+`
+
+// A hundred years of a real river do not contradict the published variances.
+func TestReplayOfTheNile(t *testing.T) {
+	plant := write(t, t.TempDir(), "nile.toml", nile)
+	log := filepath.Join("..", "..", "scenarios", "logs", "testdata", "nile.csv")
+	args := []string{"replay", plant, "--poles", "floor", "--log", log, "--map", "year=t", "--map", "volume=flow", "--start", "first-sample", "--skip", "0"}
+	out := must(t, args...)
+	for _, want := range []string{"nothing speaks against white", "can explain this log"} {
+		if !strings.Contains(out, want) {
+			t.Errorf("no %q in\n%s", want, out)
+		}
+	}
+	var doc struct {
+		Innovations []struct {
+			StdExpected float64 `json:"std_expected"`
+		}
+		Whiteness []struct{ P float64 }
+		Noise     struct {
+			Process struct{ Low, High float64 }   `json:"process_factor"`
+			Sensor  []struct{ Low, High float64 } `json:"sensor_variance"`
+		} `json:"noise_figures"`
+	}
+	if err := json.Unmarshal([]byte(must(t, append(args, "--json")...)), &doc); err != nil {
+		t.Fatal(err)
+	}
+	// The steady variance of the innovations is 20600 in their figure 2.1 (from
+	// memory), p + 15099 with p = (1469.1 + √(1469.1² + 4·1469.1·15099))/2.
+	p := (1469.1 + math.Sqrt(1469.1*1469.1+4*1469.1*15099)) / 2
+	if v := doc.Innovations[0].StdExpected; math.Abs(v*v/(p+15099)-1) > 1e-9 || math.Abs(v*v-20600) > 50 {
+		t.Errorf("expected variance of the innovations %g", v*v)
+	}
+	if doc.Whiteness[0].P < 0.05 {
+		t.Errorf("whiteness rejected with p = %g", doc.Whiteness[0].P)
+	}
+	n := doc.Noise
+	if !(n.Process.Low < 1 && 1 < n.Process.High) || !(n.Sensor[0].Low < 15099 && 15099 < n.Sensor[0].High) {
+		t.Errorf("the log contradicts the published variances: %+v", n)
+	}
+}

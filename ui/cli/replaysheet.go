@@ -122,31 +122,37 @@ func unitOf(unit string) string {
 }
 
 func (s *replaySheet) printInnovations(line func(string, ...any)) {
+	r := s.result
 	line("")
-	line("innovations of this gain\tmean\t95 %% of true models\t\tstd\texpected\t95 %% of true models\t")
-	for _, v := range s.result.Innovations {
-		line("%s%s\t%s\t%s\t%s\t%s\t%s\t%s\t%s", v.Name, unitOf(v.Unit),
-			figure(float64(v.Mean)), span(v.MeanLow, v.MeanHigh), place(v.Mean, v.MeanLow, v.MeanHigh),
-			figure(float64(v.Std)), figure(float64(v.StdExpected)), span(v.StdLow, v.StdHigh), place(v.Std, v.StdLow, v.StdHigh))
+	line("innovations of this gain\tmeasured\texpected\t95 of 100 true logs\t")
+	row := func(what string, v, expected, low, high logs.Number) {
+		line("%s\t%s\t%s\t%s\t%s", what, figure(float64(v)), figure(float64(expected)), span(low, high), place(v, low, high))
 	}
-	for _, v := range s.result.Innovations {
-		out, all := 0, 0
-		for j, have := range v.Autocorrelation {
-			switch place(have, v.AutocorrelationLow[j], v.AutocorrelationHigh[j]) {
-			case "":
-				continue
-			case "inside":
-			default:
-				out++
-			}
+	for _, v := range r.Innovations {
+		row(v.Name+unitOf(v.Unit)+", mean", v.Mean, 0, v.MeanLow, v.MeanHigh)
+		row(v.Name+unitOf(v.Unit)+", std", v.Std, v.StdExpected, v.StdLow, v.StdHigh)
+	}
+	row("normalised squared (NIS), mean", r.NISMean, logs.Number(len(r.Innovations)), r.NISLow, r.NISHigh)
+	for i := range r.Innovations {
+		if out, all := outsideLags(&r.Innovations[i]); all > 0 {
+			line("%s, autocorrelation\t%d of %d lags outside this gain's own 95 %% band (neighbours go together)", r.Innovations[i].Name, out, all)
+		}
+	}
+}
+
+// outsideLags counts the lags whose autocorrelation is outside its band, and those
+// that have one.
+func outsideLags(v *logs.Innovation) (out, all int) {
+	for j, have := range v.Autocorrelation {
+		switch place(have, v.AutocorrelationLow[j], v.AutocorrelationHigh[j]) {
+		case "BELOW", "ABOVE":
+			out++
+			all++
+		case "inside":
 			all++
 		}
-		if all > 0 {
-			line("autocorrelation of %s\t%d of %d lags outside this gain's own 95 %% band (neighbouring lags go together)", v.Name, out, all)
-		}
 	}
-	r := s.result
-	line("normalised innovation squared (NIS)\t%s\t%s\t%s", figure(float64(r.NISMean)), span(r.NISLow, r.NISHigh), place(r.NISMean, r.NISLow, r.NISHigh))
+	return out, all
 }
 
 // Largest |autocorrelation| that is called small, and moderate.
@@ -210,16 +216,16 @@ func (s *replaySheet) printNoise(line func(string, ...any)) {
 		return
 	}
 	n := s.noise
-	line("noise figures from this log\tsuggested\t95 %% confidence\tplant file")
+	line("noise figures from this log\tsuggested\tplant file\t95 %% confidence")
 	for i, e := range n.Sensors {
 		v := s.result.Innovations[i]
-		line("std of %s%s\t%s\t%s\t%s", v.Name, unitOf(v.Unit), figure(float64(root(e.Value))), span(root(e.Low), root(e.High)), figure(float64(root(n.Model[i]))))
+		line("std of %s%s\t%s\t%s\t%s", v.Name, unitOf(v.Unit), figure(float64(root(e.Value))), figure(float64(root(n.Model[i]))), span(root(e.Low), root(e.High)))
 	}
-	if n.Apart {
-		line("factor on the process noise Q\t%s\t%s\t1", figure(float64(n.Process.Value)), span(n.Process.Low, n.Process.High))
-	} else {
-		line("factor on the process noise Q\tnot to be told from the sensors' noise\t\t1")
+	apart := ""
+	if !n.Apart {
+		apart = ", not to be told from the sensors' noise"
 	}
+	line("factor on the process noise Q\t%s\t1\t%s%s", figure(float64(n.Process.Value)), span(n.Process.Low, n.Process.High), apart)
 	fit := float64(n.Fit)
 	words := "the noise figures alone can explain this log"
 	if fit < 0.05 {
