@@ -38,6 +38,9 @@ type Request struct {
 	Gain, GainCurrent *mat.Dense
 	// From is the design to continue from; nil starts cold.
 	From *estimator.Design
+	// Truth, where not empty, multiplies the real plant's parameters in the run, in
+	// place of what the scenario says of the real plant.
+	Truth map[string]float64
 }
 
 // Stage says how far an answer has come.

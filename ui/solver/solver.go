@@ -6,6 +6,7 @@ package solver
 import (
 	"context"
 	"fmt"
+	"maps"
 
 	"polewright/estimator"
 	"polewright/scenarios"
@@ -69,6 +70,8 @@ type work struct {
 	bench     *desk.Bench
 	designers map[estimator.Options]*estimator.Designer
 	runner    *scenarios.Runner
+	stressed  *scenarios.Runner // on the real plant of truth
+	truth     map[string]float64
 }
 
 func newWork(b *desk.Bench) *work {
@@ -86,7 +89,7 @@ func (w *work) stages(ctx context.Context, r desk.Request, send func(desk.Answer
 	if ctx.Err() != nil {
 		return
 	}
-	run, err := w.run(ctx, a.Design)
+	run, err := w.run(ctx, a.Design, r.Truth)
 	if ctx.Err() != nil {
 		return
 	}
@@ -154,13 +157,32 @@ func (w *work) designer(o estimator.Options) (*estimator.Designer, error) {
 	return d, nil
 }
 
-func (w *work) run(ctx context.Context, d *estimator.Design) (*scenarios.Run, error) {
-	if w.runner == nil {
-		r, err := scenarios.NewRunner(w.bench.Plant, w.bench.Model, w.bench.Scenario, w.bench.Truth)
+func (w *work) run(ctx context.Context, d *estimator.Design, truth map[string]float64) (*scenarios.Run, error) {
+	r, err := w.on(truth)
+	if err != nil {
+		return nil, err
+	}
+	return r.Run(ctx, scenarios.Gain{L: d.Gain, Lf: d.GainCurrent, Form: d.Form})
+}
+
+// on returns the runner of the scenario on its own real plant, or on one whose
+// parameters are multiplied by truth. The newest of the latter is kept.
+func (w *work) on(truth map[string]float64) (*scenarios.Runner, error) {
+	s, plant, keep := w.bench.Scenario, w.bench.Truth, &w.runner
+	if len(truth) > 0 {
+		if !maps.Equal(truth, w.truth) {
+			w.stressed, w.truth = nil, maps.Clone(truth)
+		}
+		other := *s
+		other.Factors, other.TruthPlant = w.truth, ""
+		s, plant, keep = &other, nil, &w.stressed
+	}
+	if *keep == nil {
+		r, err := scenarios.NewRunner(w.bench.Plant, w.bench.Model, s, plant)
 		if err != nil {
 			return nil, err
 		}
-		w.runner = r
+		*keep = r
 	}
-	return w.runner.Run(ctx, scenarios.Gain{L: d.Gain, Lf: d.GainCurrent, Form: d.Form})
+	return *keep, nil
 }
