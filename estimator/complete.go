@@ -1,6 +1,7 @@
 package estimator
 
 import (
+	"context"
 	"fmt"
 	"math"
 
@@ -12,8 +13,9 @@ import (
 )
 
 // Complete returns a quick design of this Designer with the figures that were left
-// out; a complete one is returned as it is.
-func (d *Designer) Complete(quick *Design) (_ *Design, err error) {
+// out; a complete one is returned as it is. It looks at ctx between them and returns its
+// error once it is cancelled.
+func (d *Designer) Complete(ctx context.Context, quick *Design) (_ *Design, err error) {
 	defer guard(&err)
 	if err := d.owns(quick); err != nil {
 		return nil, err
@@ -34,7 +36,13 @@ func (d *Designer) Complete(quick *Design) (_ *Design, err error) {
 		d.sensorNoise(&out.Noise, f, ls)
 		d.peakGains(out)
 	}
+	if ctx.Err() != nil {
+		return nil, ctx.Err()
+	}
 	d.exactLoop(out)
+	if ctx.Err() != nil {
+		return nil, ctx.Err()
+	}
 	out.Float32Shift = d.float32Shift(out)
 	out.SensorSets = d.sensorSets(ls)
 	for _, s := range out.SensorSets {

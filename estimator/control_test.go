@@ -1,6 +1,7 @@
 package estimator_test
 
 import (
+	"context"
 	"math"
 	"testing"
 
@@ -40,7 +41,7 @@ func drawLoop(t *rapid.T) (*estimator.Model, *estimator.Designer, *estimator.Des
 func TestQuickMarginsAreConfirmed(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		_, d, quick := drawLoop(t)
-		whole, err := d.Complete(quick)
+		whole, err := d.Complete(context.Background(), quick)
 		if err != nil {
 			t.Fatal(err)
 		}

@@ -79,7 +79,8 @@ type Design struct {
 	Form   Form
 	Method Method
 	// Partial tells that Complete has still to add Noise.SensorToState, Noise.PeakGain,
-	// Float32Shift, SensorSets and their warnings, and to confirm the margins of Loop.
+	// Float32Shift, SensorSets and their warnings, to confirm the margins of Loop, and to take the
+	// sensitivity of several inputs together.
 	Partial bool
 
 	// Wanted are the poles asked for in the model's own plane, nil for a gain

@@ -1,6 +1,7 @@
 package estimator_test
 
 import (
+	"context"
 	"errors"
 	"math"
 	"strings"
@@ -283,10 +284,10 @@ func TestNilIsRefused(t *testing.T) {
 	if _, err := d.Judge(estimator.Given{L: new(mat.Dense)}); !errors.Is(err, estimator.ErrShape) {
 		t.Errorf("an empty gain: %v", err)
 	}
-	if _, err := d.Complete(nil); !errors.Is(err, estimator.ErrMethod) {
+	if _, err := d.Complete(context.Background(), nil); !errors.Is(err, estimator.ErrMethod) {
 		t.Errorf("no design: %v", err)
 	}
-	if _, err := d.Complete(&estimator.Design{Gain: mat.NewDense(3, 1, nil)}); !errors.Is(err, estimator.ErrMethod) {
+	if _, err := d.Complete(context.Background(), &estimator.Design{Gain: mat.NewDense(3, 1, nil)}); !errors.Is(err, estimator.ErrMethod) {
 		t.Errorf("a design of another model: %v", err)
 	}
 	if _, err := d.Against(oscillator(), nil); !errors.Is(err, estimator.ErrMethod) {

@@ -1,6 +1,7 @@
 package estimator
 
 import (
+	"context"
 	"fmt"
 	"math"
 	"math/cmplx"
@@ -28,7 +29,7 @@ func (d *Designer) Judge(g Given) (*Design, error) {
 	if err != nil {
 		return nil, err
 	}
-	return d.Complete(quick)
+	return d.Complete(context.Background(), quick)
 }
 
 // QuickJudge is Judge without what Design.Partial lists.

@@ -18,11 +18,20 @@ func all(n int) []int {
 	return list
 }
 
-// exactLoop judges the loop of a complete design: the quick figures, with the margins
-// found again where their crossings are eigenvalues and none can hide on a grid.
+// mostConfirmed is the number of states up to which exactLoop looks for crossings in
+// Hamiltonian matrices of four times the size.
+const mostConfirmed = 12
+
+// exactLoop judges the loop of a complete design: the quick figures, with the margins of
+// small loops found again where their crossings are eigenvalues and none can hide on a
+// grid, and with the sensitivity of several inputs taken together.
 func (d *Designer) exactLoop(out *Design) {
 	quick := out.Loop
 	if quick == nil || !quick.Stable {
+		return
+	}
+	_, inputs, _ := d.model.Dims()
+	if d.n > mostConfirmed && inputs == 1 {
 		return
 	}
 	l, err := d.openLoop(d.model, out)
@@ -30,12 +39,26 @@ func (d *Designer) exactLoop(out *Design) {
 		return
 	}
 	loop := *quick
+	if d.n > mostConfirmed {
+		d.wholeSensitivity(&loop, l)
+		out.Loop = &loop
+		return
+	}
 	loop.Input, loop.DelayMarginSamples = -1, -1
 	judged := &Design{Loop: &loop}
 	d.loopMargins(judged, l)
 	if loop.Input >= 0 {
 		out.Loop = &loop
 		out.Warnings = append(out.Warnings, judged.Warnings...)
+	}
+}
+
+// wholeSensitivity replaces the sensitivity of one input at a time by that of all
+// together.
+func (d *Designer) wholeSensitivity(loop *Loop, l *broken) {
+	whole := frequency.System{A: raw(l.a), B: raw(l.b), C: raw(l.c), D: raw(l.d), Period: d.model.Period}
+	if peak, err := frequency.SensitivityPeakMIMO(whole); err == nil {
+		loop.SensitivityPeak = peak
 	}
 }
 
@@ -74,10 +97,7 @@ func (d *Designer) loopMargins(out *Design, l *broken) {
 		}
 	}
 	if inputs > 1 {
-		whole := frequency.System{A: raw(l.a), B: raw(l.b), C: raw(l.c), D: raw(l.d), Period: d.model.Period}
-		if peak, err := frequency.SensitivityPeakMIMO(whole); err == nil {
-			loop.SensitivityPeak = peak
-		}
+		d.wholeSensitivity(loop, l)
 	}
 	if loop.Input < 0 {
 		nan := math.NaN()

@@ -1,6 +1,7 @@
 package estimator
 
 import (
+	"context"
 	"errors"
 	"fmt"
 	"math/cmplx"
@@ -24,7 +25,7 @@ func (d *Designer) Place(wanted []complex128, prev *Design) (*Design, error) {
 	if err != nil {
 		return nil, err
 	}
-	out, err := d.Complete(quick)
+	out, err := d.Complete(context.Background(), quick)
 	if err != nil {
 		return nil, err
 	}

@@ -94,8 +94,12 @@ func (w *work) stages(ctx context.Context, r desk.Request, send func(desk.Answer
 		return
 	}
 	a.Stage = desk.Traced
-	if whole, err := w.complete(r, a.Design); err != nil {
-		a.Err = err
+	whole, failed := w.complete(ctx, r, a.Design)
+	if ctx.Err() != nil {
+		return
+	}
+	if failed != nil {
+		a.Err = failed
 	} else {
 		a.Design = whole
 	}
@@ -137,12 +141,12 @@ func (w *work) judge(r desk.Request) (desk.Answer, error) {
 }
 
 // complete adds the figures that the first stage left out.
-func (w *work) complete(r desk.Request, quick *estimator.Design) (*estimator.Design, error) {
+func (w *work) complete(ctx context.Context, r desk.Request, quick *estimator.Design) (*estimator.Design, error) {
 	d, err := w.designer(estimator.Options{Form: r.Form, Method: r.Method})
 	if err != nil {
 		return nil, err
 	}
-	return d.Complete(quick)
+	return d.Complete(ctx, quick)
 }
 
 func (w *work) designer(o estimator.Options) (*estimator.Designer, error) {
