@@ -38,7 +38,7 @@ func (f *Stress) Lines(w int, t *theme.Theme) []string {
 		p.prose(2, n, theme.Faint)
 	}
 	for _, x := range e.Failures {
-		p.prose(2, spelled(x.Case)+" could not be judged: "+x.Err.Error(), theme.Trouble)
+		p.prose(2, CaseText(x.Case)+" could not be judged: "+x.Err.Error(), theme.Trouble)
 	}
 	p.prose(2, tolerance.Caution, theme.Text)
 	return p.lines(t)
@@ -70,7 +70,7 @@ func (p *page) state(f *Stress, g *theme.Glyphs) {
 	}
 	if e != nil {
 		if worst, ok := e.Stress(); ok {
-			p.row(span{x: 2, text: "hardest case", ink: theme.Faint}, span{x: 16, text: canvas.Cut(spelled(worst), p.w-16, g.Ellipsis), ink: theme.Title})
+			p.row(span{x: 2, text: "hardest case", ink: theme.Faint}, span{x: 16, text: canvas.Cut(CaseText(worst), p.w-16, g.Ellipsis), ink: theme.Title})
 		}
 	}
 	if f.Truth != "" {
@@ -95,7 +95,7 @@ func (p *page) stability(f *Stress, g *theme.Glyphs) {
 		if i == few {
 			break
 		}
-		p.row(span{x: 4, text: canvas.Cut(spelled(c), p.w-4, g.Ellipsis), ink: theme.Faint})
+		p.row(span{x: 4, text: canvas.Cut(CaseText(c), p.w-4, g.Ellipsis), ink: theme.Faint})
 	}
 }
 
@@ -125,7 +125,7 @@ func (p *page) envelope(e *tolerance.Envelope, g *theme.Glyphs) {
 		if m.Figure == tolerance.Stability && e.Unstable > 0 {
 			ink = theme.Trouble
 		}
-		lines := canvas.Wrap(spelled(m.Case), p.w-at)
+		lines := canvas.Wrap(CaseText(m.Case), p.w-at)
 		text := strings.Join(lines, " ")
 		if text == before && len(m.Case.Truth()) > 0 {
 			lines = []string{"the same"}
@@ -157,8 +157,8 @@ func (p *page) envelope(e *tolerance.Envelope, g *theme.Glyphs) {
 	}
 }
 
-// spelled names a case.
-func spelled(c tolerance.Case) string {
+// CaseText names a case in the characters of the screen.
+func CaseText(c tolerance.Case) string {
 	return plainMinus(c.String())
 }
 
