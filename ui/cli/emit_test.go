@@ -4,9 +4,12 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"encoding/json"
+	"fmt"
+	"math"
 	"os"
 	"os/exec"
 	"path/filepath"
+	"strconv"
 	"strings"
 	"testing"
 
@@ -80,12 +83,7 @@ func TestEmittedFilesAreAsListed(t *testing.T) {
 // The printed line compiles and runs the self-test, which passes, and fails where
 // the estimator was changed.
 func TestEmittedCodeTestsItself(t *testing.T) {
-	if _, err := exec.LookPath("gcc"); err != nil {
-		if os.Getenv("POLEWRIGHT_REQUIRE_TOOLS") == "1" {
-			t.Fatal("gcc is needed to check the emitted C and is not installed")
-		}
-		t.Skip("gcc is not installed: the emitted C is not compiled here")
-	}
+	needGCC(t)
 	current := estimator.Options{Form: estimator.Current}
 	for _, c := range []struct {
 		plant     string
@@ -157,4 +155,91 @@ func saveBench(t *testing.T, b *desk.Bench, entries ...sample.Entry) string {
 		t.Fatal(err)
 	}
 	return file
+}
+
+// The emitted code over a log gives what replay writes for that log: what is judged
+// is what runs.
+func TestEmittedCodeReplaysALog(t *testing.T) {
+	needGCC(t)
+	const steps = 400
+	var log, samples strings.Builder
+	log.WriteString("t,force command,draw-wire encoder\n")
+	for k := range steps {
+		u := 3100 + 200*math.Sin(0.05*float64(k))
+		y := strconv.FormatFloat(1.5+0.04*math.Cos(0.03*float64(k)), 'g', -1, 64)
+		if k%50 > 45 {
+			y = "NaN"
+		}
+		fmt.Fprintf(&log, "%.2f,%v,%s\n", 0.01*float64(k), u, y)
+		fmt.Fprintf(&samples, "%v %s\n", u, y)
+	}
+	file := savedSession(t, "lift", sample.Entry{Poles: "-18±18i, -22"}, sample.Entry{Poles: "floor", Options: estimator.Options{Form: estimator.Current}})
+	for candidate, later := range map[string]int{"A": 1, "B": 0} { // prediction form speaks of the next sample
+		dir := t.TempDir()
+		out := filepath.Join(dir, "out.csv")
+		must(t, "replay", file, "--candidate", candidate, "--log", write(t, dir, "log.csv", log.String()), "--out", out)
+		want := table(t, out)
+		doc := emitted(t, file, candidate, "c99", dir)
+		prefix := strings.TrimSuffix(doc.Files[0].Name, ".h")
+		driver := write(t, dir, "driver.c", strings.ReplaceAll(`#include <stdio.h>
+#include "PRE.h"
+int main(void)
+{
+    PRE_estimator s;
+    double u, y;
+    PRE_init(&s);
+    while (scanf("%lf %lf", &u, &y) == 2) {
+        PRE_step(&s, &u, &y, 0);
+        printf("%.17g %.17g %.17g %.17g\n", s.estimate[0], s.estimate[1], s.estimate[2], s.innovation[0]);
+    }
+    return 0;
+}
+`, "PRE", prefix))
+		program := filepath.Join(dir, "driver")
+		if text, err := exec.Command("gcc", "-std=c99", "-Wall", "-Wextra", "-Werror", "-o", program, driver).CombinedOutput(); err != nil {
+			t.Fatalf("%v\n%s", err, text)
+		}
+		run := exec.Command(program)
+		run.Stdin = strings.NewReader(samples.String())
+		text, err := run.Output()
+		if err != nil {
+			t.Fatal(err)
+		}
+		lines := strings.Split(strings.TrimSpace(string(text)), "\n")
+		if len(lines) != steps {
+			t.Fatalf("%d lines", len(lines))
+		}
+		for k, line := range lines {
+			var have [4]float64
+			if _, err := fmt.Sscan(line, &have[0], &have[1], &have[2], &have[3]); err != nil {
+				t.Fatal(err)
+			}
+			for i, name := range []string{"height", "climb speed", "cable force", "draw-wire encoder innovation"} {
+				row := k
+				if i < 3 {
+					row += later
+				}
+				if row == steps {
+					continue
+				}
+				v := want[name][row]
+				if v != v { // a lost sample's
+					v = 0
+				}
+				if !(math.Abs(have[i]-v) <= 1e-12*math.Max(1, math.Abs(v))) {
+					t.Fatalf("candidate %s, step %d, %s: %v, replayed %v", candidate, k, name, have[i], v)
+				}
+			}
+		}
+	}
+}
+
+func needGCC(t *testing.T) {
+	t.Helper()
+	if _, err := exec.LookPath("gcc"); err != nil {
+		if os.Getenv("POLEWRIGHT_REQUIRE_TOOLS") == "1" {
+			t.Fatal("gcc is needed to check the emitted C and is not installed")
+		}
+		t.Skip("gcc is not installed: the emitted C is not compiled here")
+	}
 }
