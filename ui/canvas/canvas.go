@@ -11,11 +11,12 @@ import (
 	"polewright/ui/theme"
 )
 
-// cell is one character and its ink. The right half of a wide character holds
-// the rune 0.
+// cell is one character, its ink, and the shade behind it. The right half of a
+// wide character holds the rune 0.
 type cell struct {
-	r   rune
-	ink theme.Ink
+	r     rune
+	ink   theme.Ink
+	shade uint8
 }
 
 // Canvas is a grid of cells; its zero value has none. Drawing outside is
@@ -51,7 +52,14 @@ func (c *Canvas) Set(x, y int, r rune, ink theme.Ink) {
 	if x+1 < c.W && c.cells[y*c.W+x+1].r == 0 {
 		c.cells[y*c.W+x+1].r = ' '
 	}
-	*at = cell{r, ink}
+	at.r, at.ink = r, ink
+}
+
+// Shade puts a shade of the theme behind a cell.
+func (c *Canvas) Shade(x, y int, level uint8) {
+	if x >= 0 && y >= 0 && x < c.W && y < c.H {
+		c.cells[y*c.W+x].shade = level
+	}
 }
 
 // At returns what is drawn at a cell.
@@ -114,13 +122,13 @@ func (c *Canvas) Lines(t *theme.Theme, trim bool) []string {
 
 func (c *Canvas) line(t *theme.Theme, row []cell, trim bool) string {
 	if trim {
-		for len(row) > 0 && row[len(row)-1].r == ' ' {
+		for len(row) > 0 && row[len(row)-1].r == ' ' && (row[len(row)-1].shade == 0 || !t.Backed) {
 			row = row[:len(row)-1]
 		}
 	}
 	c.buf = c.buf[:0]
 	plain := t.Open(theme.Text)
-	now := plain
+	front, shade := plain, uint8(0)
 	for _, cell := range row {
 		if t.ASCII && (cell.r == 0 || cell.r > '~') {
 			cell.r = '?'
@@ -129,14 +137,22 @@ func (c *Canvas) line(t *theme.Theme, row []cell, trim bool) string {
 			continue
 		}
 		if cell.r != ' ' { // a blank has no ink: the run goes on
-			if open := t.Open(cell.ink); open != now {
-				c.buf = append(c.buf, open...)
-				now = open
+			open := t.Open(cell.ink)
+			if cell.shade > 0 {
+				open = t.OpenOn(cell.ink)
 			}
+			if open != front {
+				c.buf = append(c.buf, open...)
+				front, shade = open, 0
+			}
+		}
+		if cell.shade != shade && t.Backed {
+			c.buf = append(c.buf, t.Shade(cell.shade)...)
+			shade = cell.shade
 		}
 		c.buf = utf8.AppendRune(c.buf, cell.r)
 	}
-	if now != plain {
+	if front != plain || shade != 0 {
 		c.buf = append(c.buf, plain...)
 	}
 	return string(c.buf)

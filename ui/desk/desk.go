@@ -86,6 +86,7 @@ type View struct {
 	Selected int     `json:"selected"` // target pole
 	Trace    int     `json:"trace"`    // state shown
 	Focus    string  `json:"focus"`    // open view, empty for none
+	MapOff   bool    `json:"map_off,omitempty"`
 }
 
 // Work is what a session file keeps and what the screen starts from.

@@ -11,7 +11,7 @@ type Map struct {
 	FarLeft, FarRight, FarUp, FarDown       key.Binding
 	Place, Pattern, Floor, Faster, Slower   key.Binding
 	Undo, Redo                              key.Binding
-	Plane, ZoomIn, ZoomOut, Fit             key.Binding
+	Plane, ZoomIn, ZoomOut, Fit, Map        key.Binding
 	Method, Form                            key.Binding
 	NextState, PreviousState, Trace         key.Binding
 	Keep, Recall, Compare, Readings         key.Binding
@@ -46,6 +46,7 @@ func Default() Map {
 		Undo:     bind("u", "undo (a held key is one step)", "u"),
 		Redo:     bind("U Ctrl+R", "redo", "U", "ctrl+r"),
 		Plane:    bind("z", "show the other plane: s or z", "z"),
+		Map:      bind("M", "shade the plane by the noise that the held pole would give there, hatched where a limit breaks", "M"),
 		ZoomIn:   bind("+", "zoom in", "+"),
 		ZoomOut:  bind("-", "zoom out", "-"),
 		Fit:      bind("0", "fit plane and traces to what there is", "0"),
@@ -91,7 +92,7 @@ func (m Map) Groups() []Group {
 	return []Group{
 		{"Hold and move", []key.Binding{m.Next, m.Previous, m.Left, m.Down, m.Up, m.Right, m.FarLeft, m.FarDown, m.FarUp, m.FarRight}},
 		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Undo, m.Redo, m.Form, m.Method}},
-		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.NextState, m.PreviousState, m.Trace, m.Readings}},
+		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.Map, m.NextState, m.PreviousState, m.Trace, m.Readings}},
 		{"Candidates", []key.Binding{m.Keep, m.Recall, m.Compare}},
 		{"Session", []key.Binding{m.Save, m.Help, m.Leave, m.Quit, m.Suspend}},
 		{"In a view", []key.Binding{m.ViewUp, m.ViewDown, m.PageUp, m.PageDown, m.ViewLeft, m.ViewRight, m.Choose, m.Delete, m.Close}},

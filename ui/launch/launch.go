@@ -20,6 +20,7 @@ import (
 	"polewright/ui/screen"
 	"polewright/ui/session"
 	"polewright/ui/solver"
+	"polewright/ui/survey"
 	"polewright/ui/theme"
 )
 
@@ -69,9 +70,15 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 		program.Send(screen.AnswerMsg{Answer: a})
 	})
 	defer work.Close()
+	surveyor := survey.New(o.Work.Bench, func(a survey.Answer) {
+		<-ready
+		program.Send(screen.MapMsg{Answer: a})
+	})
+	defer surveyor.Close()
 	first := screen.New(screen.Config{
 		Work:    o.Work,
 		Ask:     work.Ask,
+		Map:     surveyor.Ask,
 		Save:    store.save,
 		Resolve: (&resolver{bench: o.Work.Bench}).resolve,
 		Theme:   o.Theme,

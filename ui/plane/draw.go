@@ -99,7 +99,7 @@ func (p *pen) text(col, row int, s string) bool {
 
 // dot is part of a curve.
 func (p *pen) dot(v complex128) {
-	p.set(p.w.Column(real(v)), p.w.Row(imag(v)), p.g.Dot, theme.Faint)
+	p.set(p.w.Column(real(v)), p.w.Row(imag(v)), p.g.Dot, theme.Grid)
 }
 
 // ticks are the distances of labels along the axes.
@@ -141,8 +141,8 @@ func (p *pen) rays() {
 				top = row + 1
 				continue
 			}
-			p.set(col, row, p.g.Dot, theme.Faint)
-			p.set(col, p.w.H-1-row+(p.w.H+1)%2, p.g.Dot, theme.Faint)
+			p.set(col, row, p.g.Dot, theme.Grid)
+			p.set(col, p.w.H-1-row+(p.w.H+1)%2, p.g.Dot, theme.Grid)
 		}
 		if im := float64(p.w.H/2-top) * p.w.DY; im > 0 {
 			label := strconv.FormatFloat(zeta, 'g', 2, 64)
@@ -167,7 +167,7 @@ func (p *pen) limit() {
 			continue
 		}
 		for col := range p.w.W {
-			p.set(col, row, p.g.Limit, theme.Faint)
+			p.set(col, row, p.g.Limit, theme.Grid)
 		}
 		if sign > 0 {
 			p.c.Text(p.x+2, p.y+row, " sampling limit ", theme.Faint)
@@ -199,12 +199,12 @@ func (p *pen) circle() {
 func (p *pen) axes() {
 	mid, axis := p.w.H/2, p.w.Column(0)
 	for col := range p.w.W {
-		p.set(col, mid, p.g.Rule, theme.Faint)
+		p.set(col, mid, p.g.Rule, theme.Grid)
 	}
 	for row := range p.w.H {
-		p.set(axis, row, p.g.Vertical, theme.Faint)
+		p.set(axis, row, p.g.Vertical, theme.Grid)
 	}
-	p.set(axis, mid, p.g.Cross, theme.Faint)
+	p.set(axis, mid, p.g.Cross, theme.Grid)
 	dx, dy := p.ticks()
 	for _, im := range values(-p.w.Half(), p.w.Half(), dy) {
 		if row := p.w.Row(im); row != mid && row != mid+1 {
@@ -216,7 +216,7 @@ func (p *pen) axes() {
 			continue
 		}
 		col, s := p.w.Column(re), label(re, dx)
-		p.set(col, mid, p.g.Cross, theme.Faint)
+		p.set(col, mid, p.g.Cross, theme.Grid)
 		p.text(col-len(s)/2, mid+1, s)
 	}
 }

@@ -231,21 +231,26 @@ var limitWords = map[string]struct {
 	"phase_margin_deg": {"phase margin", "deg", true}, "delay_margin_s": {"delay margin", "s", true},
 }
 
+// LimitWords is the name of a limit in words.
+func LimitWords(name string) string {
+	if l, ok := limitWords[name]; ok {
+		return l.words
+	}
+	return strings.NewReplacer("_", " ", ".", " ").Replace(name)
+}
+
 const limitsTitle = "limits"
 
 func limits(f Facts, g *theme.Glyphs) Section {
 	s := Section{Title: limitsTitle, Figures: true}
 	over := 0
 	for _, l := range f.Limits {
-		words, ok := limitWords[l.Name]
-		if !ok {
-			words.words = strings.NewReplacer("_", " ", ".", " ").Replace(l.Name)
-		}
+		words := limitWords[l.Name]
 		relation := g.AtMost
 		if words.least {
 			relation = g.AtLeast
 		}
-		row := Row{Label: words.words, Value: Figure(l.Value, l.Limit, g), Unit: relation + " " + strconv.FormatFloat(l.Limit, 'g', 4, 64), Tail: "ok"}
+		row := Row{Label: LimitWords(l.Name), Value: Figure(l.Value, l.Limit, g), Unit: relation + " " + strconv.FormatFloat(l.Limit, 'g', 4, 64), Tail: "ok"}
 		if !l.Met {
 			row.Tail, row.Ink = "OVER", theme.Trouble
 			if words.least {

@@ -60,6 +60,7 @@ func (m *Model) bindings() map[string]action {
 	plain(k.Form, func(m *Model) tea.Cmd { return m.toggleForm() })
 	plain(k.Method, func(m *Model) tea.Cmd { return m.toggleMethod() })
 	plain(k.Plane, func(m *Model) tea.Cmd { return m.togglePlane() })
+	plain(k.Map, func(m *Model) tea.Cmd { return m.toggleMap() })
 	plain(k.ZoomIn, func(m *Model) tea.Cmd { return m.zoom(-2) })
 	plain(k.ZoomOut, func(m *Model) tea.Cmd { return m.zoom(2) })
 	plain(k.Fit, func(m *Model) tea.Cmd { return m.fitAll() })

@@ -13,6 +13,7 @@ import (
 	"polewright/ui/desk"
 	"polewright/ui/keys"
 	"polewright/ui/plane/targets"
+	"polewright/ui/survey"
 	"polewright/ui/theme"
 	"polewright/ui/traces"
 )
@@ -25,6 +26,11 @@ type Config struct {
 	// Ask takes a request for the background and returns at once. Answers come
 	// back as AnswerMsg.
 	Ask func(desk.Request)
+
+	// Map takes a request for a map of the plane and returns at once; one without
+	// cells stops the work in progress. Answers come back as MapMsg. Without it
+	// there is no map.
+	Map func(survey.Request)
 
 	// Save writes a session file. Without replace it fails with an error that is
 	// fs.ErrExist where the file exists; with replace it may do so too, where the
@@ -69,6 +75,7 @@ func New(cfg Config) Model {
 		trace: max(w.View.Trace, 0), plane: targets.S, axes: map[axisKey]traces.Axis{},
 		message: cfg.Message,
 	}
+	m.plot.off = w.View.MapOff
 	m.actions = m.bindings()
 	if w.View.Plane == "z" && m.period() > 0 || w.View.Plane == "" && m.period() > 0 && !w.Bench.Plant.Continuous {
 		m.plane = targets.Z
@@ -112,7 +119,7 @@ func (m Model) Work() desk.Work {
 	}
 	w.Candidates = append([]desk.Candidate(nil), m.candidates...)
 	w.Current = m.current
-	w.View = desk.View{Plane: string(byte(m.plane)), Zoom: m.half, Selected: m.now.held, Trace: m.trace, Focus: viewNames[m.open]}
+	w.View = desk.View{Plane: string(byte(m.plane)), Zoom: m.half, Selected: m.now.held, Trace: m.trace, Focus: viewNames[m.open], MapOff: m.plot.off}
 	return w
 }
 

@@ -139,6 +139,7 @@ type Model struct {
 	drawn  [4][]string
 	frame  string
 	slow   trickle
+	plot   mapping
 }
 
 func (m *Model) period() float64 { return m.cfg.Work.Bench.Model.Period }

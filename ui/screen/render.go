@@ -75,6 +75,7 @@ func (m *Model) body(b *strings.Builder) {
 		c.Reset(l.left, l.plane.y+l.plane.h)
 		m.planeTitle(c)
 		plane.Draw(c, 0, l.plane.y, m.window, m.marks(), m.theme)
+		plane.Shade(c, 0, l.plane.y, m.window, m.plot.tones, m.theme)
 		m.drawn[planeCanvas] = c.Lines(m.theme, false)
 	}
 	if m.dirty&tracesRegion != 0 {
@@ -259,6 +260,7 @@ func (m *Model) status() string {
 		}
 		c.Text(0, 0, canvas.Cut(m.message, m.w, g.Ellipsis), ink)
 	}
+	m.mapLine(c)
 	first := c.Lines(m.theme, true)[0]
 	c = m.line()
 	if m.prompt != nil && m.message != "" { // why what was typed is refused

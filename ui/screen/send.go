@@ -17,14 +17,24 @@ import (
 const longBlank = 11
 
 // shorten replaces long runs of blanks by ECH and CUF (ECMA-48), which leave the
-// same cells blank.
+// same cells blank. Blanks on a shade are sent as such: terminals differ in what
+// erasing leaves behind them.
 func shorten(frame string) string {
 	if !strings.Contains(frame, strings.Repeat(" ", longBlank)) {
 		return frame
 	}
 	b := make([]byte, 0, len(frame))
+	shaded := false
 	for i := 0; i < len(frame); {
-		if frame[i] != ' ' {
+		if frame[i] == '\x1b' {
+			switch rest := frame[i:]; {
+			case strings.HasPrefix(rest, "\x1b[48;"):
+				shaded = true
+			case strings.HasPrefix(rest, "\x1b[49m"), strings.HasPrefix(rest, "\x1b[0"), strings.HasPrefix(rest, "\x1b[m"):
+				shaded = false
+			}
+		}
+		if frame[i] != ' ' || shaded {
 			b = append(b, frame[i])
 			i++
 			continue

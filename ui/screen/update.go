@@ -28,11 +28,16 @@ func (m Model) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
 	var cmd tea.Cmd
 	switch msg := msg.(type) {
 	case tea.KeyMsg:
+		m.mapKey()
 		cmd = m.key(msg)
 	case escapeMsg:
 		cmd = m.escapeTimeout(msg)
 	case AnswerMsg:
 		cmd = m.answer(&msg.Answer)
+	case MapMsg:
+		m.mapAnswer(&msg.Answer)
+	case mapMsg:
+		m.mapTick()
 	case startMsg:
 		cmd = m.ask()
 	case lateMsg:
@@ -52,8 +57,9 @@ func (m Model) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
 	default:
 		return m, nil
 	}
+	due := m.mapDue()
 	m.refresh()
-	return m, tea.Batch(cmd, m.catchUp())
+	return m, tea.Batch(cmd, due, m.catchUp())
 }
 
 // View returns the frame that the last Update left.

@@ -32,6 +32,9 @@ type Request struct {
 	// plane, row by row; NaN where the held pole cannot go.
 	Width, Height int
 	Cells         []complex128
+	// Known is what an earlier map of the same cells found, nil for nothing: what
+	// is known is not looked at again.
+	Known []Spot
 	// From is the design in hand, whose branch the gains follow.
 	From *estimator.Design
 }
@@ -101,7 +104,8 @@ func quicker(b *desk.Bench) *desk.Bench {
 	return &c
 }
 
-// Ask hands over a request and returns at once.
+// Ask hands over a request and returns at once. One without cells only stops the
+// work in progress.
 func (s *Surveyor) Ask(r Request) { s.box.Ask(r) }
 
 // Close cancels the work in progress and waits for its end.
@@ -116,6 +120,9 @@ func (s *Surveyor) serve(ctx context.Context, r Request) {
 			s.notify(a)
 		}
 	}
+	if len(r.Cells) == 0 {
+		return
+	}
 	if r.Width < 1 || r.Height < 1 || len(r.Cells) != r.Width*r.Height {
 		send(Answer{Err: errGrid})
 		return
@@ -127,6 +134,7 @@ func (s *Surveyor) serve(ctx context.Context, r Request) {
 		}
 	}
 	spots := make([]Spot, len(r.Cells))
+	copy(spots, r.Known)
 	for stride := coarsest; stride >= 1; stride /= 2 {
 		if err := s.level(ctx, r, spots, stride); err != nil {
 			send(Answer{Err: err})

@@ -10,6 +10,11 @@ type Glyphs struct {
 	Cursor                            rune
 	Ellipsis                          rune
 
+	// Grain is what stands for the shades where they are no colours: a cell has the
+	// first or the second mark by turns. Hatch is a stroke of hatching.
+	Grain [Shades][2]rune
+	Hatch rune
+
 	Truth    Line
 	Estimate Line
 	Band     rune
@@ -27,6 +32,7 @@ var unicode = Glyphs{
 	Target: '○', Selected: '●', Fixed: '■', Plant: '×', Controller: '△', Floor: '◇',
 	Rule: '─', Vertical: '│', Cross: '┼', Dot: '·', Limit: '╌',
 	Left: '◂', Right: '▸', Up: '▴', Down: '▾', Cursor: '▏', Ellipsis: '…',
+	Grain: [Shades][2]rune{{' ', ' '}, {'░', ' '}, {'░', '░'}, {'▒', '░'}, {'▒', '▒'}}, Hatch: '╱',
 	Truth:     Line{"─", "│", "╭", "╮", "╰", "╯", "╶", "╴", "───"},
 	Estimate:  Line{"•", "•", "•", "•", "•", "•", "•", "•", "•••"},
 	Band:      '┄',
@@ -37,6 +43,7 @@ var ascii = Glyphs{
 	Target: 'o', Selected: '@', Fixed: '#', Plant: 'x', Controller: '^', Floor: 'v',
 	Rule: '-', Vertical: '|', Cross: '+', Dot: '.', Limit: '=',
 	Left: '<', Right: '>', Up: '^', Down: 'v', Cursor: '_', Ellipsis: '~',
+	Grain: [Shades][2]rune{{' ', ' '}, {',', ' '}, {':', ' '}, {':', ':'}, {'%', ':'}}, Hatch: '/',
 	Truth:     Line{"-", "|", ".", ".", "'", "'", "-", "-", "---"},
 	Estimate:  Line{"*", "*", "*", "*", "*", "*", "*", "*", "***"},
 	Band:      '~',

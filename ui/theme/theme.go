@@ -5,6 +5,7 @@ package theme
 
 import (
 	"io"
+	"strconv"
 	"strings"
 
 	"github.com/charmbracelet/lipgloss"
@@ -25,8 +26,14 @@ const (
 	Hold
 	// Trouble is the other one: a limit broken, a refusal.
 	Trouble
+	// Grid is Faint for lines that only guide the eye; on a shade it stays behind
+	// the labels.
+	Grid
 	inks
 )
+
+// Shades are the steps of grey behind cells, from none to the deepest.
+const Shades = 5
 
 // Depth is how many colours the terminal shows.
 type Depth uint8
@@ -53,8 +60,13 @@ type Options struct {
 // Theme is immutable.
 type Theme struct {
 	Glyphs Glyphs
-	ASCII  bool         // a character of someone's text that is not 7-bit is shown as ?
+	ASCII  bool // a character of someone's text that is not 7-bit is shown as ?
+	// Backed tells that shades are colours behind the cells; elsewhere marks of
+	// growing density, Glyphs.Grain, stand for them.
+	Backed bool
 	open   [inks]string // escape sequence that starts an ink and ends every other
+	onOpen [inks]string // the same for cells on a shade
+	shade  [Shades]string
 }
 
 // New builds a theme. It asks the terminal nothing.
@@ -84,11 +96,47 @@ func New(o Options) *Theme {
 	t.open[Hold] = opening(plain.Bold(true).Foreground(hold))
 	t.open[Trouble] = opening(plain.Foreground(trouble))
 	t.open[Faint] = opening(plain.Foreground(faint))
+	t.open[Grid] = t.open[Faint]
 	if o.Depth == NoColour { // weight is no colour
 		t.open[Title], t.open[Hold] = "\x1b[0;1m", "\x1b[0;1m"
 	}
+	t.shades(o)
 	return t
 }
+
+// greys of the 256-colour palette behind cells and, for labels and lines on them,
+// before them. A label keeps a contrast of 4.5 on the deepest shade.
+var greys = map[bool]struct {
+	behind      [Shades]int
+	label, line int
+}{
+	true:  {[Shades]int{0, 236, 238, 240, 241}, 254, 247},
+	false: {[Shades]int{0, 255, 253, 251, 249}, 238, 244},
+}
+
+// shades fills in what cells on a shade need.
+func (t *Theme) shades(o Options) {
+	t.Backed = o.Depth >= Many
+	t.onOpen = t.open
+	if !t.Backed {
+		return
+	}
+	g := greys[o.Dark]
+	t.shade[0] = "\x1b[49m"
+	for i := 1; i < Shades; i++ {
+		t.shade[i] = "\x1b[48;5;" + strconv.Itoa(g.behind[i]) + "m"
+	}
+	t.onOpen[Faint] = "\x1b[0;38;5;" + strconv.Itoa(g.label) + "m"
+	t.onOpen[Grid] = "\x1b[0;38;5;" + strconv.Itoa(g.line) + "m"
+}
+
+// Shade returns the escape sequence that puts a shade behind the cells that
+// follow and leaves their ink; empty where shades are no colours.
+func (t *Theme) Shade(level uint8) string { return t.shade[min(level, Shades-1)] }
+
+// OpenOn returns the escape sequence that starts an ink where it will stand on a
+// shade. It ends every shade: that of the cell is to follow.
+func (t *Theme) OpenOn(i Ink) string { return t.onOpen[i] }
 
 // opening returns the escape sequence with which a style starts, with a reset in
 // front so that inks follow each other without one.

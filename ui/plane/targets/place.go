@@ -110,3 +110,10 @@ func (s Set) Scale(k float64) (Set, error) {
 	}
 	return out, nil
 }
+
+// Own is the place of a pole in the model's own plane; false where nothing of use
+// lies there.
+func (s Set) Own(shown complex128, plane Plane) (complex128, bool) {
+	own, err := s.own(shown, plane)
+	return own, err == nil
+}
