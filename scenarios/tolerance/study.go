@@ -19,7 +19,7 @@ var ErrStudy = errors.New("no tolerance study")
 
 const (
 	defaultSamples = 200
-	maxSamples     = 1_000_000
+	maxSamples     = 100_000
 )
 
 // Study is a design and the plant it was made for.
