@@ -152,7 +152,7 @@ func pole(z *measures.Complex, key ...any) Cell {
 	case z[1] == 0:
 		c.Text = place(z[0])
 	case z[1] < 0:
-		c.Text = place(z[0]) + " − " + place(-z[1]) + "i"
+		c.Text = place(z[0]) + " - " + place(-z[1]) + "i"
 	default:
 		c.Text = place(z[0]) + " + " + place(z[1]) + "i"
 	}

@@ -28,7 +28,9 @@ type shown struct {
 	name, note string
 	design     *estimator.Design
 	limits     []scenarios.LimitResult
-	run        *scenarios.Run
+	diverged   bool    // the scenario's run
+	traces     []trace // of that run, per state of the plant
+	last       float64 // s, its end
 	doc        *measures.Document
 	designer   *estimator.Designer
 }
@@ -63,8 +65,9 @@ func Make(ctx context.Context, k *session.Kept, o Options) (*Document, error) {
 		return nil, err
 	}
 	designers := map[estimator.Options]*estimator.Designer{}
+	run := new(scenarios.Run) // one memory for all runs
 	for i := range picked {
-		s, err := judge(ctx, b, runner, designers, &picked[i])
+		s, err := judge(ctx, b, runner, run, designers, &picked[i])
 		if err != nil {
 			return nil, err
 		}
@@ -120,7 +123,7 @@ func known(k *session.Kept) string {
 	return "one of " + strings.Join(names, ", ")
 }
 
-func judge(ctx context.Context, b *desk.Bench, runner *scenarios.Runner, designers map[estimator.Options]*estimator.Designer, k *session.KeptDesign) (*shown, error) {
+func judge(ctx context.Context, b *desk.Bench, runner *scenarios.Runner, run *scenarios.Run, designers map[estimator.Options]*estimator.Designer, k *session.KeptDesign) (*shown, error) {
 	d := designers[k.Kind]
 	if d == nil {
 		var err error
@@ -136,14 +139,14 @@ func judge(ctx context.Context, b *desk.Bench, runner *scenarios.Runner, designe
 	if err != nil {
 		return nil, bad(err)
 	}
-	run, err := runner.Run(ctx, scenarios.Gain{L: design.Gain, Lf: design.GainCurrent, Form: design.Form})
-	if err != nil {
+	if err := runner.RunInto(ctx, scenarios.Gain{L: design.Gain, Lf: design.GainCurrent, Form: design.Form}, run); err != nil {
 		if ctx.Err() != nil {
 			return nil, errors.New("interrupted")
 		}
 		return nil, bad(err)
 	}
-	s := &shown{name: k.Name, note: k.Note, design: design, run: run, designer: d}
+	s := &shown{name: k.Name, note: k.Note, design: design, diverged: run.Diverged, designer: d}
+	s.traces, s.last = thinned(run, len(b.Plant.States))
 	s.limits = b.Scenario.Judge(design, b.Model, b.Plant, run)
 	s.doc = measures.Build(b.Plant.Name, b.Model, d.Analysis(), design, plane(b.Plant), s.limits)
 	return s, nil

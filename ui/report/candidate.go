@@ -78,7 +78,7 @@ func (m *maker) limits(s *shown) {
 			{Text: Digits(l.Limit), Key: fmt.Sprintf("limits.%d.limit", i)}, words(blank(l.Unit)), met})
 	}
 	m.table(t)
-	if s.run.Diverged {
+	if s.diverged {
 		m.text(Warning, "The scenario's run DIVERGED: a value went beyond 1e12 times its scale.")
 	}
 }

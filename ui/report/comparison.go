@@ -146,7 +146,7 @@ func floorPoint(s *shown) (settle, over []float64) {
 	if f == nil {
 		return nil, nil
 	}
-	d, err := s.designer.Judge(estimator.Given{L: f.Gain})
+	d, err := s.designer.QuickJudge(estimator.Given{L: f.Gain})
 	if err != nil || !d.Stable || !finite(d.Transient.Settle) || !finite(d.Noise.OverFloorRMS) {
 		return nil, nil
 	}
@@ -156,7 +156,7 @@ func floorPoint(s *shown) (settle, over []float64) {
 // speeds places the poles of a candidate slower and faster, from a third to three
 // times as fast. Large models get few points, very large ones none.
 func speeds(ctx context.Context, s *shown, m *estimator.Model) [2][]float64 {
-	points := 25
+	points := 17
 	n, _, _ := m.Dims()
 	switch {
 	case n > 30:
@@ -175,7 +175,7 @@ func speeds(ctx context.Context, s *shown, m *estimator.Model) [2][]float64 {
 		if !ok || ctx.Err() != nil {
 			continue
 		}
-		d, err := s.designer.Place(wanted, nil)
+		d, err := s.designer.QuickPlace(wanted, nil)
 		if err != nil || !finite(d.Transient.Settle) || !finite(d.Noise.OverFloorRMS) {
 			continue
 		}

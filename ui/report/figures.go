@@ -39,11 +39,14 @@ func (m *maker) polePlanes(s *shown) {
 		wide = 262
 		zPlane(c, 306, 22, 186, sets)
 	}
-	out := sPlane(c, wide, sets, period)
+	out, limited := sPlane(c, wide, sets, period)
 	legend(c, sets)
 	caption := "Poles in the s-plane, rad/s, with lines of equal damping ratio"
+	if limited {
+		caption += " and, dashed, the sampling limit"
+	}
 	if period > 0 {
-		caption += " and, dashed, the sampling limit; right: the z-plane with the unit circle and lines of equal damping ratio"
+		caption += "; right: the z-plane with the unit circle and lines of equal damping ratio"
 	}
 	caption += "."
 	if out > 0 {
@@ -75,7 +78,7 @@ func legend(c *draw.Canvas, sets []marks) {
 }
 
 // sPlane draws to the left of the canvas and returns how many places are left out.
-func sPlane(c *draw.Canvas, wide float64, sets []marks, period float64) (out int) {
+func sPlane(c *draw.Canvas, wide float64, sets []marks, period float64) (out int, limited bool) {
 	places := make([][]complex128, len(sets))
 	reach := 0.0
 	for i, s := range sets {
@@ -89,7 +92,7 @@ func sPlane(c *draw.Canvas, wide float64, sets []marks, period float64) (out int
 			}
 			places[i] = append(places[i], v)
 			if s.name == "reached" || s.name == "wanted" {
-				reach = max(reach, cmplx.Abs(v))
+				reach = max(reach, math.Abs(real(v)), 1.45*math.Abs(imag(v)))
 			}
 		}
 	}
@@ -97,16 +100,20 @@ func sPlane(c *draw.Canvas, wide float64, sets []marks, period float64) (out int
 		reach = 1
 	}
 	reach *= 1.25
-	if period > 0 { // a place of a registers's pole far to the left would hide the rest
+	if period > 0 { // the place of a register's pole far to the left would hide the rest
 		reach = min(reach, 6*math.Pi/period)
 	}
 	high := 205.0
 	p := &draw.Plot{C: c, Left: 46, Top: 20, Wide: wide - 56, High: high,
 		X: draw.Axis{Low: -reach, High: 0.25 * reach, Label: "real, rad/s"}}
+	if square := p.Wide / high; square > 1 { // room for what is above and below
+		p.X.Low, p.X.High = p.X.Low*square, p.X.High*square
+	}
 	half := (p.X.High - p.X.Low) / p.Wide * high / 2 // a circle looks round
 	p.Y = draw.Axis{Low: -half, High: half, Label: "imaginary, rad/s"}
 	damping(p, half)
 	if limit := math.Pi / period; period > 0 && limit < half {
+		limited = true
 		for _, v := range []float64{-limit, limit} {
 			x1, y := p.At(p.X.Low, v)
 			x2, _ := p.At(p.X.High, v)
@@ -124,7 +131,7 @@ func sPlane(c *draw.Canvas, wide float64, sets []marks, period float64) (out int
 			c.Mark(x, y, s.shape, s.ink)
 		}
 	}
-	return out
+	return out, limited
 }
 
 // damping draws the lines of equal damping ratio and the axes through zero.

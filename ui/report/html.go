@@ -10,6 +10,7 @@ import (
 // HTML writes the document out as one page that needs nothing else.
 func (d *Document) HTML() []byte {
 	var b strings.Builder
+	tables := 0
 	b.WriteString("<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n<meta charset=\"utf-8\">\n")
 	b.WriteString("<meta name=\"viewport\" content=\"width=device-width, initial-scale=1\">\n")
 	b.WriteString("<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; style-src 'unsafe-inline'\">\n")
@@ -22,7 +23,7 @@ func (d *Document) HTML() []byte {
 		case *Text:
 			v.html(&b)
 		case *Table:
-			v.html(&b)
+			v.html(&b, &tables)
 		case *Figure:
 			b.WriteString("<figure>\n" + v.SVG + "\n<figcaption>" + esc(v.Caption) + "</figcaption>\n</figure>\n")
 		}
@@ -67,16 +68,23 @@ func paragraphs(s string) []string {
 	return out
 }
 
-func (t *Table) html(b *strings.Builder) {
-	b.WriteString("<table>\n")
-	if t.Caption != "" {
-		b.WriteString("<caption>" + esc(t.Caption) + "</caption>\n")
+func (t *Table) html(b *strings.Builder, tables *int) {
+	label := ""
+	if t.Caption != "" { // not a <caption>, which is as narrow as its table
+		*tables++
+		id := "t" + strconv.Itoa(*tables)
+		b.WriteString("<p class=\"caption\" id=\"" + id + "\">" + esc(t.Caption) + "</p>\n")
+		label = " aria-labelledby=\"" + id + "\""
 	}
-	b.WriteString("<thead><tr>")
-	for i, h := range t.Head {
-		b.WriteString("<th scope=\"col\"" + t.class(i) + ">" + esc(h) + "</th>")
+	b.WriteString("<table" + label + ">\n")
+	if strings.Join(t.Head, "") != "" {
+		b.WriteString("<thead><tr>")
+		for i, h := range t.Head {
+			b.WriteString("<th scope=\"col\"" + t.class(i) + ">" + esc(h) + "</th>")
+		}
+		b.WriteString("</tr></thead>\n")
 	}
-	b.WriteString("</tr></thead>\n<tbody>\n")
+	b.WriteString("<tbody>\n")
 	for _, row := range t.Rows {
 		b.WriteString("<tr>")
 		for i, c := range row {
@@ -118,13 +126,14 @@ p { margin: .4em 0 .8em; orphans: 3; widows: 3; overflow-wrap: anywhere; }
 .caution { border: 1.25pt solid #1b1b1b; padding: .5em .8em; }
 .warning { border-left: 3pt double #1b1b1b; padding-left: .7em; }
 table { border-collapse: collapse; margin: .6em 0 1.3em; font-size: 9pt; line-height: 1.35; font-variant-numeric: tabular-nums lining-nums; border-top: 1pt solid #1b1b1b; border-bottom: 1pt solid #1b1b1b; }
-caption { text-align: left; font-style: italic; padding-bottom: .3em; break-after: avoid; }
+.caption { font-style: italic; font-size: 9.5pt; margin: 1em 0 .3em; break-after: avoid; }
 th, td { text-align: right; padding: .16em .7em .16em 0; vertical-align: baseline; font-weight: normal; overflow-wrap: anywhere; }
 th.w, td.w { text-align: left; }
 thead { display: table-header-group; }
 thead th { border-bottom: .5pt solid #1b1b1b; color: #444; }
 tr { break-inside: avoid; }
 strong { font-weight: bold; }
+.caption + table { margin-top: 0; }
 figure { margin: .8em 0 1.4em; break-inside: avoid; }
 figure svg { max-width: 100%; height: auto; }
 figcaption { font-size: 9pt; color: #444; margin-top: .3em; }

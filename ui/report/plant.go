@@ -122,6 +122,10 @@ func (m *maker) model() {
 			noise = append(noise, fmt.Sprintf("w%d", i+1))
 		}
 	}
+	if len(states) > maxPrinted {
+		m.text(Plain, "The model has %d states: too many for its matrices to be printed here. `design --json` with the session prints them.", len(states))
+		return
+	}
 	for _, t := range []struct {
 		name, key  string
 		rows, cols []string
@@ -138,6 +142,9 @@ func (m *maker) model() {
 		m.matrix("K, the controller u = −K x̂", "", inputs, states, measures.Matrix(k), number)
 	}
 }
+
+// maxPrinted is the most states of a model whose matrices are printed.
+const maxPrinted = 30
 
 // wide is how many columns of figures fit on a page.
 const wide = 7

@@ -18,7 +18,7 @@ const manySensors = 4
 func (m *maker) sensing() error {
 	b, o := m.bench, m.list[0].doc.Observability
 	n := len(b.Model.StateNames)
-	m.page("What the sensors see")
+	m.heading(1, "What the sensors see")
 	m.text(Plain, "The sensors see %d of %d states (rank of the observability matrix, relative tolerance %s, in scaled coordinates).", o.Rank, n, Digits(float64(o.Tolerance)))
 	own := "s"
 	head := []string{"mode (s-plane)", "sigma", ""}

@@ -105,15 +105,17 @@ type verdict struct {
 // verdicts judges a stored design on the model and on its neighbours: the first
 // is the one that counts. What does not fit together is a difference, and what is
 // left of it is judged.
-func (c *checker) verdicts(ctx context.Context, s *session.KeptDesign) ([]*verdict, []Difference, error) {
+//
+// With places only the poles are judged, and nothing is run.
+func (c *checker) verdicts(ctx context.Context, s *session.KeptDesign, places bool) ([]*verdict, []Difference, error) {
 	list, err := c.judgesOf(s.Kind)
 	if err != nil {
 		return nil, nil, err
 	}
 	given := estimator.Given{L: s.Gain, Lf: s.GainCurrent, Wanted: s.Wanted}
-	given, wrong, err := sound(list[0].designer, given)
-	if err != nil || given.L == nil && given.Lf == nil {
-		return nil, wrong, err
+	given, wrong := sound(list[0].designer, given)
+	if given.L == nil && given.Lf == nil {
+		return nil, wrong, nil
 	}
 	var out []*verdict
 	for k, j := range list {
@@ -121,30 +123,38 @@ func (c *checker) verdicts(ctx context.Context, s *session.KeptDesign) ([]*verdi
 		if k > 0 {
 			g.L, g.Lf = nudged(g.L, j.sign), nudged(g.Lf, j.sign)
 		}
-		d, err := j.designer.Judge(g)
-		if err == nil {
-			var v *verdict
-			if v, err = c.measure(ctx, j, d, k > 0); err == nil {
-				out = append(out, v)
-				continue
-			}
-		}
-		if k == 0 {
+		v, err := c.judge(ctx, j, g, k > 0, places)
+		switch {
+		case err == nil:
+			out = append(out, v)
+		case k == 0 || ctx.Err() != nil:
 			return nil, wrong, err
 		}
 	}
 	return out, wrong, nil
 }
 
+func (c *checker) judge(ctx context.Context, j *judge, g estimator.Given, aside, places bool) (*verdict, error) {
+	if places {
+		d, err := j.designer.QuickJudge(g)
+		return &verdict{design: d}, err
+	}
+	d, err := j.designer.Judge(g)
+	if err != nil {
+		return nil, err
+	}
+	return c.measure(ctx, j, d, aside)
+}
+
 // sound leaves out of a stored design what does not fit the rest of it: a current
 // gain that is no partner of the gain, poles that are not as many.
-func sound(d *estimator.Designer, g estimator.Given) (estimator.Given, []Difference, error) {
+func sound(d *estimator.Designer, g estimator.Given) (estimator.Given, []Difference) {
 	if g.L == nil && g.Lf == nil {
-		return g, []Difference{{Key: "gain", Tolerance: none}}, nil
+		return g, []Difference{{Key: "gain", Tolerance: none}}
 	}
-	_, err := d.Judge(g)
+	_, err := d.QuickJudge(g)
 	if err == nil {
-		return g, nil, nil
+		return g, nil
 	}
 	for _, try := range []struct {
 		key   string
@@ -157,11 +167,11 @@ func sound(d *estimator.Designer, g estimator.Given) (estimator.Given, []Differe
 		if try.given.L == nil && try.given.Lf == nil {
 			continue
 		}
-		if _, bad := d.Judge(try.given); bad == nil {
-			return try.given, []Difference{{Key: try.key, At: err.Error(), Tolerance: none}}, nil
+		if _, bad := d.QuickJudge(try.given); bad == nil {
+			return try.given, []Difference{{Key: try.key, At: err.Error(), Tolerance: none}}
 		}
 	}
-	return estimator.Given{}, []Difference{{Key: "gain", At: err.Error(), Tolerance: none}}, nil
+	return estimator.Given{}, []Difference{{Key: "gain", At: err.Error(), Tolerance: none}}
 }
 
 var none = measures.Number(math.NaN())
@@ -197,7 +207,7 @@ func ownPlane(m *estimator.Model) string {
 func (c *checker) candidate(ctx context.Context, s *session.KeptDesign) (*Candidate, error) {
 	out := &Candidate{Name: s.Name, Form: measures.FormName(s.Kind.Form), Method: measures.MethodName(s.Kind.Method),
 		Differences: []Difference{}, Limits: []measures.Limit{}, Warnings: []string{}, Settle: none, OverFloor: none}
-	list, wrong, err := c.verdicts(ctx, s)
+	list, wrong, err := c.verdicts(ctx, s, false)
 	if err != nil {
 		return nil, err
 	}
@@ -239,7 +249,7 @@ func (c *checker) inHand(ctx context.Context, k *session.Kept) (InHand, error) {
 		return out, nil
 	}
 	out.Checked = true
-	list, wrong, err := c.verdicts(ctx, s)
+	list, wrong, err := c.verdicts(ctx, s, true)
 	if err != nil {
 		return out, err
 	}

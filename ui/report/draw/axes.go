@@ -12,13 +12,16 @@ type Axis struct {
 	Label     string
 }
 
+// huge is beyond what is drawn: differences must not overflow.
+const huge = 1e300
+
 // Around is an axis with some air around all finite values; false where there are
 // none. An axis of no extent gets some.
 func Around(label string, lists ...[]float64) (Axis, bool) {
 	a := Axis{Low: math.Inf(1), High: math.Inf(-1), Label: label}
 	for _, l := range lists {
 		for _, v := range l {
-			if !math.IsNaN(v) && !math.IsInf(v, 0) {
+			if math.Abs(v) <= huge {
 				a.Low, a.High = min(a.Low, v), max(a.High, v)
 			}
 		}
@@ -39,7 +42,7 @@ func AroundLog(label string, lists ...[]float64) (Axis, bool) {
 	a := Axis{Low: math.Inf(1), High: 0, Log: true, Label: label}
 	for _, l := range lists {
 		for _, v := range l {
-			if v > 0 && !math.IsInf(v, 0) {
+			if v >= 1/huge && v <= huge {
 				a.Low, a.High = min(a.Low, v), max(a.High, v)
 			}
 		}

@@ -38,13 +38,16 @@ type Canvas struct {
 	b    strings.Builder
 }
 
+// shown is how much larger than in its own units a figure is shown.
+const shown = 1.3
+
 // New starts a figure of that size.
 func New(w, h float64) *Canvas { return &Canvas{w: w, h: h} }
 
 // SVG is the whole element. title is what is read out in its place.
 func (c *Canvas) SVG(title string) string {
-	w, h := num(c.w), num(c.h)
-	return `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 ` + w + ` ` + h + `" width="` + w + `" height="` + h +
+	return `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 ` + num(c.w) + ` ` + num(c.h) +
+		`" width="` + num(shown*c.w) + `" height="` + num(shown*c.h) +
 		`" role="img" aria-label="` + Escape(title) + `" font-family="Helvetica, Arial, sans-serif" font-size="9">` + "\n" + c.b.String() + "</svg>"
 }
 
