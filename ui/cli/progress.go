@@ -5,6 +5,8 @@ import (
 	"io"
 	"os"
 	"time"
+
+	"polewright/ui/quiet"
 )
 
 // progress reads a long file and says on a terminal how far it is, as one line of
@@ -27,6 +29,7 @@ const (
 
 // newProgress shows nothing unless out is a terminal that can go back in its line.
 func newProgress(out io.Writer, src io.ReadSeeker, size int64) *progress {
+	quiet.Restore() // the TERM that the user has
 	p := &progress{src: src, size: size, next: time.Now().Add(progressAfter)}
 	if f, ok := out.(*os.File); ok && size > 0 && os.Getenv("TERM") != "dumb" {
 		if info, err := f.Stat(); err == nil && info.Mode()&os.ModeCharDevice != 0 {

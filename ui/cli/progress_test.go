@@ -3,9 +3,14 @@ package cli
 import (
 	"bytes"
 	"io"
+	"os"
 	"strings"
 	"testing"
 	"time"
+
+	"github.com/creack/pty"
+
+	"polewright/ui/quiet"
 )
 
 // A file that is not a terminal is left in peace; the reader works all the same.
@@ -51,5 +56,34 @@ func TestProgressIsWrittenOverAndCleared(t *testing.T) {
 	before := out.Len()
 	if _, err := p.Read(make([]byte, 5)); err != nil || out.Len() != before {
 		t.Errorf("%v, %d bytes more", err, out.Len()-before)
+	}
+}
+
+// On a terminal it shows, also where the program hid TERM while it started.
+func TestProgressOnATerminal(t *testing.T) {
+	quiet.Restore()
+	if os.Getenv("TERM") == "dumb" {
+		t.Skip("TERM is dumb: nothing is shown here")
+	}
+	master, terminal, err := pty.Open()
+	if err != nil {
+		t.Skip("no pseudo-terminal here")
+	}
+	defer master.Close()
+	defer terminal.Close()
+	t.Setenv("TERM", "dumb") // as hidden
+	p := newProgress(terminal, strings.NewReader("12345"), 5)
+	if os.Getenv("TERM") == "dumb" {
+		t.Skip("TERM was not set: nothing was hidden")
+	}
+	p.next = time.Time{}
+	p.begin("reading")
+	if _, err := p.Read(make([]byte, 5)); err != nil {
+		t.Fatal(err)
+	}
+	got := make([]byte, 100)
+	n, err := master.Read(got)
+	if err != nil || !strings.Contains(string(got[:n]), "reading, 100 %") {
+		t.Errorf("%q, %v", got[:n], err)
 	}
 }
