@@ -35,6 +35,9 @@ func (f *Sensors) Lines(w int, t *theme.Theme) []string {
 	p.left()
 	p.modes()
 	p.shares()
+	p.blank()
+	p.prose(2, "Sigma is the smallest singular value of [A - lambda I; C] in parts of the scales; the words compare it with the mode seen best. "+
+		"A mode moves as the combination of states beside it, in parts of their scales. Of the noise, squares add up: together is the root of their sum.", theme.Faint)
 	return p.lines(t)
 }
 
@@ -249,9 +252,6 @@ func (p *sensorPage) table(seen *Seen) {
 			p.row(row...)
 		}
 	}
-	p.blank()
-	p.prose(2, "Sigma is the smallest singular value of [A - lambda I; C] in parts of the scales; the words compare it with the mode seen best. "+
-		"A mode moves as the combination of states beside it, in parts of their scales.", theme.Faint)
 }
 
 func sigmaText(v float64) string {
@@ -380,8 +380,6 @@ func (p *sensorPage) shares() {
 			span{x: column(to - from + 1), text: readings.Figure(ref, ref, p.g), right: true})
 		p.row(row...)
 	}
-	p.blank()
-	p.prose(2, "Squares add up: together is the root of their sum.", theme.Faint)
 }
 
 // Shares splits the noise of state i of a design: the standard deviation that

@@ -136,11 +136,12 @@ func (p *tradePlot) heading(w int) {
 	}
 	x = p.c.Text(x, 0, strings.Repeat(p.g.Estimate.Horizontal, 3)+" "+word("speeds", "all speeds together"), scaling) + 3
 	x = p.c.Text(x, 0, strings.Repeat(string(p.g.Dot), 3)+" "+word("best", "best estimators"), family) + 3
+	if p.f.Running {
+		p.c.Text(x, 0, "computing", theme.Text)
+		return
+	}
 	p.c.Set(x, 0, p.g.Selected, theme.Hold)
 	p.c.Text(x+2, 0, "in hand", theme.Faint)
-	if p.f.Running {
-		p.c.Right(w, 0, "computing", theme.Faint)
-	}
 }
 
 // axes fits the axes to what matters: the design in hand, the candidates, the
@@ -155,9 +156,6 @@ func (p *tradePlot) axes() bool {
 	see(p.f.Design)
 	for _, k := range p.f.Kept {
 		see(k.Design)
-	}
-	if point, ok := p.f.Point(); ok {
-		see(point.Design)
 	}
 	const beyond = 6 // times what must be in sight, for the curves
 	slow, fast, loud := beyond*most(settle), least(settle)/beyond, max(beyond*most(over), 10)
@@ -321,14 +319,26 @@ func (p *tradePlot) mark(d *estimator.Design, glyph rune, ink theme.Ink) {
 }
 
 // cursor marks a point where it is, unless something stands there, and on both
-// axes.
+// axes. One that is out of sight is marked at the edge.
 func (p *tradePlot) cursor(point sweep.Point) {
 	x, y, ok := p.cell(point.Settle(), point.OverFloor())
+	mark := p.g.Cross
 	if !ok {
-		return
+		fx, _ := p.ax.cell(point.Settle())
+		fy, _ := p.ay.cell(point.OverFloor())
+		switch {
+		case fx < 0:
+			mark = p.g.Left
+		case fx > float64(p.w-1):
+			mark = p.g.Right
+		default:
+			mark = p.g.Up
+		}
+		x = p.x + int(math.Round(min(max(fx, 0), float64(p.w-1))))
+		y = p.y + p.h - 1 - int(math.Round(min(max(fy, 0), float64(p.h-1))))
 	}
 	if r := p.c.At(x, y); r != p.g.Selected && (r < 'A' || r > 'Z') {
-		p.c.Set(x, y, p.g.Cross, theme.Hold)
+		p.c.Set(x, y, mark, theme.Hold)
 	}
 	p.c.Set(p.x-1, y, p.g.Right, theme.Hold)
 	p.c.Set(x, p.y+p.h, p.g.Up, theme.Hold)
