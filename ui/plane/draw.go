@@ -51,6 +51,7 @@ func Ink(k Kind) theme.Ink {
 // higher kind cover others.
 func Draw(c *canvas.Canvas, x, y int, w Window, marks []Mark, t *theme.Theme) {
 	p := pen{c: c, x: x, y: y, w: w, g: &t.Glyphs}
+	p.occupy(marks)
 	if w.Plane == targets.Z {
 		p.circle()
 	} else {
@@ -66,6 +67,7 @@ func Draw(c *canvas.Canvas, x, y int, w Window, marks []Mark, t *theme.Theme) {
 			}
 		}
 	}
+	p.counts(marks)
 }
 
 // pen draws in the coordinates of a window.
@@ -74,6 +76,69 @@ type pen struct {
 	x, y int
 	w    Window
 	g    *theme.Glyphs
+	// Cells of marks: those that stay while a pole is moved, and all. Labels make
+	// room for the former; one that a moving mark meets is left out.
+	still, marked []cell
+	aside         int // poles that have no place in this plane
+}
+
+// cell is a place in the window.
+type cell struct{ col, row int }
+
+func (p *pen) cellOf(m Mark) (cell, bool) {
+	at := cell{p.w.Column(real(m.At)), p.w.Row(imag(m.At))}
+	return at, m.Place && p.w.Inside(m.At)
+}
+
+// occupy notes where the marks will be.
+func (p *pen) occupy(marks []Mark) {
+	for _, m := range marks {
+		if at, ok := p.cellOf(m); ok {
+			p.marked = append(p.marked, at)
+			if m.Kind < Target {
+				p.still = append(p.still, at)
+			}
+		} else if !m.Place && m.Kind >= Fixed {
+			p.aside++
+		}
+	}
+}
+
+// clear tells whether n cells hold none of the marks.
+func clear(marks []cell, col, row, n int) bool {
+	for _, m := range marks {
+		if m.row == row && m.col >= col && m.col < col+n {
+			return false
+		}
+	}
+	return true
+}
+
+// counts writes the number of wanted and fixed poles beside a mark that stands
+// for several.
+func (p *pen) counts(marks []Mark) {
+	number := map[cell]int{}
+	ink := map[cell]theme.Ink{}
+	for _, m := range marks {
+		if at, ok := p.cellOf(m); ok && m.Kind >= Fixed {
+			number[at]++
+			if ink[at] != theme.Hold {
+				ink[at] = Ink(m.Kind)
+			}
+		}
+	}
+	for at, n := range number {
+		if n < 2 {
+			continue
+		}
+		text := strconv.Itoa(n)
+		for _, col := range []int{at.col + 1, at.col - len(text)} {
+			if col >= 0 && col+len(text) <= p.w.W && clear(p.marked, col, at.row, len(text)) {
+				p.c.Text(p.x+col, p.y+at.row, text, ink[at])
+				break
+			}
+		}
+	}
 }
 
 func (p *pen) set(col, row int, r rune, ink theme.Ink) {
@@ -93,7 +158,12 @@ func (p *pen) text(col, row int, s string) bool {
 			return false
 		}
 	}
-	p.c.Text(p.x+col, p.y+row, s, theme.Faint)
+	if !clear(p.still, col, row, n) {
+		return false
+	}
+	if clear(p.marked, col, row, n) {
+		p.c.Text(p.x+col, p.y+row, s, theme.Faint)
+	}
 	return true
 }
 
@@ -170,7 +240,20 @@ func (p *pen) limit() {
 			p.set(col, row, p.g.Limit, theme.Grid)
 		}
 		if sign > 0 {
-			p.c.Text(p.x+2, p.y+row, " sampling limit ", theme.Faint)
+			p.limitLabel(row)
+		}
+	}
+}
+
+// limitLabel names the sampling limit on its line, where no mark stands.
+func (p *pen) limitLabel(row int) {
+	const text = " sampling limit "
+	for col := 2; col+len(text) <= p.w.W; col += 4 {
+		if clear(p.still, col, row, len(text)) {
+			if clear(p.marked, col, row, len(text)) {
+				p.c.Text(p.x+col, p.y+row, text, theme.Faint)
+			}
+			return
 		}
 	}
 }
@@ -208,7 +291,12 @@ func (p *pen) axes() {
 	dx, dy := p.ticks()
 	for _, im := range values(-p.w.Half(), p.w.Half(), dy) {
 		if row := p.w.Row(im); row != mid && row != mid+1 {
-			p.text(axis+2, row, label(im, dy))
+			at := axis + 2
+			if axis < -1 || axis > p.w.W-4 { // the axis is out of sight
+				at = 1
+			}
+			for k := 0; k < 4 && !p.text(at+k, row, label(im, dy)); k++ {
+			}
 		}
 	}
 	for _, re := range values(p.w.X0, p.w.X0+float64(p.w.W)*p.w.DX, dx) {
@@ -217,7 +305,11 @@ func (p *pen) axes() {
 		}
 		col, s := p.w.Column(re), label(re, dx)
 		p.set(col, mid, p.g.Cross, theme.Grid)
-		p.text(col-len(s)/2, mid+1, s)
+		for _, k := range []int{0, -1, 1, -2, 2, -3, 3} { // around still marks
+			if p.text(col-len(s)/2+k, mid+1, s) {
+				break
+			}
+		}
 	}
 }
 
@@ -245,7 +337,11 @@ func (p *pen) mark(m Mark) {
 	if !m.Place { // z = 0 lies infinitely far to the left in the s-plane
 		if m.Kind >= Fixed {
 			p.set(0, p.w.H/2, p.g.Left, ink)
-			p.c.Text(p.x+1, p.y+p.w.H/2, " z = 0 ", ink)
+			text := " z = 0 "
+			if p.aside > 1 {
+				text += "x" + strconv.Itoa(p.aside) + " "
+			}
+			p.c.Text(p.x+1, p.y+p.w.H/2, text, ink)
 		}
 		return
 	}

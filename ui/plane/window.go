@@ -40,6 +40,9 @@ func Fit(points []complex128, plane targets.Plane, period float64, w, h int) Win
 		left = -1
 	}
 	rows := float64(max(h/2-1, 1))
+	if near, ok := closeUp(points, win, rows); ok && plane == targets.Z {
+		return near
+	}
 	dx := max((right-left)/float64(max(w-room-4, 4)), up/rows/2)
 	win.setCell(step(min(max(dx, 1e-12), 1e12), 0, true))
 	win.centre(complex(left, 0))
@@ -48,6 +51,25 @@ func Fit(points []complex128, plane targets.Plane, period float64, w, h int) Win
 		win.X0 = -(float64(axis) + 0.5) * win.DX
 	}
 	return win
+}
+
+// closeUp shows the points of a z-plane and z = 1, where slow poles crowd, with a
+// piece of the unit circle; false where that is hardly closer than the whole
+// circle.
+func closeUp(points []complex128, win Window, rows float64) (Window, bool) {
+	left, right, up := 1.0, 1.0, 0.0
+	for _, p := range points {
+		if math.Hypot(real(p), imag(p)) <= 3 {
+			left, right, up = min(left, real(p)), max(right, real(p)), max(up, math.Abs(imag(p)))
+		}
+	}
+	dx := max((right-left)/float64(max(win.W-room-4, 4)), up/rows/2)
+	if dx < 1e-6 || dx > 0.5/rows/2 {
+		return win, false
+	}
+	win.setCell(step(dx, 0, true))
+	win.X0 = (left+right)/2 - (float64(win.W/2)+0.5)*win.DX
+	return win, true
 }
 
 // WithHeight shows up to half above the real axis, and held.

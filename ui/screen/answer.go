@@ -17,7 +17,7 @@ import (
 // request is what to ask for the design in hand. A gain that is known is judged
 // as it stands, nothing is optimised anew behind the user's back.
 func (m *Model) request() desk.Request {
-	r := desk.Request{Gen: m.gen, Form: m.now.form, Method: m.now.method, Gain: m.now.gain, GainCurrent: m.now.gainCurrent}
+	r := desk.Request{Gen: m.gen, Form: m.now.form, Method: m.now.method, Gain: m.now.gain, GainCurrent: m.now.gainCurrent, Truth: m.truth.factors}
 	if m.now.design != nil {
 		r.Gain, r.GainCurrent = m.now.design.Gain, m.now.design.GainCurrent
 	}
@@ -89,6 +89,8 @@ func (m *Model) upToDate(a *desk.Answer) {
 		m.pending = time.Time{}
 	}
 	m.now.design, m.now.limits, m.now.run, m.now.traced = a.Design, m.limits, a.Run, a.Stage >= desk.Traced
+	m.now.on = m.truth.name
+	m.studyDue()
 	if m.keepWanted && a.Stage >= desk.Traced {
 		m.keepWanted = false
 		m.keep()
@@ -169,8 +171,16 @@ func (m *Model) movable(list []complex128) []complex128 {
 	return without(list, fixed)
 }
 
-// firstHeld is the pole to start with: the one the session held, else the first.
+// firstHeld is the pole to start with: the one the session held, else the first
+// that has a place in the plane shown.
 func (m *Model) firstHeld() int {
+	if m.cfg.Work.View.Selected == 0 {
+		for i, t := range m.now.set.List {
+			if _, ok := targets.Shown(t.At, m.plane, m.period()); ok {
+				return i
+			}
+		}
+	}
 	return min(max(m.cfg.Work.View.Selected, 0), max(len(m.now.set.List)-1, 0))
 }
 

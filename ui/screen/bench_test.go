@@ -65,15 +65,17 @@ func bench(t testing.TB, text string) *desk.Bench {
 
 // rig is a screen with a fake background, a clock and a file store.
 type rig struct {
-	t     testing.TB
-	m     tea.Model
-	asked []desk.Request
-	clock time.Time
-	saved map[string]desk.Work
-	exist map[string]bool
-	quit  bool
-	cmds  []tea.Cmd // not yet run
-	T     float64
+	t      testing.TB
+	m      tea.Model
+	asked  []desk.Request
+	clock  time.Time
+	saved  map[string]desk.Work
+	exist  map[string]bool
+	own    string // file of the session; someone else changes it where this is emptied
+	broken error  // why nothing can be saved
+	quit   bool
+	cmds   []tea.Cmd // not yet run
+	T      float64
 }
 
 type option func(*screen.Config)
@@ -86,10 +88,13 @@ func newRig(t testing.TB, poles []complex128, opts ...option) *rig {
 		Work: desk.Work{Bench: b, Poles: poles},
 		Ask:  func(q desk.Request) { r.asked = append(r.asked, q) },
 		Save: func(file string, w desk.Work, replace bool) error {
-			if r.exist[file] && !replace {
+			if r.broken != nil {
+				return r.broken
+			}
+			if r.exist[file] && !replace && file != r.own {
 				return errExist
 			}
-			r.saved[file], r.exist[file] = w, true
+			r.saved[file], r.exist[file], r.own = w, true, file
 			return nil
 		},
 		Resolve: func(text, plane string, form estimator.Form) ([]complex128, error) {

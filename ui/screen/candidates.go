@@ -19,6 +19,8 @@ func (m *Model) keepWhenReady() tea.Cmd {
 	switch {
 	case m.current != "":
 		m.say("this design is kept as " + m.current + " already")
+	case m.truth.factors != nil:
+		m.refuse("the traces run on a harder real plant: w and Enter go back to the scenario's own, to keep its figures")
 	case m.failure != nil:
 		m.refuse("there is no design to keep: " + m.failure.Error())
 	case m.freeLetter() == "":
@@ -87,7 +89,7 @@ func (m *Model) recall(i int) tea.Cmd {
 		for _, l := range c.Limits {
 			m.limits = append(m.limits, readings.Limit{LimitResult: l})
 		}
-		if c.Run != nil {
+		if c.Run != nil && m.truth.factors == nil {
 			m.run, m.runGen = c.Run, m.gen
 			m.newRun()
 			m.dirty |= tracesRegion
@@ -111,7 +113,34 @@ func (m *Model) candidateSet(c desk.Candidate) (targets.Set, error) {
 func (m *Model) openView(v view) tea.Cmd {
 	m.open, m.scroll, m.cursor = v, 0, 0
 	m.dirty |= viewRegion | statusRegion
+	m.studyDue()
 	return nil
+}
+
+// closeView leaves what is open.
+func (m *Model) closeView() {
+	m.open = none
+	m.dirty = everything
+	m.stopStudy()
+}
+
+// opener is the key that opens a view, and closes it again.
+func (m *Model) opener() key.Binding {
+	switch m.open {
+	case helpView:
+		return m.keys.Help
+	case compareView:
+		return m.keys.Compare
+	case readingsView:
+		return m.keys.Readings
+	case tradeoffView:
+		return m.keys.Tradeoff
+	case sensorsView:
+		return m.keys.Sensors
+	case stressView:
+		return m.keys.Stress
+	}
+	return key.Binding{}
 }
 
 // columns are the candidates and, where it is none of them, the design in hand.
@@ -153,13 +182,8 @@ func (m *Model) viewKey(name string) tea.Cmd {
 	m.say("")
 	page := max(m.lay.body-2, 1)
 	switch {
-	case key.Matches(s, k.Leave, k.Close):
-		m.open = none
-		m.dirty |= everything
-	case m.open == helpView && key.Matches(s, k.Help), m.open == compareView && key.Matches(s, k.Compare),
-		m.open == readingsView && key.Matches(s, k.Readings):
-		m.open = none
-		m.dirty |= everything
+	case key.Matches(s, k.Leave, k.Close, m.opener()):
+		m.closeView()
 	case key.Matches(s, k.ViewUp):
 		m.scroll--
 	case key.Matches(s, k.ViewDown):
@@ -170,6 +194,12 @@ func (m *Model) viewKey(name string) tea.Cmd {
 		m.scroll += page
 	case m.open == compareView:
 		return m.compareKey(s)
+	case m.open == tradeoffView:
+		return m.tradeoffKey(s)
+	case m.open == sensorsView:
+		return m.sensorsKey(s)
+	case m.open == stressView:
+		return m.stressKey(s)
 	}
 	return nil
 }

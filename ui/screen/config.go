@@ -13,6 +13,7 @@ import (
 	"polewright/ui/desk"
 	"polewright/ui/keys"
 	"polewright/ui/plane/targets"
+	"polewright/ui/study"
 	"polewright/ui/survey"
 	"polewright/ui/theme"
 	"polewright/ui/traces"
@@ -27,14 +28,19 @@ type Config struct {
 	// back as AnswerMsg.
 	Ask func(desk.Request)
 
+	// Study takes a request for what takes longer than a drag and returns at once;
+	// one of kind None stops the work in progress. Answers come back as StudyMsg.
+	// Without it there are no curves, worst cases and searches.
+	Study func(study.Request)
+
 	// Map takes a request for a map of the plane and returns at once; one without
 	// cells stops the work in progress. Answers come back as MapMsg. Without it
 	// there is no map.
 	Map func(survey.Request)
 
-	// Save writes a session file. Without replace it fails with an error that is
-	// fs.ErrExist where the file exists; with replace it may do so too, where the
-	// file is no longer what this session read or wrote. It runs outside Update.
+	// Save writes a session file. It fails with an error that is fs.ErrExist where
+	// the file exists and is not what this session read or wrote; the person is then
+	// asked, and replace is set once they say so. It runs outside Update.
 	Save func(file string, w desk.Work, replace bool) error
 
 	// Resolve turns a pole list or a pattern, typed in a plane ("s" or "z"), into
@@ -49,6 +55,8 @@ type Config struct {
 	// erasing and moving on, which takes fewer bytes and which every terminal does
 	// that knows ECH and CUF of ECMA-48.
 	KeepBlanks bool
+	// Unsaved says that Work is in no file: it was recovered.
+	Unsaved bool
 	// Width and Height stand in for the terminal's until it tells; 0 means 80x24.
 	Width, Height int
 	// Now is the clock, for tests; nil is time.Now.
@@ -74,6 +82,9 @@ func New(cfg Config) Model {
 		file: w.File, current: w.Current, candidates: append([]desk.Candidate(nil), w.Candidates...),
 		trace: max(w.View.Trace, 0), plane: targets.S, axes: map[axisKey]traces.Axis{},
 		message: cfg.Message,
+	}
+	if cfg.Unsaved {
+		m.revision++
 	}
 	m.plot.off = w.View.MapOff
 	m.actions = m.bindings()

@@ -194,6 +194,9 @@ func (m *Model) redo() tea.Cmd {
 // all are there; else it asks for them, with the stored gain if there is one.
 func (m *Model) restore() tea.Cmd {
 	m.now.held = min(m.now.held, max(m.holdable()-1, 0))
+	if m.now.on != m.truth.name { // its run was on another real plant
+		m.now.run, m.now.traced = nil, false
+	}
 	cmd := m.changed()
 	if m.now.design == nil {
 		return cmd

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io/fs"
 	"math/cmplx"
+	"slices"
 	"strings"
 	"testing"
 	"time"
@@ -300,6 +301,61 @@ func TestSaveNeverReplacesUnasked(t *testing.T) {
 	if !r.quit {
 		t.Error("s at the question should save and quit")
 	}
+}
+
+// A session that someone else changed is replaced only by an answer, however often
+// it is saved, and a name that was asked for does not stick before it is given.
+func TestSaveAsksAboutWhatSomeoneElseChanged(t *testing.T) {
+	r := start(t)
+	r.press("left")
+	r.reply(desk.Judged)
+	r.press("s", "enter")
+	r.run()
+	r.own = ""
+	first := r.saved["Test hoist.session.json"]
+	for range 2 {
+		r.press("left")
+		r.reply(desk.Judged)
+		r.press("s")
+		r.run()
+		r.wantShown("changed by someone else")
+		r.press("a", "esc", "s")
+		r.run()
+		r.wantShown("changed by someone else")
+		r.press("n")
+	}
+	if got := r.saved["Test hoist.session.json"]; !slices.Equal(got.Poles, first.Poles) {
+		t.Fatal("replaced without an answer")
+	}
+	r.press("s")
+	r.run()
+	r.press("r")
+	r.run()
+	r.wantShown("saved Test hoist.session.json")
+	if got := r.saved["Test hoist.session.json"]; slices.Equal(got.Poles, first.Poles) {
+		t.Error("not replaced when told to")
+	}
+}
+
+// Where a file cannot be written, the work stays and another name is offered.
+func TestSaveElsewhereAfterTrouble(t *testing.T) {
+	r := start(t)
+	r.press("left")
+	r.reply(desk.Judged)
+	r.press("s", "enter")
+	r.run()
+	r.broken = errTest
+	r.press("left")
+	r.reply(desk.Judged)
+	r.press("s")
+	r.run()
+	r.wantShown("not saved; a another name")
+	r.press("a")
+	r.broken = nil
+	r.wantShown("save as:")
+	r.press("enter") // the name that is suggested is its own
+	r.run()
+	r.wantShown("saved Test hoist.session.json")
 }
 
 func TestPasteOutsideAPromptDoesNothing(t *testing.T) {

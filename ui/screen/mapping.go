@@ -209,7 +209,7 @@ func (m *Model) promise() (text string, trouble bool) {
 		text = "here: no floor"
 	}
 	if s.Broken >= 0 && s.Broken < len(p.shown.Limits) {
-		return text + ", over the limit on " + readings.LimitWords(p.shown.Limits[s.Broken]), true
+		return text + "; limit broken: " + readings.LimitWords(p.shown.Limits[s.Broken]), true
 	}
 	return text, false
 }

@@ -31,7 +31,8 @@ type state struct {
 	design *estimator.Design
 	limits []readings.Limit
 	run    *scenarios.Run
-	traced bool // all is there
+	traced bool   // all is there
+	on     string // the real plant of the run, empty for the scenario's own
 }
 
 // runsKept bounds the states before this one that keep their run, which is the
@@ -72,10 +73,14 @@ const (
 	helpView
 	readingsView
 	compareView
+	tradeoffView
+	sensorsView
+	stressView
 )
 
 // viewNames are the views' names in a session file.
-var viewNames = [...]string{none: "", helpView: "help", readingsView: "readings", compareView: "candidates"}
+var viewNames = [...]string{none: "", helpView: "help", readingsView: "readings", compareView: "candidates",
+	tradeoffView: "trade-off", sensorsView: "sensors", stressView: "stress"}
 
 // Model is the root model. Update works on its own copy and returns it; slices
 // and maps in it are replaced, not written to, except the axes and canvases,
@@ -123,6 +128,8 @@ type Model struct {
 	prompt         *prompt
 	question       *question
 	open           view
+	research       research
+	truth          truth
 	scroll, cursor int
 
 	// the picture

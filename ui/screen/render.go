@@ -133,6 +133,12 @@ func (m *Model) viewBody(b *strings.Builder) {
 		lines = views.Readings(m.w, m.facts(), m.theme)
 	case compareView:
 		lines = views.Compare(m.w, m.cfg.Work.Bench, m.analysis, m.plane, m.columns(), m.cursor, m.theme)
+	case tradeoffView:
+		lines = m.tradeoff().Lines(m.w, m.lay.body, m.theme)
+	case sensorsView:
+		lines = m.sensors().Lines(m.w, m.theme)
+	case stressView:
+		lines = m.stress().Lines(m.w, m.theme)
 	}
 	m.scroll = max(min(m.scroll, len(lines)-m.lay.body), 0)
 	for y := range m.lay.body {
@@ -162,6 +168,11 @@ func (m *Model) header() string {
 	}
 	c.Right(m.w, 0, right, theme.Faint)
 	room := m.w - canvas.TextWidth(right) - 2
+	if m.truth.name != "" {
+		text := canvas.Cut("real plant: "+m.truth.name, min(room, m.w/2), g.Ellipsis)
+		c.Right(room, 0, text, theme.Title)
+		room -= canvas.TextWidth(text) + 2
+	}
 	bench := m.cfg.Work.Bench
 	x := c.Text(0, 0, canvas.Cut(bench.Plant.Name, min(room, m.w/2), g.Ellipsis), theme.Title) + 2
 	kind := "continuous"
@@ -259,6 +270,8 @@ func (m *Model) status() string {
 			ink = theme.Trouble
 		}
 		c.Text(0, 0, canvas.Cut(m.message, m.w, g.Ellipsis), ink)
+	case m.searching() != "":
+		c.Text(0, 0, canvas.Cut(m.searching(), m.w, g.Ellipsis), theme.Text)
 	}
 	m.mapLine(c)
 	first := c.Lines(m.theme, true)[0]
@@ -285,7 +298,7 @@ func (m *Model) drawPrompt(c *canvas.Canvas) {
 // hints are the keys that serve now, as many as fit.
 func (m *Model) hints(c *canvas.Canvas) {
 	type hint struct{ key, does string }
-	list := []hint{{"Tab", "next"}, {m.theme.Glyphs.Arrows, "move"}, {"=", "place"}, {"u", "undo"}, {"?", "help"}, {"a", "keep"}, {"v", "compare"}, {"s", "save"}, {"z", "plane"}, {"f", "floor"}, {"p", "patterns"}, {"< >", "speed"}, {"r", "readings"}}
+	list := []hint{{"Tab", "next"}, {m.theme.Glyphs.Arrows, "move"}, {"=", "place"}, {"u", "undo"}, {"?", "help"}, {"a", "keep"}, {"v", "compare"}, {"s", "save"}, {"z", "plane"}, {"f", "floor"}, {"p", "patterns"}, {"< >", "speed"}, {"r", "readings"}, {"t", "trade-off"}, {"i", "sensors"}, {"w", "worst case"}, {"F Q", "search"}}
 	switch {
 	case m.prompt != nil:
 		list = []hint{{"Enter", "takes it"}, {"Esc", "leaves it"}}
@@ -293,6 +306,12 @@ func (m *Model) hints(c *canvas.Canvas) {
 		list = []hint{{"Esc", "leaves things as they are"}}
 	case m.open == compareView:
 		list = []hint{{"h l", "choose"}, {"Enter", "recall"}, {"x", "delete"}, {"j k", "scroll"}, {"Esc", "leave"}}
+	case m.open == tradeoffView:
+		list = []hint{{"h l", "walk"}, {"H L", "far"}, {"Tab", "other curve"}, {"Enter", "take this point"}, {"Esc", "leave"}}
+	case m.open == sensorsView:
+		list = []hint{{"h l", "choose"}, {"Enter", "unplug or plug in"}, {"j k", "scroll"}, {"Esc", "leave"}}
+	case m.open == stressView:
+		list = []hint{{"Enter", "run on the hardest case, or back"}, {"j k", "scroll"}, {"Esc", "leave"}}
 	case m.open != none:
 		list = []hint{{"j k", "scroll"}, {"space b", "page"}, {"Esc", "leave"}}
 	}

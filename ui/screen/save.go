@@ -18,8 +18,14 @@ func (m *Model) save() tea.Cmd {
 		return nil
 	}
 	if m.file != "" {
-		return m.write(m.file, true)
+		return m.write(m.file, false)
 	}
+	return m.saveAs()
+}
+
+// saveAs asks for a name. The session keeps the one that it has until it is saved
+// under another.
+func (m *Model) saveAs() tea.Cmd {
 	return m.openPrompt("save as:", suggestion(m.cfg.Work.Bench.Plant.Name), func(m *Model, text string) (tea.Cmd, error) {
 		if text == "" {
 			return nil, errors.New("a name is needed, for instance bench" + ending)
@@ -89,13 +95,15 @@ func (m *Model) savedResult(msg savedMsg) tea.Cmd {
 		}
 		m.question = &question{text: text + ".  r replace   a another name   n leave", choices: map[string]func(m *Model) tea.Cmd{
 			"n": stay,
-			"r": func(m *Model) tea.Cmd { m.file = ""; return m.write(msg.file, true) },
-			"a": func(m *Model) tea.Cmd { m.file = ""; return m.save() },
+			"r": func(m *Model) tea.Cmd { return m.write(msg.file, true) },
+			"a": (*Model).saveAs,
 		}}
 		return nil
 	case msg.err != nil:
-		m.quitAfterSave = false
-		m.refuse("not saved: " + msg.err.Error())
+		m.question = &question{text: "not saved; a another name   n leave: " + msg.err.Error(), choices: map[string]func(m *Model) tea.Cmd{
+			"n": stay,
+			"a": (*Model).saveAs,
+		}}
 		return nil
 	}
 	m.file, m.saved, m.quitAfterSave = msg.file, msg.revision, false

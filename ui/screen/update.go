@@ -38,8 +38,12 @@ func (m Model) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
 		m.mapAnswer(&msg.Answer)
 	case mapMsg:
 		m.mapTick()
+	case StudyMsg:
+		cmd = m.studyAnswer(&msg.Answer)
+	case seenMsg:
+		cmd = m.seenAnswer(msg)
 	case startMsg:
-		cmd = m.ask()
+		cmd = m.begun()
 	case lateMsg:
 		cmd = m.lateTick()
 	case restMsg:
