@@ -15,6 +15,8 @@ type Map struct {
 	Method, Form                            key.Binding
 	NextState, PreviousState, Trace         key.Binding
 	Keep, Recall, Compare, Readings         key.Binding
+	Tradeoff, Sensors, Stress               key.Binding
+	Fastest, Quietest, OtherCurve           key.Binding
 	Save, Help, Leave, Quit, Suspend        key.Binding
 	ViewUp, ViewDown, ViewLeft, ViewRight   key.Binding
 	PageUp, PageDown, Delete, Choose, Close key.Binding
@@ -63,21 +65,28 @@ func Default() Map {
 		Compare:  bind("v", "candidates side by side", "v"),
 		Readings: bind("r", "all readings, gains and warnings", "r"),
 
+		Tradeoff: bind("t", "trade-off: noise against settle time, with the curves to walk along", "t"),
+		Sensors:  bind("i", "instruments: what the sensors see, and what is lost without one", "i"),
+		Stress:   bind("w", "worst case within the tolerances of the plant", "w"),
+		Fastest:  bind("F", "seek the fastest poles within the limits; Enter takes what is found, Esc stops", "F"),
+		Quietest: bind("Q", "seek the quietest poles that settle in a given time", "Q"),
+
 		Save:    bind("s Ctrl+S", "save the session", "s", "ctrl+s"),
 		Help:    bind("?", "help", "?"),
 		Leave:   bind("Esc", "leave what is open", "esc"),
 		Quit:    bind("q Ctrl+C", "quit; asks if something is unsaved", "q", "ctrl+c"),
 		Suspend: bind("Ctrl+Z", "suspend", "ctrl+z"),
 
-		ViewUp:    bind("k up", "scroll up", "up", "k"),
-		ViewDown:  bind("j down", "scroll down", "down", "j"),
-		ViewLeft:  bind("h left", "the candidate before", "left", "h", "shift+tab", "N"),
-		ViewRight: bind("l right", "the candidate after", "right", "l", "tab", "n"),
-		PageUp:    bind("b PgUp", "a page up", "pgup", "b"),
-		PageDown:  bind("space PgDn", "a page down", "pgdown", " "),
-		Delete:    bind("x", "delete the candidate", "x", "delete"),
-		Choose:    bind("Enter", "recall the candidate", "enter"),
-		Close:     bind("Esc q", "leave the view", "q"),
+		ViewUp:     bind("k up", "scroll up", "up", "k"),
+		ViewDown:   bind("j down", "scroll down", "down", "j"),
+		ViewLeft:   bind("h left", "the one before: candidate, sensor, point of a curve", "left", "h", "shift+tab", "N"),
+		ViewRight:  bind("l right", "the one after", "right", "l", "tab", "n"),
+		PageUp:     bind("b PgUp", "a page up", "pgup", "b"),
+		PageDown:   bind("space PgDn", "a page down", "pgdown", " "),
+		Delete:     bind("x", "delete the candidate", "x", "delete"),
+		Choose:     bind("Enter", "take it: recall the candidate, take the point, unplug the sensor, run on the worst case", "enter"),
+		OtherCurve: bind("Tab n", "trade-off: the other curve", "tab", "n", "shift+tab", "N"),
+		Close:      bind("Esc q", "leave the view", "q"),
 	}
 }
 
@@ -91,11 +100,11 @@ type Group struct {
 func (m Map) Groups() []Group {
 	return []Group{
 		{"Hold and move", []key.Binding{m.Next, m.Previous, m.Left, m.Down, m.Up, m.Right, m.FarLeft, m.FarDown, m.FarUp, m.FarRight}},
-		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Undo, m.Redo, m.Form, m.Method}},
-		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.Map, m.NextState, m.PreviousState, m.Trace, m.Readings}},
+		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Fastest, m.Quietest, m.Undo, m.Redo, m.Form, m.Method}},
+		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.Map, m.NextState, m.PreviousState, m.Trace, m.Readings, m.Tradeoff, m.Sensors, m.Stress}},
 		{"Candidates", []key.Binding{m.Keep, m.Recall, m.Compare}},
 		{"Session", []key.Binding{m.Save, m.Help, m.Leave, m.Quit, m.Suspend}},
-		{"In a view", []key.Binding{m.ViewUp, m.ViewDown, m.PageUp, m.PageDown, m.ViewLeft, m.ViewRight, m.Choose, m.Delete, m.Close}},
+		{"In a view", []key.Binding{m.ViewUp, m.ViewDown, m.PageUp, m.PageDown, m.ViewLeft, m.ViewRight, m.OtherCurve, m.Choose, m.Delete, m.Close}},
 	}
 }
 
