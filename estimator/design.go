@@ -111,6 +111,7 @@ type Design struct {
 	// branch is the choice among the gains for these poles that a next design
 	// follows; nil where there is none.
 	branch *placement.Warm
+	frame  *frame // the same for a normal F
 }
 
 // Noise is the steady state of the estimation error of the chosen form. All

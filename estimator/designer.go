@@ -11,7 +11,6 @@ import (
 
 	"polewright/estimator/internal/modes"
 	"polewright/estimator/internal/placement"
-	"polewright/estimator/internal/riccati"
 	"polewright/estimator/internal/schur"
 	"polewright/estimator/internal/transient"
 )
@@ -263,42 +262,6 @@ func symmetric(x *mat.Dense) *mat.SymDense {
 		}
 	}
 	return s
-}
-
-func (d *Designer) findFloor() {
-	solve := riccati.Continuous
-	if d.model.Discrete() {
-		solve = riccati.Discrete
-	}
-	sol, err := solve(raw(d.a), raw(d.c), raw(d.w), raw(d.r))
-	if err != nil {
-		d.analysis.FloorReason = "no best linear estimator to compare with: " + err.Error()
-		return
-	}
-	cov := sol.P
-	if d.opt.Form == Current {
-		if cov = d.filtered(sol.P); cov == nil {
-			d.analysis.FloorReason = "no best linear estimator to compare with: the innovation covariance is singular"
-			return
-		}
-	}
-	f := &Floor{Covariance: d.unscaleCovariance(cov), Gain: d.unscaleGain(sol.L), Poles: sol.Poles}
-	f.Std = roots(f.Covariance)
-	d.analysis.Floor = f
-}
-
-// filtered returns P − P Cᵀ (C P Cᵀ + R)⁻¹ C P; nil where that is singular.
-func (d *Designer) filtered(p *mat.Dense) *mat.Dense {
-	var cp, s, x, out mat.Dense
-	cp.Mul(d.c, p)
-	s.Mul(&cp, d.c.T())
-	s.Add(&s, d.r)
-	if x.Solve(&s, &cp) != nil {
-		return nil
-	}
-	out.Mul(cp.T(), &x)
-	out.Sub(p, &out)
-	return &out
 }
 
 func (d *Designer) unscaleCovariance(p *mat.Dense) *mat.SymDense {

@@ -243,47 +243,6 @@ func outputRows(m *Model) int {
 	return r
 }
 
-// filteredBy returns (I − Lf C) P (I − Lf C)ᵀ + Lf R Lfᵀ.
-func (d *Designer) filteredBy(p, lf *mat.Dense) *mat.Dense {
-	var j, jp, jpj, lr, lrl mat.Dense
-	j.Mul(lf, d.c)
-	j.Apply(func(i, k int, v float64) float64 {
-		if i == k {
-			return 1 - v
-		}
-		return -v
-	}, &j)
-	jp.Mul(&j, p)
-	jpj.Mul(&jp, j.T())
-	lr.Mul(lf, d.r)
-	lrl.Mul(&lr, lf.T())
-	jpj.Add(&jpj, &lrl)
-	return &jpj
-}
-
-func (d *Designer) compareWithFloor(noise *Noise) {
-	noise.OverFloor = make([]float64, d.n)
-	var sum float64
-	var count int
-	floor := d.analysis.Floor
-	for i := range d.n {
-		noise.OverFloor[i] = math.NaN()
-		if floor == nil || !(floor.Std[i] > 0) {
-			continue
-		}
-		ratio := noise.Std[i] / floor.Std[i]
-		noise.OverFloor[i] = ratio
-		if d.keep == nil || d.keep[i] {
-			sum += ratio * ratio
-			count++
-		}
-	}
-	noise.OverFloorRMS = math.NaN()
-	if count > 0 {
-		noise.OverFloorRMS = math.Sqrt(sum / float64(count))
-	}
-}
-
 func (d *Designer) judgeTransient(out *Design, f, ls, lf *mat.Dense) {
 	out.Transient = Transient{Settle: math.NaN(), Peak: math.NaN()}
 	if !out.Stable {

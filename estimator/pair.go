@@ -20,7 +20,7 @@ type pair struct {
 
 	// inject (n×p) is added to the gain; nil in prediction form.
 	inject *mat.Dense
-	// For the least-noise gain: noise of the observable part (rank×rank), of the
+	// For the least noise, where it is asked for: noise of the observable part (rank×rank), of the
 	// combined sensors (p1×p1), and the weights of the variances.
 	w, r    *mat.Dense
 	weights []float64
@@ -42,7 +42,7 @@ func (d *Designer) split(seen *modes.Result) error {
 		return nil
 	}
 	pr := &d.pair
-	if d.opt.Method == LeastNoise {
+	if _, p := c.Dims(); d.opt.Method == LeastNoise || p >= pr.rank {
 		pr.weigh(d.noiseWeights())
 	}
 	q1 := pr.q.Slice(0, d.n, 0, pr.rank)

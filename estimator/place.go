@@ -41,7 +41,7 @@ func (d *Designer) QuickPlace(wanted []complex128, prev *Design) (_ *Design, err
 	if err != nil {
 		return nil, err
 	}
-	ls, branch, err := d.gainFor(movable, prev)
+	ls, branch, frame, err := d.gainFor(movable, prev)
 	if err != nil {
 		return nil, err
 	}
@@ -54,25 +54,23 @@ func (d *Designer) QuickPlace(wanted []complex128, prev *Design) (_ *Design, err
 	if err != nil {
 		return nil, err
 	}
-	out.branch = branch
+	out.branch, out.frame = branch, frame
 	return out, nil
 }
 
 // gainFor returns the scaled gain, the current form's in current form, for the
 // movable poles.
-func (d *Designer) gainFor(movable []complex128, prev *Design) (*mat.Dense, *placement.Warm, error) {
-	ls := mat.NewDense(d.n, d.p, nil)
-	var branch *placement.Warm
+func (d *Designer) gainFor(movable []complex128, prev *Design) (ls *mat.Dense, branch *placement.Warm, turned *frame, err error) {
+	ls = mat.NewDense(d.n, d.p, nil)
 	if d.pair.rank > 0 {
-		var err error
-		if branch, err = d.assign(ls, movable, prev); err != nil {
-			return nil, nil, err
+		if branch, turned, err = d.assign(ls, movable, prev); err != nil {
+			return nil, nil, nil, err
 		}
 	}
 	if d.pair.rank < d.n {
 		d.addUnseenRows(ls)
 	}
-	return ls, branch, nil
+	return ls, branch, turned, nil
 }
 
 // movable reduces a list to the poles that placement can choose.
@@ -120,7 +118,7 @@ func withoutFixed(list, fixed []complex128, refuse error) ([]complex128, error) 
 
 // assign writes the scaled gain for the movable poles to ls and returns the choice
 // that it made among several.
-func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) (branch *placement.Warm, err error) {
+func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) (branch *placement.Warm, turned *frame, err error) {
 	pr := &d.pair
 	p1, _ := pr.c.Dims()
 	part := mat.NewDense(pr.rank, p1, nil)
@@ -134,7 +132,10 @@ func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) (br
 		err = d.choose(part, movable, branch)
 	}
 	if err != nil {
-		return nil, fmt.Errorf("placement: %w", err)
+		return nil, nil, fmt.Errorf("placement: %w", err)
+	}
+	if p1 > 1 && p1 == pr.rank && d.opt.Method == Robust {
+		turned = d.quietNormal(part, movable, prev)
 	}
 	full := part
 	if pr.combine != nil {
@@ -145,7 +146,7 @@ func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) (br
 	if pr.inject != nil {
 		ls.Add(ls, pr.inject)
 	}
-	return branch, nil
+	return branch, turned, nil
 }
 
 // choose takes one of the gains that several sensors leave.
