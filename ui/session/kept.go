@@ -56,6 +56,11 @@ func LoadKept(file string) (*Kept, error) {
 	if err != nil {
 		return nil, err
 	}
+	return DecodeKept(file, data)
+}
+
+// DecodeKept is LoadKept of content at hand; file is its name in errors.
+func DecodeKept(file string, data []byte) (*Kept, error) {
 	doc, err := shape(file, data)
 	if err != nil {
 		return nil, err

@@ -19,6 +19,9 @@ const (
 	relative    = 1e-9
 	matrixFloor = 1e-13
 	safety      = 8
+	flat        = 3e-5 // relative, of where a peak is: the root of how well its height is known
+	deadbeat    = 1e-4 // poles this near z = 0 are all dead in a sample or two, wherever they are
+	still       = 1e-8 // of a state's scale: a standard deviation that is none, the root of rounding
 	border      = 1e-3 // relative, of a figure that a neighbour has and the design has not
 )
 
@@ -117,6 +120,12 @@ func (c *comparison) list(path, at string, have any, want []any, near []any, flo
 				beside = append(beside, l[i])
 			}
 		}
+		if (path == "noise.std" || path == "noise.floor_std") && i < len(c.names.StateScale) {
+			floor = 0
+			if none := still * c.names.StateScale[i]; largest(want[i]) <= none {
+				floor = none
+			}
+		}
 		c.value(path, join(at, c.place(path, at, i, want[i])), h[i], want[i], beside, floor)
 	}
 }
@@ -128,6 +137,9 @@ func (c *comparison) leaf(path, at string, have, want any, near []any, floor flo
 	w, wantNumber := want.(float64)
 	if isNumber && wantNumber {
 		tolerance := floor + relative*math.Abs(w)
+		if strings.HasSuffix(path, ".rad_per_s") {
+			tolerance = flat * math.Abs(w)
+		}
 		if exact(path) {
 			tolerance = 0
 		} else {
@@ -146,6 +158,11 @@ func (c *comparison) leaf(path, at string, have, want any, near []any, floor flo
 		return
 	}
 	for _, a := range near { // on the border: a neighbour says the same
+		if list, ok := have.([]any); ok && want == nil {
+			if l, ok := a.([]any); ok && len(l) == len(list) {
+				return // such as a Gramian: undefined just here
+			}
+		}
 		v, number := a.(float64)
 		if number && isNumber && math.Abs(h-v) <= border*math.Abs(v) || !isNumber && plain(a) && plain(have) && a == have {
 			return
@@ -185,6 +202,9 @@ func (c *comparison) set(path string, have, want []any, near []any) {
 	}
 	for i, k := range poles.Match(w, h) {
 		tolerance := relative*cmplx.Abs(w[i]) + safety*spread[i]
+		if c.names.Discrete() && cmplx.Abs(w[i]) < deadbeat {
+			tolerance = max(tolerance, deadbeat)
+		}
 		if !(cmplx.Abs(h[k]-w[i]) <= tolerance) {
 			c.differ(path, "", poles.Format(h[k]), poles.Format(w[i]), tolerance)
 		}

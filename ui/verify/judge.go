@@ -17,9 +17,10 @@ import (
 
 // neighbours are judged beside each design, each entry off by nudge relative:
 // 64 units of the last place, beyond what backward stable methods leave on
-// matrices of a few dozen states.
+// matrices of a few dozen states. They come in pairs of opposite signs, so that
+// what is on a border, such as a mode at z = 1, is seen from both sides.
 const (
-	neighbours = 3
+	neighbours = 4
 	nudge      = 0x1p-46
 )
 
@@ -46,7 +47,7 @@ func (c *checker) judgesOf(kind estimator.Options) ([]*judge, error) {
 	for k := range neighbours + 1 {
 		j := &judge{model: c.bench.Model}
 		if k > 0 {
-			j.sign = signs(uint64(k))
+			j.sign = signs(uint64(k+1)/2, k%2 == 0)
 			j.model = neighbour(c.bench.Model, j.sign)
 		}
 		var err error
@@ -65,14 +66,15 @@ func (c *checker) judgesOf(kind estimator.Options) ([]*judge, error) {
 	return list, nil
 }
 
-// signs returns a fixed sequence of factors 1 ± nudge (xorshift: Marsaglia 2003).
-func signs(seed uint64) func() float64 {
+// signs returns a fixed sequence of factors 1 ± nudge (xorshift: Marsaglia 2003),
+// or the opposite one.
+func signs(seed uint64, opposite bool) func() float64 {
 	state := seed * 0x9e3779b97f4a7c15
 	return func() float64 {
 		state ^= state << 13
 		state ^= state >> 7
 		state ^= state << 17
-		if state>>33&1 == 1 {
+		if (state>>33&1 == 1) != opposite {
 			return 1 + nudge
 		}
 		return 1 - nudge

@@ -221,6 +221,13 @@ func TestChangesAreFound(t *testing.T) {
 			a, b := s.candidate(0), s.candidate(1)
 			a["measures"], b["measures"] = b["measures"], a["measures"]
 		}, "gain"},
+		{"a row of the gain taken out", func(t *testing.T, s *stored) {
+			s.candidate(0)["gain"] = s.candidate(0)["gain"].([]any)[1:]
+			s.candidate(0)["gain_current"] = nil
+		}, "gain"},
+		{"a wanted pole taken out", func(t *testing.T, s *stored) {
+			s.candidate(0)["poles"] = s.candidate(0)["poles"].([]any)[2:]
+		}, "poles"},
 		{"another form", func(t *testing.T, s *stored) { s.candidate(0)["form"] = "current" }, "form"},
 		{"the current gain alone", func(t *testing.T, s *stored) {
 			row := s.candidate(0)["gain_current"].([]any)[0].([]any)
