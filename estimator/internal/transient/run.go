@@ -136,12 +136,17 @@ func (s *Solver) examine(j int, k int64, a, b *place) {
 		}
 		return
 	}
-	na, nm, nb := s.norm(a), s.norm(&m), s.norm(b)
-	top := max(na, nm, nb)
-	above := top + bend/2 // four times what a parabola would reach
+	na, nb := s.norm(a), s.norm(b)
 	if nb > Level {
 		s.last, s.fraction = end, 0
 	}
+	// the middle is at most (na + nb + bend)/2
+	if above := max(na, nb) + bend; above <= s.peak*(1+tolerance) && (nb > Level || above <= Level) {
+		return
+	}
+	nm := s.norm(&m)
+	top := max(na, nm, nb)
+	above := top + bend/2 // four times what a parabola would reach
 	forPeak := above > s.peak*(1+tolerance)
 	if forPeak && !s.discrete && bend <= fine*top {
 		s.peak = max(s.peak, vertex(na, nm, nb))
