@@ -1,7 +1,6 @@
 package verify_test
 
 import (
-	"context"
 	"encoding/json"
 	"math/rand/v2"
 	"testing"
@@ -13,7 +12,6 @@ import (
 	"polewright/ui/internal/sample"
 	"polewright/ui/measures"
 	"polewright/ui/session"
-	"polewright/ui/verify"
 )
 
 // rounded is a model whose entries are off by up to four units of the last place:
@@ -80,32 +78,4 @@ func tree(t *testing.T, v any) map[string]any {
 		t.Fatal(err)
 	}
 	return out
-}
-
-// Whatever a file holds, checking it ends with an answer or an error.
-func FuzzCheck(f *testing.F) {
-	for _, name := range []string{"lift", "twin-drum"} {
-		b, err := sample.BuiltIn(name)
-		if err != nil {
-			f.Fatal(err)
-		}
-		w, err := sample.Work(b, sample.Entry{})
-		if err != nil {
-			f.Fatal(err)
-		}
-		data, err := session.Encode(sample.Program, w)
-		if err != nil {
-			f.Fatal(err)
-		}
-		f.Add(data)
-	}
-	f.Fuzz(func(t *testing.T, data []byte) {
-		k, err := session.DecodeKept("fuzz", data)
-		if err != nil {
-			return
-		}
-		if _, err := verify.Check(context.Background(), k, sample.Program); err != nil && err.Error() == "" {
-			t.Error("an error without words")
-		}
-	})
 }
