@@ -171,6 +171,33 @@ func restored(t *testing.T, out string) {
 	}
 }
 
+// Recovered work is unsaved: leaving asks, a second crash keeps it, and given up it
+// is gone.
+func TestRecoveredWorkIsUnsaved(t *testing.T) {
+	program, dir := build(t), t.TempDir()
+	p := open(t, program, dir, "lift")
+	p.waitFor("Platform lift")
+	p.press(right)
+	waitForJournal(t, dir, nil)
+	for range 2 {
+		if err := p.cmd.Process.Kill(); err != nil {
+			t.Fatal(err)
+		}
+		_, _ = p.endsAnyhow()
+		p = open(t, program, dir) // nothing named
+		p.waitFor("unsaved work on Platform lift from ")
+		p.press("r" + enter)
+		p.waitFor("recovered; not saved yet")
+	}
+	p.press("q")
+	p.waitFor("quit with unsaved work?")
+	p.press("y")
+	p.quits()
+	if list := journals(t, dir); len(list) != 0 {
+		t.Errorf("%v is left", list)
+	}
+}
+
 // Two programs on one session: the one that saves second asks.
 func TestTwoProgramsOnOneSession(t *testing.T) {
 	program, dir := build(t), t.TempDir()

@@ -31,10 +31,8 @@ type keeper struct {
 	folder  string           // of journals and reports
 	journal *journal.Journal // nil where there is none
 	mark    func() session.Mark
-	// recovered work is in the journal from the start, and unsaved until saved says
-	// otherwise.
+	// recovered work is in the journal from the start.
 	recovered bool
-	saved     func() bool
 
 	mu      sync.Mutex
 	latest  screen.Model
@@ -82,7 +80,7 @@ func (k *keeper) see(m screen.Model) tea.Cmd {
 	if k.journal == nil {
 		return nil
 	}
-	if !k.unsaved() {
+	if !k.latest.Unsaved() {
 		if k.last != nil || k.recovered {
 			k.last, k.recovered = nil, false
 			k.journal.Saved()
@@ -96,9 +94,6 @@ func (k *keeper) see(m screen.Model) tea.Cmd {
 	return tea.Tick(keepAfter, func(time.Time) tea.Msg { return keepMsg{} })
 }
 
-// unsaved reports whether something would be lost.
-func (k *keeper) unsaved() bool { return k.latest.Unsaved() || k.recovered && !k.saved() }
-
 func (k *keeper) tick() {
 	k.mu.Lock()
 	defer k.mu.Unlock()
@@ -108,7 +103,7 @@ func (k *keeper) tick() {
 
 // keep hands unsaved work to the journal where it changed.
 func (k *keeper) keep() {
-	if k.journal == nil || !k.unsaved() {
+	if k.journal == nil || !k.latest.Unsaved() {
 		return
 	}
 	w := k.latest.Work()
@@ -176,8 +171,7 @@ func (k *keeper) finish(runErr error) error {
 		if k.journal == nil {
 			return nil
 		}
-		// the screen asks about what was changed, not about what was recovered
-		return k.journal.Close(k.unsaved() && !k.latest.Unsaved())
+		return k.journal.Close(false)
 	}
 	why := "ended"
 	switch {
@@ -192,7 +186,7 @@ func (k *keeper) finish(runErr error) error {
 	case runErr != nil:
 		why = "the terminal failed: " + runErr.Error()
 	}
-	if !k.unsaved() {
+	if !k.latest.Unsaved() {
 		if k.journal != nil {
 			_ = k.journal.Close(false)
 		}

@@ -27,7 +27,7 @@ type stand struct {
 	last   desk.Request
 }
 
-func newStand(t *testing.T) *stand {
+func newStand(t *testing.T, recovered bool) *stand {
 	t.Helper()
 	s := &stand{folder: filepath.Join(t.TempDir(), "journal")}
 	j, err := journal.Open(s.folder, "test")
@@ -36,8 +36,8 @@ func newStand(t *testing.T) *stand {
 	}
 	store := &store{program: "test"}
 	s.ask = func(r desk.Request) { s.last = r }
-	s.keeper = &keeper{program: "test", folder: s.folder, journal: j, mark: store.mark, saved: func() bool { return store.where() != "" }}
-	s.Model = screen.New(screen.Config{Work: work(t, 1), Ask: func(r desk.Request) { s.ask(r) }, Save: store.save})
+	s.keeper = &keeper{program: "test", folder: s.folder, journal: j, mark: store.mark}
+	s.Model = screen.New(screen.Config{Work: work(t, 1), Ask: func(r desk.Request) { s.ask(r) }, Save: store.save, Unsaved: recovered})
 	s.keeper.latest = s.Model
 	s.send(t, s.Init()())
 	return s
@@ -76,7 +76,7 @@ func (s *stand) found(t *testing.T) *desk.Work {
 }
 
 func TestKeeperKeepsWhatChanges(t *testing.T) {
-	s := newStand(t)
+	s := newStand(t, false)
 	if s.Unsaved() || s.keeper.ticking {
 		t.Fatal("unsaved from the start")
 	}
@@ -109,7 +109,7 @@ func TestKeeperKeepsWhatChanges(t *testing.T) {
 }
 
 func TestKeeperForgetsWhatIsGivenUp(t *testing.T) {
-	s := newStand(t)
+	s := newStand(t, false)
 	s.send(t, left())
 	s.send(t, keepMsg{})
 	if err := s.keeper.finish(nil); err != nil {
@@ -122,7 +122,7 @@ func TestKeeperForgetsWhatIsGivenUp(t *testing.T) {
 
 func TestKeeperForgetsWhatIsSaved(t *testing.T) {
 	t.Chdir(t.TempDir())
-	s := newStand(t)
+	s := newStand(t, false)
 	s.send(t, left())
 	s.send(t, keepMsg{})
 	s.send(t, tea.KeyMsg{Type: tea.KeyCtrlS})
@@ -166,7 +166,7 @@ func deliver(t *testing.T, s *stand, cmd tea.Cmd) {
 }
 
 func TestKeeperOutlivesAFault(t *testing.T) {
-	s := newStand(t)
+	s := newStand(t, false)
 	s.send(t, left())
 	s.ask = func(desk.Request) { panic("a wheel\x1b came off") }
 	before := s.Work()
@@ -192,7 +192,7 @@ func TestKeeperOutlivesAFault(t *testing.T) {
 }
 
 func TestKeeperWithoutAJournal(t *testing.T) {
-	s := newStand(t)
+	s := newStand(t, false)
 	_ = s.keeper.journal.Close(false)
 	s.keeper.journal = nil
 	s.send(t, left())
@@ -202,7 +202,7 @@ func TestKeeperWithoutAJournal(t *testing.T) {
 }
 
 func TestKeeperSaysWhatItCouldNotKeep(t *testing.T) {
-	s := newStand(t)
+	s := newStand(t, false)
 	s.send(t, left())
 	if err := os.RemoveAll(s.folder); err != nil {
 		t.Fatal(err)
@@ -221,7 +221,7 @@ func TestKeeperHoldsRecoveredWork(t *testing.T) {
 	if got == nil {
 		t.Fatal("nothing was recovered")
 	}
-	s := newStand(t)
+	s := newStand(t, true)
 	_ = s.keeper.journal.Close(false)
 	s.keeper.journal, s.keeper.recovered, s.folder = got.journal, true, folder
 	s.send(t, tea.KeyMsg{Type: tea.KeyTab})

@@ -56,7 +56,7 @@ func Run(ctx context.Context, o Options) (saved string, err error) {
 	if err != nil {
 		return "", err
 	}
-	keeper.mark, keeper.saved = store.mark, func() bool { return store.where() != "" }
+	keeper.mark = store.mark
 	err = keeper.finish(show(ctx, &o, keeper, store, message))
 	return store.where(), err
 }
@@ -84,6 +84,7 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 		Theme:   o.Theme,
 		Calm:    o.Calm,
 		Message: message,
+		Unsaved: keeper.recovered,
 	})
 	keeper.latest = first
 	program = tea.NewProgram(kept{first, keeper},

@@ -120,6 +120,10 @@ func (m *Model) quit() tea.Cmd {
 	if !m.Unsaved() || m.question != nil && m.question.text == unsavedText {
 		return tea.Quit // asked twice means yes
 	}
+	if m.saving && !m.quitAfterSave {
+		m.quitAfterSave = true // what is on its way may be all there is
+		return nil
+	}
 	m.prompt = nil
 	m.dirty |= statusRegion
 	m.question = &question{text: unsavedText, choices: map[string]func(m *Model) tea.Cmd{
