@@ -1,6 +1,8 @@
 package theme_test
 
 import (
+	"fmt"
+	"math"
 	"reflect"
 	"strings"
 	"testing"
@@ -35,6 +37,50 @@ func TestNoColourHasNone(t *testing.T) {
 		if open := th.Open(ink); open != "\x1b[m" && open != "\x1b[0;1m" {
 			t.Errorf("ink %d opens with %q", ink, open)
 		}
+	}
+}
+
+// grey is the luminance, by the rule of WCAG 2.1, of a grey of the 256-colour
+// palette, that a sequence sets.
+func grey(t *testing.T, sequence string) float64 {
+	t.Helper()
+	var n int
+	at := strings.LastIndex(sequence, "8;5;")
+	if _, err := fmt.Sscanf(sequence[at+4:], "%dm", &n); at < 0 || err != nil || n < 232 {
+		t.Fatalf("%q sets no grey", sequence)
+	}
+	v := float64(8+10*(n-232)) / 255
+	return math.Pow((v+0.055)/1.055, 2.4)
+}
+
+// Labels can be read on every shade, lines seen, and the steps go one way.
+func TestShadesKeepTheirContrast(t *testing.T) {
+	contrast := func(a, b float64) float64 { return (max(a, b) + 0.05) / (min(a, b) + 0.05) }
+	for _, dark := range []bool{true, false} {
+		th := theme.New(theme.Options{Depth: theme.True, Dark: dark})
+		before, own := 0.0, 0.53 // black, and the light grey that terminals write with
+		if !dark {
+			before, own = 1, 0
+		}
+		for level := uint8(1); level < theme.Shades; level++ {
+			shade := grey(t, th.Shade(level))
+			if dark == (shade <= before) || contrast(shade, before) < 1.1 {
+				t.Errorf("dark %v: step %d is no step", dark, level)
+			}
+			if c := contrast(shade, grey(t, th.OpenOn(theme.Faint))); c < 4.5 {
+				t.Errorf("dark %v: a label on step %d has a contrast of %.1f", dark, level, c)
+			}
+			if c := contrast(shade, own); c < 3 {
+				t.Errorf("dark %v: text on step %d has a contrast of %.1f", dark, level, c)
+			}
+			if c := contrast(shade, grey(t, th.OpenOn(theme.Grid))); c < 1.6 {
+				t.Errorf("dark %v: a line on step %d has a contrast of %.1f", dark, level, c)
+			}
+			before = shade
+		}
+	}
+	if th := theme.New(theme.Options{Depth: theme.Sixteen}); th.Backed || th.Shade(2) != "" {
+		t.Error("sixteen colours have no greys to spare")
 	}
 }
 

@@ -1,0 +1,6 @@
+package screen
+
+import tea "github.com/charmbracelet/bubbletea"
+
+// MapTick is what the clock sends when a map is due.
+var MapTick tea.Msg = mapMsg{}
