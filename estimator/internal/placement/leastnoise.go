@@ -139,7 +139,13 @@ func (r *robust) quiet(warm *Warm) (Info, bool) {
 	return r.quietCold()
 }
 
-const quietStarts = 6
+// quietStarts is the number of cold starts: fewer where each is dear.
+func (r *robust) quietStarts() int {
+	if r.n > 16 {
+		return 2
+	}
+	return 6
+}
 
 // quietCold descends from the choice of Robust, so that it cannot end noisier, and
 // from scattered starts, then polishes the best.
@@ -149,7 +155,7 @@ func (r *robust) quietCold() (Info, bool) {
 	seed := uint64(2)
 	r.plain = append(r.plain[:0], r.frames...)
 	r.quietest = grow(r.quietest, len(r.frames))
-	for try := range quietStarts {
+	for try := range r.quietStarts() {
 		switch {
 		case try > 0:
 			copy(r.frames, r.plain)
