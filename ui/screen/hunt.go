@@ -107,7 +107,7 @@ func (m *Model) hunted(a *study.Answer) {
 // found says what a search ended with.
 func found(kind study.Kind, r *seek.Result) string {
 	d := r.Design
-	text := fmt.Sprintf("found: settles in %.3g s, noise %.3g x floor", d.Transient.Settle, d.Noise.OverFloorRMS)
+	text := fmt.Sprintf("found: settles in %.3g s, %.3g x floor", d.Transient.Settle, d.Noise.OverFloorRMS)
 	if math.IsNaN(d.Noise.OverFloorRMS) {
 		text = fmt.Sprintf("found: settles in %.3g s", d.Transient.Settle)
 	}
@@ -135,7 +135,7 @@ func broken(list []scenarios.LimitResult) []string {
 // searching is what the status line says of a search or of what it found.
 func (m *Model) searching() string {
 	if o := m.research.offer; o != nil {
-		return o.text + ".  Enter takes it, Esc leaves it"
+		return o.text
 	}
 	h := m.research.hunt
 	if h == nil {
@@ -151,7 +151,7 @@ func (m *Model) searching() string {
 	if h.all > 0 {
 		text += fmt.Sprintf(", %d %%", min(h.tried*100/h.all, 100))
 	}
-	return text + ".  Esc stops"
+	return text
 }
 
 // leaveSearch stops a search, or leaves what it found.
@@ -163,7 +163,7 @@ func (m *Model) leaveSearch() tea.Cmd {
 		m.askStudy(study.Request{Kind: study.None})
 		m.say("the search is stopped")
 		if best != nil && best != m.now.design {
-			m.research.offer = &offer{best, fmt.Sprintf("the best until then settles in %.3g s, noise %.3g x floor", best.Transient.Settle, best.Noise.OverFloorRMS)}
+			m.research.offer = &offer{best, fmt.Sprintf("the best until then settles in %.3g s, %.3g x floor", best.Transient.Settle, best.Noise.OverFloorRMS)}
 			m.say("")
 		}
 	case m.research.offer != nil:

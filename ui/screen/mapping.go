@@ -216,7 +216,7 @@ func (m *Model) promise() (text string, trouble bool) {
 
 // mapLine shows the promise and, where there is room, the legend.
 func (m *Model) mapLine(c *canvas.Canvas) {
-	if m.plot.tones == nil || m.open != none {
+	if m.plot.tones == nil || m.open != none || m.message == "" && m.searching() != "" {
 		return
 	}
 	x := 0

@@ -300,6 +300,12 @@ func (m *Model) hints(c *canvas.Canvas) {
 	type hint struct{ key, does string }
 	list := []hint{{"Tab", "next"}, {m.theme.Glyphs.Arrows, "move"}, {"=", "place"}, {"u", "undo"}, {"?", "help"}, {"a", "keep"}, {"v", "compare"}, {"s", "save"}, {"z", "plane"}, {"f", "floor"}, {"p", "patterns"}, {"< >", "speed"}, {"r", "readings"}, {"t", "trade-off"}, {"i", "sensors"}, {"w", "worst case"}, {"F Q", "search"}}
 	switch {
+	case m.research.offer != nil:
+		list = append([]hint{{"Enter", "takes it"}, {"Esc", "leaves it"}}, list...)
+	case m.research.hunt != nil:
+		list = append([]hint{{"Esc", "stops the search"}}, list...)
+	}
+	switch {
 	case m.prompt != nil:
 		list = []hint{{"Enter", "takes it"}, {"Esc", "leaves it"}}
 	case m.question != nil:
