@@ -20,6 +20,7 @@ import (
 	"polewright/ui/screen"
 	"polewright/ui/session"
 	"polewright/ui/solver"
+	"polewright/ui/study"
 	"polewright/ui/survey"
 	"polewright/ui/theme"
 )
@@ -70,6 +71,11 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 		program.Send(screen.AnswerMsg{Answer: a})
 	})
 	defer work.Close()
+	student := study.New(o.Work.Bench, func(a study.Answer) {
+		<-ready
+		program.Send(screen.StudyMsg{Answer: a})
+	})
+	defer student.Close()
 	surveyor := survey.New(o.Work.Bench, func(a survey.Answer) {
 		<-ready
 		program.Send(screen.MapMsg{Answer: a})
@@ -79,6 +85,7 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 		Work:    o.Work,
 		Ask:     work.Ask,
 		Map:     surveyor.Ask,
+		Study:   student.Ask,
 		Save:    store.save,
 		Resolve: (&resolver{bench: o.Work.Bench}).resolve,
 		Theme:   o.Theme,
