@@ -11,7 +11,11 @@ import (
 
 // candidate tells everything about one candidate.
 func (m *maker) candidate(s *shown) {
-	m.page("Candidate " + s.name)
+	if len(m.kept.Designs) > 0 {
+		m.page("Candidate " + s.name)
+	} else {
+		m.page("The design in hand")
+	}
 	if s.note != "" {
 		m.text(Plain, "%s", s.note)
 	}

@@ -120,16 +120,9 @@ func (m *maker) tradeOff(ctx context.Context) {
 	if len(best) > 0 {
 		bx, by := p.At(best[0], floor[0])
 		c.Mark(bx, by, draw.Diamond, draw.Dark)
-		c.Text(bx+8, by-5, draw.Start, draw.Dark, "floor")
+		c.Text(bx-8, by-6, draw.End, draw.Dark, "floor")
 	}
-	for i, s := range m.list {
-		if math.IsNaN(settle[i]) {
-			continue
-		}
-		cx, cy := p.At(settle[i], over[i])
-		c.Mark(cx, cy, draw.Disc, draw.Accent)
-		c.Text(cx+6, cy-5, draw.Start, draw.Accent, s.name)
-	}
+	m.named(p, settle, over)
 	caption := "Settle time against noise: quick and quiet is down to the left."
 	if len(curve[0]) > 0 {
 		caption += " Dashed: candidate " + of.name + " with all its poles made slower and faster."
@@ -138,6 +131,26 @@ func (m *maker) tradeOff(ctx context.Context) {
 		caption += " Open diamond: the best linear estimator."
 	}
 	m.figure(caption, c.SVG("settle time against noise"))
+}
+
+// named marks the candidates; names of marks that touch stand together.
+func (m *maker) named(p *draw.Plot, settle, over []float64) {
+	px, py := p.Map(settle, over)
+	done := make([]bool, len(px))
+	for i := range px {
+		if done[i] || math.IsNaN(px[i]) {
+			continue
+		}
+		names := ""
+		for k := i; k < len(px); k++ {
+			if !done[k] && math.Hypot(px[k]-px[i], py[k]-py[i]) < 9 {
+				done[k] = true
+				names += ", " + m.list[k].name
+				p.C.Mark(px[k], py[k], draw.Disc, draw.Accent)
+			}
+		}
+		p.C.Text(px[i]+7, py[i]-6, draw.Start, draw.Accent, names[2:])
+	}
 }
 
 // floorPoint judges the floor's own gain.
