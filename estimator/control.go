@@ -111,7 +111,12 @@ func (d *Designer) judgeLoop(out *Design, ls, lf *mat.Dense) error {
 	} else if err := d.cutMargins(out, cut); err != nil {
 		return err
 	}
-	loop.InputStd = d.inputNoise(ls, lf)
+	if loop.Input < 0 {
+		out.Warnings = append(out.Warnings, "loop: its poles are too close to the stability limit, or too large, for margins")
+	}
+	if loop.InputStd = d.inputNoise(ls, lf); loop.InputStd == nil {
+		out.Warnings = append(out.Warnings, "loop: the noise on the actuators cannot be computed")
+	}
 	return nil
 }
 
