@@ -47,7 +47,11 @@ var textClass = map[Kind]string{Caution: ` class="caution"`, Warning: ` class="w
 
 func (t *Text) html(b *strings.Builder) {
 	for _, part := range paragraphs(t.Text) {
-		b.WriteString("<p" + textClass[t.Kind] + ">" + esc(part) + "</p>\n")
+		word := ""
+		if t.Kind == Caution {
+			word = "<strong>Caution.</strong> "
+		}
+		b.WriteString("<p" + textClass[t.Kind] + ">" + word + esc(part) + "</p>\n")
 	}
 }
 
