@@ -71,4 +71,13 @@ func (a logAxis) ticks(apart int) []float64 {
 	return best
 }
 
-func tick(v float64) string { return strconv.FormatFloat(v, 'g', 3, 64) }
+// tick prints a value with three figures, in full where that is short.
+func tick(v float64) string {
+	short := strconv.FormatFloat(v, 'g', 3, 64)
+	if size := math.Abs(v); size >= 1e-3 && size < 1e6 {
+		if r, err := strconv.ParseFloat(short, 64); err == nil {
+			return strconv.FormatFloat(r, 'f', -1, 64)
+		}
+	}
+	return short
+}

@@ -239,7 +239,7 @@ func (p *sensorPage) table(seen *Seen) {
 	for _, r := range rows {
 		place := p.place(r, seen.Model.Period)
 		said, ink := seenWord(r.mode, best)
-		lines := canvas.Wrap(combination(r.parts, seen.Model.StateNames, p.g), p.w-parts)
+		lines := combination(r.parts, seen.Model, p.w-parts, p.g)
 		for i := range max(len(lines), 1) {
 			var row []span
 			if i == 0 {
@@ -280,7 +280,7 @@ func (p *sensorPage) place(r seenRow, period float64) string {
 	at, ok := targets.Shown(r.mode.Eigenvalue, p.f.Plane, period)
 	text := "z = 0"
 	if ok {
-		ref := cmplx.Abs(at)
+		ref := max(math.Abs(real(at)), cmplx.Abs(at)/30)
 		if cmplx.Abs(at) < 1e-9 {
 			at, ref = 0, 1
 		}
@@ -292,14 +292,24 @@ func (p *sensorPage) place(r seenRow, period float64) string {
 	return text
 }
 
-// combination spells the largest parts out. Parts that are not in phase have
-// their angle against the first.
-func combination(parts []complex128, names []string, g *theme.Glyphs) string {
-	order := make([]int, len(parts))
-	phased := false
-	for i := range order {
-		order[i] = i
-		phased = phased || math.Abs(imag(parts[i])) > 0.01
+// combination spells the largest parts out, in lines of w cells. Parts that are
+// not in phase have their angle against the first. Delay registers repeat another
+// state's past and are left out.
+func combination(parts []complex128, m *estimator.Model, w int, g *theme.Glyphs) []string {
+	var order []int
+	phased, held := false, 0.0
+	for i := range parts {
+		if role(m, i) == estimator.DelayRegister {
+			continue
+		}
+		order = append(order, i)
+		held = math.Hypot(held, cmplx.Abs(parts[i]))
+	}
+	switch {
+	case parts == nil:
+		return []string{g.Undefined}
+	case held < 1e-3:
+		return []string{"samples on their way"}
 	}
 	slices.SortStableFunc(order, func(a, b int) int {
 		switch x, y := cmplx.Abs(parts[a]), cmplx.Abs(parts[b]); {
@@ -310,30 +320,36 @@ func combination(parts []complex128, names []string, g *theme.Glyphs) string {
 		}
 		return 0
 	})
+	turn := cmplx.Conj(parts[order[0]]) / complex(cmplx.Abs(parts[order[0]])*held, 0)
+	for _, i := range order {
+		phased = phased || math.Abs(imag(parts[i]*turn)) > 0.01
+	}
 	const most, least = 4, 0.05
-	var b strings.Builder
+	var lines []string
 	for k, i := range order {
-		size := cmplx.Abs(parts[i])
-		if i >= len(names) || k >= most || size < least {
+		part := parts[i] * turn
+		if k >= most || cmplx.Abs(part) < least {
 			break
 		}
+		text := fmt.Sprintf("%.2f %s", cmplx.Abs(part), m.StateNames[i])
 		switch {
 		case k > 0 && phased:
-			b.WriteString(", ")
-		case k > 0 && real(parts[i]) < 0:
-			b.WriteString(" - ")
+			text = ", " + text + fmt.Sprintf(" at %.0f deg", cmplx.Phase(part)*180/math.Pi)
+		case k > 0 && real(part) < 0:
+			text = " - " + text
 		case k > 0:
-			b.WriteString(" + ")
+			text = " + " + text
 		}
-		fmt.Fprintf(&b, "%.2f %s", size, names[i])
-		if k > 0 && phased {
-			fmt.Fprintf(&b, " at %.0f deg", cmplx.Phase(parts[i])*180/math.Pi)
+		if last := len(lines) - 1; last >= 0 && canvas.TextWidth(lines[last]+text) < w {
+			lines[last] += text
+		} else {
+			if k > 0 && phased {
+				lines[last] += ","
+			}
+			lines = append(lines, canvas.Cut(strings.TrimLeft(text, " ,"), w-1, g.Ellipsis))
 		}
 	}
-	if b.Len() == 0 {
-		return g.Undefined
-	}
-	return b.String()
+	return lines
 }
 
 // shares shows which sensor each state's noise comes from, for the design in

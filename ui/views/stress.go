@@ -25,7 +25,7 @@ type Stress struct {
 func (f *Stress) Lines(w int, t *theme.Theme) []string {
 	g := &t.Glyphs
 	p := page{w: w}
-	p.title("worst within the tolerances")
+	p.title("worst of the cases tried within the tolerances")
 	p.state(f, g)
 	e := f.Envelope
 	if e == nil {
