@@ -128,6 +128,8 @@ func limitWords(c *verify.Candidate) string {
 		}
 	}
 	switch {
+	case len(c.Limits) == 0 && !c.LimitsMet:
+		return "not judged"
 	case len(c.Limits) == 0:
 		return "none set"
 	case broken > 0:
