@@ -232,14 +232,17 @@ func stressed(t testing.TB) (*rig, *student) {
 }
 
 func TestTracesRunOnTheHardestCaseAndBack(t *testing.T) {
-	r, _ := stressed(t)
-	poles := r.work().Poles
+	r, s := stressed(t)
+	poles, studies := r.work().Poles, len(s.asked)
 	r.press("enter")
 	if q := r.last(); q.Truth["rope"] != 0.7 || q.Gain == nil {
 		t.Fatalf("asked for %+v", q)
 	}
 	r.wantPoles(poles...)
 	r.reply(desk.Traced)
+	if len(s.asked) != studies {
+		t.Error("the same design is studied again")
+	}
 	r.press("w", "left")
 	if r.last().Truth["rope"] != 0.7 {
 		t.Error("a move goes back to the scenario's own plant")

@@ -29,7 +29,7 @@ func (m *Model) stress() *views.Stress {
 	s := m.research.stress
 	s.Controlled = m.cfg.Work.Bench.Model.K != nil
 	s.Truth = m.truth.name
-	s.Older = s.Older || s.Envelope != nil && m.research.stressOf != m.now.design
+	s.Older = s.Older || s.Envelope != nil && !same(m.research.stressOf, m.now.design) && m.now.design != nil
 	return &s
 }
 
@@ -59,7 +59,7 @@ func (m *Model) toggleTruth() tea.Cmd {
 		return nil
 	}
 	m.truth = truth{views.CaseText(worst), maps.Clone(worst.Truth())}
-	m.say("the traces run on the hardest case now; Enter goes back to the scenario's own real plant")
+	m.say("the traces run on the hardest case now; Enter again goes back")
 	return m.onOtherPlant()
 }
 

@@ -1,7 +1,10 @@
 package screen
 
 import (
+	"slices"
+
 	tea "github.com/charmbracelet/bubbletea"
+	"gonum.org/v1/gonum/mat"
 
 	"polewright/estimator"
 	"polewright/ui/study"
@@ -44,19 +47,28 @@ func (m *Model) studyDue() {
 	if kind == study.None || m.cfg.Study == nil || d == nil || m.research.hunt != nil {
 		return
 	}
-	if m.research.kind == kind && m.research.of == d {
+	if m.research.kind == kind && same(m.research.of, d) {
 		return
 	}
 	switch {
-	case kind == study.Tradeoff && m.research.tradeOf != d:
+	case kind == study.Tradeoff && !same(m.research.tradeOf, d):
 		m.research.trade.Running, m.research.trade.Trouble = true, ""
-	case kind == study.Tolerances && m.research.stressOf != d:
+	case kind == study.Tolerances && !same(m.research.stressOf, d):
 		m.research.stress.Older = m.research.stress.Envelope != nil
 		m.research.stress.Tried, m.research.stress.All, m.research.stress.Trouble = 0, 0, ""
 	default:
 		return
 	}
 	m.askStudy(study.Request{Kind: kind, Design: d})
+}
+
+// same tells whether two designs give the same study.
+func same(a, b *estimator.Design) bool {
+	if a == b || a == nil || b == nil {
+		return a == b
+	}
+	return a.Form == b.Form && a.Method == b.Method && slices.Equal(a.Wanted, b.Wanted) &&
+		a.Gain != nil && b.Gain != nil && mat.Equal(a.Gain, b.Gain)
 }
 
 func (m *Model) askStudy(r study.Request) {
@@ -102,7 +114,7 @@ func (m *Model) studyAnswer(a *study.Answer) tea.Cmd {
 // curves takes the trade-off as far as it has come.
 func (m *Model) curves(a *study.Answer) {
 	t := &m.research.trade
-	fresh := m.research.tradeOf != m.research.of
+	fresh := !same(m.research.tradeOf, m.research.of)
 	if a.Scaling != nil {
 		t.Scaling = a.Scaling
 	}
