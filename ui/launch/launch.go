@@ -23,6 +23,7 @@ import (
 	"polewright/ui/study"
 	"polewright/ui/survey"
 	"polewright/ui/theme"
+	"polewright/ui/wire"
 )
 
 // Options of a screen.
@@ -95,7 +96,7 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 	})
 	keeper.latest = first
 	program = tea.NewProgram(kept{first, keeper},
-		tea.WithAltScreen(), tea.WithContext(ctx), tea.WithInput(o.In), tea.WithOutput(o.Out), tea.WithoutSignalHandler())
+		tea.WithAltScreen(), tea.WithContext(ctx), tea.WithInput(o.In), tea.WithOutput(wire.New(o.Out)), tea.WithoutSignalHandler())
 	close(ready)
 	defer keeper.guard(program)()
 	_, err := program.Run()
