@@ -31,7 +31,8 @@ type terminal struct {
 	out  []byte
 	more *sync.Cond
 	ends bool
-	mark int // what was written before was looked at already
+	mark int       // what was written before was looked at already
+	last time.Time // when something was written
 }
 
 func build(t *testing.T) string {
@@ -74,6 +75,9 @@ func (p *terminal) read() {
 		n, err := p.file.Read(buf)
 		p.mu.Lock()
 		p.out = append(p.out, buf[:n]...)
+		if n > 0 {
+			p.last = time.Now()
+		}
 		p.ends = err != nil
 		p.more.Broadcast()
 		p.mu.Unlock()
