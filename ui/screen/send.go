@@ -8,7 +8,7 @@ import (
 	tea "github.com/charmbracelet/bubbletea"
 )
 
-// What goes to the terminal. The renderer sends a whole line when one cell of it
+// What goes to the terminal. A renderer may send a whole line when one cell of it
 // changes, so lines are kept short, and over a slow link only some of them go out
 // while poles move.
 
@@ -93,7 +93,7 @@ func (m *Model) calm(frame string) string {
 		if next[y] == shown[y] {
 			continue
 		}
-		cost := float64(len(next[y]) + 8) // and moving there
+		cost := float64(difference(shown[y], next[y]))
 		if cost > c.room {
 			c.behind = true
 			continue
@@ -102,6 +102,23 @@ func (m *Model) calm(frame string) string {
 		shown[y] = next[y]
 	}
 	return strings.Join(shown, "\n")
+}
+
+// difference bounds the bytes that change one line into another where only the
+// cells that differ are sent: those between the first and the last of them, with
+// moving there and an ink before and after.
+func difference(a, b string) int {
+	const around = 30
+	n := min(len(a), len(b))
+	head := 0
+	for head < n && a[head] == b[head] {
+		head++
+	}
+	tail := 0
+	for tail < n-head && a[len(a)-1-tail] == b[len(b)-1-tail] {
+		tail++
+	}
+	return min(max(len(b)-head-tail, 0)+around, len(b)+around/3)
 }
 
 // urgency are the lines in the order in which they go out: where the held pole
