@@ -141,15 +141,15 @@ func (m *Model) searching() string {
 	if h == nil {
 		return ""
 	}
-	text := "seeking the fastest within the limits"
+	text := "seeking the fastest"
 	if h.kind == study.Quietest {
 		text = fmt.Sprintf("seeking the quietest within %.3g s", h.within)
 	}
-	if h.best != nil {
-		text += fmt.Sprintf(": %.3g s, %.3g x floor so far", h.best.Transient.Settle, h.best.Noise.OverFloorRMS)
-	}
 	if h.all > 0 {
 		text += fmt.Sprintf(", %d %%", min(h.tried*100/h.all, 100))
+	}
+	if h.best != nil {
+		text += fmt.Sprintf(": %.3g s, %.3g x floor so far", h.best.Transient.Settle, h.best.Noise.OverFloorRMS)
 	}
 	return text
 }

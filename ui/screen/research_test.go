@@ -72,7 +72,7 @@ func TestTradeoffIsWalkedAndTaken(t *testing.T) {
 	r.wantShown("computing")
 	r.study(study.Answer{Gen: q.Gen, Kind: q.Kind, Scaling: list, Family: curve(0.1, 1, 10), Done: true})
 	r.wantShown("all speeds x 1 ")
-	r.wantShown("settle over the limit")
+	r.wantShown("over the limit: settle")
 	r.press("left")
 	r.wantShown("all speeds x 2 ")
 	r.wantShown("0.200 s")
