@@ -32,10 +32,11 @@ type Designer struct {
 	pair    pair     // what placement works on
 	control *control // nil without feedback
 
-	form      schur.Form
-	placement placement.Solver
-	transient transient.Solver
-	keep      []bool // states that count in the transient; nil is all
+	form         schur.Form // of F
+	filteredForm schur.Form // of (I − Lf C) A, in current form
+	placement    placement.Solver
+	transient    transient.Solver
+	keep         []bool // states that count in the transient; nil is all
 }
 
 // FixedModesError says that the wanted poles ask for what no gain can do.

@@ -248,14 +248,22 @@ func (d *Designer) judgeTransient(out *Design, f, ls, lf *mat.Dense) {
 	if !out.Stable {
 		return
 	}
+	form := &d.form
 	if d.opt.Form == Current { // the error after each sample: (I − Lf C) A
 		var ca mat.Dense
 		ca.Mul(d.c, d.a)
 		f = mat.NewDense(d.n, d.n, nil)
 		f.Mul(lf, &ca)
 		f.Sub(d.a, f)
+		if form = &d.filteredForm; form.Factor(raw(f)) != nil {
+			form = nil
+		}
 	}
-	settle, peak, err := d.transient.Settle(raw(f), d.model.Period, d.keep)
+	shape := raw(f)
+	if d.keep == nil && form != nil { // orthogonal coordinates change no norm of the whole
+		shape = form.T()
+	}
+	settle, peak, err := d.transient.Settle(shape, d.model.Period, d.keep)
 	if err != nil {
 		out.Warnings = append(out.Warnings, "the start-up transient could not be computed: "+err.Error())
 		return

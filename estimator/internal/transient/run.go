@@ -113,7 +113,7 @@ func (s *Solver) place(x []float64) place { return place{x: x, upper: s.kept(x),
 
 func (s *Solver) norm(p *place) float64 {
 	if p.exact < 0 {
-		p.exact = s.gram.norm(s.n, p.x, s.keep)
+		p.exact = s.gram.norm(s.n, p.x, s.keep, s.first)
 		s.peak = max(s.peak, p.exact)
 	}
 	return p.exact

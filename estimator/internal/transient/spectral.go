@@ -12,8 +12,9 @@ func (g *spectral) reset(n int) {
 	*g = spectral{gram: make([]float64, n*n), diagonal: make([]float64, n), off2: make([]float64, n), v: make([]float64, n), w: make([]float64, n)}
 }
 
-// norm returns the 2-norm of the rows and columns keep of the n×n matrix x.
-func (g *spectral) norm(n int, x []float64, keep []int) float64 {
+// norm returns the 2-norm of the rows and columns keep of the n×n matrix x, whose row i
+// is zero before column first[i].
+func (g *spectral) norm(n int, x []float64, keep, first []int) float64 {
 	m := len(keep)
 	var scale float64
 	for _, i := range keep {
@@ -28,13 +29,19 @@ func (g *spectral) norm(n int, x []float64, keep []int) float64 {
 	clear(a)
 	row := g.v[:m]
 	for _, i := range keep {
+		from := m
 		for p, k := range keep {
 			row[p] = x[i*n+k] / scale
+			if k >= first[i] {
+				from = min(from, p)
+			}
 		}
-		for p, v := range row {
-			dst := a[p*m : p*m+m]
-			for q := p; q < m; q++ {
-				dst[q] += v * row[q]
+		for p := from; p < m; p++ {
+			v, part := row[p], row[p:]
+			dst := a[p*m+p : p*m+m]
+			dst = dst[:len(part)]
+			for q, w := range part {
+				dst[q] += v * w
 			}
 		}
 	}

@@ -7,9 +7,10 @@ import (
 	"gonum.org/v1/gonum/blas/blas64"
 )
 
-// multiply sets c = a·b + add·c for n×n matrices without padding.
-func multiply(n int, c, a, b []float64, add float64) {
-	if n > 8 {
+// multiply sets c = a·b + add·c for matrices of the form of F, without padding.
+func (s *Solver) multiply(c, a, b []float64, add float64) {
+	n := s.n
+	if n > 8 && s.first[n-1] == 0 {
 		blas64.Gemm(blas.NoTrans, blas.NoTrans, 1, general(n, a), general(n, b), add, general(n, c))
 		return
 	}
@@ -22,10 +23,12 @@ func multiply(n int, c, a, b []float64, add float64) {
 				row[k] *= add
 			}
 		}
-		for l, v := range a[i*n : i*n+n] {
-			other := b[l*n : l*n+n][:len(row)]
-			for k := range row {
-				row[k] += v * other[k]
+		for l := s.first[i]; l < n; l++ {
+			v, from := a[i*n+l], s.first[l]
+			other, part := b[l*n+from:l*n+n], row[from:]
+			part = part[:len(other)]
+			for k, w := range other {
+				part[k] += v * w
 			}
 		}
 	}
@@ -38,7 +41,7 @@ func general(n int, data []float64) blas64.General {
 // advance sets dst = x + E_j x.
 func (s *Solver) advance(dst, x []float64, j int) {
 	copy(dst, x)
-	multiply(s.n, dst, s.steps[j], x, 1)
+	s.multiply(dst, s.steps[j], x, 1)
 }
 
 func frobenius(x []float64) float64 {
@@ -88,7 +91,7 @@ func (s *Solver) prepare(f blas64.General, period float64) (h float64, err error
 		for i, v := range e {
 			next[i] = 2 * v
 		}
-		multiply(n, next, e, e, 1)
+		s.multiply(next, e, e, 1)
 	}
 	return 0, ErrUnstable
 }
@@ -110,7 +113,7 @@ func (s *Solver) identityPlus(e []float64) float64 {
 // exponential replaces E_0 = F by exp(F·h) − I. The norm of F·h is 1/128, so
 // that the terms up to the eighth reach full precision.
 func (s *Solver) exponential(h float64) {
-	n, f, sum := s.n, s.at, s.step(0)
+	f, sum := s.at, s.step(0)
 	for i, v := range sum {
 		f[i] = v * h
 	}
@@ -121,7 +124,7 @@ func (s *Solver) exponential(h float64) {
 			sum[i] /= float64(k)
 		}
 		copy(s.next, f)
-		multiply(n, s.next, f, sum, 1)
+		s.multiply(s.next, f, sum, 1)
 		copy(sum, s.next)
 	}
 }
