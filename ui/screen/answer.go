@@ -39,6 +39,9 @@ func (m *Model) answer(a *desk.Answer) tea.Cmd {
 		return nil
 	}
 	if a.Err != nil {
+		if a.Gen == m.gen && m.refit(a) {
+			return m.ask()
+		}
 		if a.Gen == m.gen {
 			m.failure, m.pending, m.keepWanted = a.Err, time.Time{}, false
 			m.refuse("no design: " + a.Err.Error())
@@ -125,11 +128,8 @@ func mergeLimits(old []readings.Limit, a *desk.Answer) []readings.Limit {
 // adopt takes over what only the background knows: the first targets, the fixed
 // poles, the controller's.
 func (m *Model) adopt(a *desk.Answer) {
-	if len(m.fixed) != len(a.Fixed) && len(a.Fixed) > 0 || m.fixed == nil {
-		if set, err := targets.From(a.Fixed, m.period()); err == nil {
-			m.fixed = set.List
-			m.dirty |= planeRegion
-		}
+	if a.Design.Form == m.now.form {
+		m.takeFixed(a.Fixed)
 	}
 	if l := a.Design.Loop; l != nil && m.controller == nil {
 		m.controller = without(l.Poles, a.Design.Reached)
