@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -107,7 +108,7 @@ func (m *Model) hunted(a *study.Answer) {
 // found says what a search ended with.
 func found(kind study.Kind, r *seek.Result) string {
 	d := r.Design
-	text := fmt.Sprintf("found: settles in %.3g s, %.3g x floor", d.Transient.Settle, d.Noise.OverFloorRMS)
+	text := fmt.Sprintf("found: settles in %.3g s, %.2f x floor", d.Transient.Settle, d.Noise.OverFloorRMS)
 	if math.IsNaN(d.Noise.OverFloorRMS) {
 		text = fmt.Sprintf("found: settles in %.3g s", d.Transient.Settle)
 	}
@@ -126,7 +127,9 @@ func broken(list []scenarios.LimitResult) []string {
 	var out []string
 	for _, l := range list {
 		if !l.Met {
-			out = append(out, strings.TrimSuffix(strings.ReplaceAll(l.Name, "_", " "), " s"))
+			words := strings.FieldsFunc(l.Name, func(r rune) bool { return r == '_' || r == ' ' })
+			words = slices.DeleteFunc(words, func(w string) bool { return w == "s" || w == "deg" || w == "max" || w == "min" })
+			out = append(out, strings.Join(words, " "))
 		}
 	}
 	return out
@@ -149,7 +152,7 @@ func (m *Model) searching() string {
 		text += fmt.Sprintf(", %d %%", min(h.tried*100/h.all, 100))
 	}
 	if h.best != nil {
-		text += fmt.Sprintf(": %.3g s, %.3g x floor so far", h.best.Transient.Settle, h.best.Noise.OverFloorRMS)
+		text += fmt.Sprintf(": %.3g s, %.2f x floor so far", h.best.Transient.Settle, h.best.Noise.OverFloorRMS)
 	}
 	return text
 }
@@ -163,7 +166,7 @@ func (m *Model) leaveSearch() tea.Cmd {
 		m.askStudy(study.Request{Kind: study.None})
 		m.say("the search is stopped")
 		if best != nil && best != m.now.design {
-			m.research.offer = &offer{best, fmt.Sprintf("the best until then settles in %.3g s, %.3g x floor", best.Transient.Settle, best.Noise.OverFloorRMS)}
+			m.research.offer = &offer{best, fmt.Sprintf("the best until then settles in %.3g s, %.2f x floor", best.Transient.Settle, best.Noise.OverFloorRMS)}
 			m.say("")
 		}
 	case m.research.offer != nil:
