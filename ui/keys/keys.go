@@ -14,6 +14,7 @@ type Map struct {
 	Plane, ZoomIn, ZoomOut, Fit, Map        key.Binding
 	Method, Form                            key.Binding
 	NextState, PreviousState, Trace         key.Binding
+	Band, Clock, Mouse                      key.Binding
 	Keep, Recall, Compare, Readings         key.Binding
 	Tradeoff, Sensors, Stress               key.Binding
 	Fastest, Quietest, OtherCurve           key.Binding
@@ -59,6 +60,9 @@ func Default() Map {
 		NextState:     bind(".", "traces of the next state", "."),
 		PreviousState: bind(",", "traces of the previous state", ","),
 		Trace:         bind("e", "traces: truth and estimate, error, innovation", "e"),
+		Band:          bind("b", "traces: the predicted band of two standard deviations around the estimate", "b"),
+		Mouse:         bind("P", "pointer: drag poles with the mouse; once more gives it back to the terminal", "P"),
+		Clock:         bind("T", "traces: a time cursor with values; the arrows move it, Esc leaves it", "T"),
 
 		Keep:     bind("a", "keep this design under the next letter", "a"),
 		Recall:   bind("1 to 9", "recall candidate A to I", "1", "2", "3", "4", "5", "6", "7", "8", "9"),
@@ -101,7 +105,7 @@ func (m Map) Groups() []Group {
 	return []Group{
 		{"Hold and move", []key.Binding{m.Next, m.Previous, m.Left, m.Down, m.Up, m.Right, m.FarLeft, m.FarDown, m.FarUp, m.FarRight}},
 		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Fastest, m.Quietest, m.Undo, m.Redo, m.Form, m.Method}},
-		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.Map, m.NextState, m.PreviousState, m.Trace, m.Readings, m.Tradeoff, m.Sensors, m.Stress}},
+		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.Map, m.Mouse, m.NextState, m.PreviousState, m.Trace, m.Band, m.Clock, m.Readings, m.Tradeoff, m.Sensors, m.Stress}},
 		{"Candidates", []key.Binding{m.Keep, m.Recall, m.Compare}},
 		{"Session", []key.Binding{m.Save, m.Help, m.Leave, m.Quit, m.Suspend}},
 		{"In a view", []key.Binding{m.ViewUp, m.ViewDown, m.PageUp, m.PageDown, m.ViewLeft, m.ViewRight, m.OtherCurve, m.Choose, m.Delete, m.Close}},

@@ -147,6 +147,9 @@ func (m *Model) press(name string, text rune) tea.Cmd {
 	case m.open != none:
 		return m.viewKey(name)
 	}
+	if m.clock.on && m.cursorKey(name) {
+		return nil
+	}
 	act, ok := m.actions[name]
 	if !ok {
 		return nil

@@ -133,20 +133,23 @@ type Model struct {
 	scroll, cursor int
 
 	// the picture
-	w, h   int
-	lay    layout
-	plane  targets.Plane
-	window plane.Window
-	half   float64 // height above the axis that the user zoomed to; 0 fits
-	trace  int
-	mode   traces.Mode
-	axes   map[axisKey]traces.Axis
-	dirty  region
-	canvas [4]canvas.Canvas
-	drawn  [4][]string
-	frame  string
-	slow   trickle
-	plot   mapping
+	w, h    int
+	lay     layout
+	plane   targets.Plane
+	window  plane.Window
+	half    float64 // height above the axis that the user zoomed to; 0 fits
+	trace   int
+	mode    traces.Mode
+	axes    map[axisKey]traces.Axis
+	dirty   region
+	canvas  [4]canvas.Canvas
+	drawn   [4][]string
+	frame   string
+	slow    trickle
+	plot    mapping
+	clock   timeCursor
+	pointer pointer
+	band    bool // around the estimates
 }
 
 func (m *Model) period() float64 { return m.cfg.Work.Bench.Model.Period }

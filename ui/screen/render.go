@@ -233,18 +233,20 @@ func (m *Model) drawTraces(c *canvas.Canvas) {
 		} else {
 			p.Title, p.Unit = readings.StateName(bench, key.index), readings.StateUnit(bench, key.index)
 		}
-		if m.shown != nil && key.mode == traces.Error && key.index < len(m.shown.Noise.Std) {
+		if m.shown != nil && key.mode != traces.Innovation && key.index < len(m.shown.Noise.Std) {
 			p.Band = 2 * m.shown.Noise.Std[key.index]
 		}
 		if m.run != nil {
 			if k := len(m.run.T); k > 0 {
 				p.End = m.run.T[k-1]
+				p.Cursor = m.cursorTime(p.End)
 			}
 			if m.run.Diverged {
 				p.Note = "the run diverged"
 			}
 		}
 		p.Late = m.late && m.runGen < m.gen || m.failure != nil
+		p.Around, p.Events = m.band, traces.Events(bench.Scenario)
 		traces.Draw(c, i*(width+gap), 0, width, c.H, p, m.theme)
 	}
 }
@@ -310,6 +312,8 @@ func (m *Model) hints(c *canvas.Canvas) {
 		list = []hint{{"Enter", "takes it"}, {"Esc", "leaves it"}}
 	case m.question != nil:
 		list = []hint{{"Esc", "leaves things as they are"}}
+	case m.open == none && m.clock.on:
+		list = append([]hint{{"h l", "move the time"}, {"H L", "far"}, {"Esc", "leaves the traces"}}, list[2:]...)
 	case m.open == compareView:
 		list = []hint{{"h l", "choose"}, {"Enter", "recall"}, {"x", "delete"}, {"j k", "scroll"}, {"Esc", "leave"}}
 	case m.open == tradeoffView:

@@ -30,6 +30,9 @@ func (m Model) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
 	case tea.KeyMsg:
 		m.mapKey()
 		cmd = m.key(msg)
+	case tea.MouseMsg:
+		m.mapKey()
+		cmd = m.mouse(msg)
 	case escapeMsg:
 		cmd = m.escapeTimeout(msg)
 	case AnswerMsg:

@@ -19,9 +19,12 @@ type Panel struct {
 	Mode        Mode
 	Axis        Axis
 	End         float64 // s, time at the right end
-	Band        float64 // two standard deviations around zero; NaN or 0 for none
-	Note        string  // trouble: the run diverged
-	Late        bool    // older than asked for
+	Band        float64 // two standard deviations, predicted; NaN or 0 for none
+	Around      bool    // show the band around the estimate too
+	Events      []Event
+	Cursor      *float64 // s; nil for none
+	Note        string   // trouble: the run diverged
+	Late        bool     // older than asked for
 }
 
 const gutter = 9 // labels of the value axis, in cells
@@ -40,6 +43,8 @@ func Draw(c *canvas.Canvas, x, y, w, h int, p Panel, t *theme.Theme) {
 		c.Text(x+gutter+2, top+rows/2, "nothing yet", theme.Faint)
 	} else {
 		plot(c, x+gutter, top, width, rows, p, g)
+		band(c, x+gutter, top, width, rows, p, t)
+		cursor(c, x+gutter, top, width, rows, p, g)
 	}
 	bottom := top + rows
 	c.Text(x+gutter+1, bottom, "0", theme.Faint)
@@ -48,6 +53,7 @@ func Draw(c *canvas.Canvas, x, y, w, h int, p Panel, t *theme.Theme) {
 		mid := number(p.End / 2)
 		c.Text(x+gutter+1+width/2-len(mid)/2, bottom, mid, theme.Faint)
 	}
+	events(c, x+gutter+1, bottom, width, p, g)
 }
 
 func heading(c *canvas.Canvas, x, y, w int, p Panel, g *theme.Glyphs) {
@@ -63,10 +69,15 @@ func heading(c *canvas.Canvas, x, y, w int, p Panel, g *theme.Glyphs) {
 	switch {
 	case p.Note != "":
 		c.Text(at, y, canvas.Cut(p.Note, x+w-at, g.Ellipsis), theme.Trouble)
+	case p.Cursor != nil && p.Curves != nil:
+		values(c, at, y, x+w-at, p, ink, g)
 	case p.Mode == Both:
 		at = c.Text(at, y, g.Truth.Sample+" truth", theme.Faint) + 2
 		if x+w-at >= 12 {
-			c.Text(at, y, g.Estimate.Sample+" estimate", ink)
+			at = c.Text(at, y, g.Estimate.Sample+" estimate", ink) + 2
+		}
+		if text := g.PlusMinus + "2 " + g.Sigma + " " + number(p.Band); p.Around && p.Band > 0 && x+w-at >= canvas.TextWidth(text) {
+			c.Text(at, y, text, theme.Faint)
 		}
 	case p.Mode == Error:
 		at = c.Text(at, y, g.Estimate.Sample+" error", ink) + 2
@@ -75,6 +86,30 @@ func heading(c *canvas.Canvas, x, y, w int, p Panel, g *theme.Glyphs) {
 		}
 	default:
 		c.Text(at, y, g.Estimate.Sample+" innovation", ink)
+	}
+}
+
+// values writes what the curves are at the time cursor.
+func values(c *canvas.Canvas, x, y, room int, p Panel, ink theme.Ink, g *theme.Glyphs) {
+	end := x + room
+	put := func(text string, ink theme.Ink) {
+		if x+canvas.TextWidth(text) <= end {
+			x = c.Text(x, y, text, ink) + 2
+		}
+	}
+	put(strconv.FormatFloat(*p.Cursor, 'f', max(3-int(math.Floor(math.Log10(max(p.End, 1e-9)))), 0), 64)+" s", theme.Hold)
+	d := (p.Axis.High - p.Axis.Low) / 1000
+	for i, series := range p.Curves {
+		v := At(series, *p.Cursor, p.End)
+		sample, in := g.Estimate.Sample, ink
+		if i < len(p.Curves)-1 {
+			sample, in = g.Truth.Sample, theme.Faint
+		}
+		text := g.Undefined
+		if !math.IsNaN(v) {
+			text = value(v, d)
+		}
+		put(sample+" "+text, in)
 	}
 }
 
