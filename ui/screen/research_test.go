@@ -87,6 +87,23 @@ func TestTradeoffIsWalkedAndTaken(t *testing.T) {
 	r.wantPoles(before...)
 }
 
+// A view that was open when the session was saved is filled as soon as there is a
+// design.
+func TestOpenViewOfASessionIsStudied(t *testing.T) {
+	for focus, kind := range map[string]study.Kind{"trade-off": study.Tradeoff, "stress": study.Tolerances} {
+		r, s := studied(t, scenarios.Limits{}, func(c *screen.Config) { c.Work.View = desk.View{Plane: "s", Focus: focus} })
+		if len(s.asked) != 1 || s.last().Kind != kind {
+			t.Errorf("%s: asked for %+v", focus, s.asked)
+		}
+		if got := r.work().View.Focus; got != focus {
+			t.Errorf("%s is kept as %s", focus, got)
+		}
+	}
+	r, _ := studied(t, scenarios.Limits{}, func(c *screen.Config) { c.Work.View = desk.View{Plane: "s", Focus: "sensors"} })
+	r.slow()
+	r.wantShown("3 of 3 states seen")
+}
+
 func TestTradeoffTakesABestEstimator(t *testing.T) {
 	r, s := studied(t, scenarios.Limits{})
 	r.press("t")

@@ -3,6 +3,7 @@ package views_test
 import (
 	"math"
 	"math/cmplx"
+	"strings"
 	"testing"
 
 	"gonum.org/v1/gonum/mat"
@@ -11,6 +12,7 @@ import (
 	"polewright/estimator/sweep"
 	"polewright/plants/library"
 	"polewright/ui/desk/desktest"
+	"polewright/ui/plane/targets"
 	"polewright/ui/views"
 )
 
@@ -153,5 +155,21 @@ func TestWalkingSkipsWhatHasNoPlace(t *testing.T) {
 	f := views.Tradeoff{Scaling: list, At: 1}
 	if _, ok := f.Point(); ok {
 		t.Error("a point without a place is under the cursor")
+	}
+}
+
+func TestSeveralSensorsLostAtOnce(t *testing.T) {
+	b := bench()
+	b.Model.C, b.Model.SensorNames = mat.NewDense(3, 1, []float64{1, 1, 1}), []string{"ruler", "tape", "laser"}
+	f := views.Sensors{Bench: b, Plane: targets.S, Plugged: []bool{false, true, false},
+		Design: &estimator.Design{SensorSets: []estimator.SensorSet{{Lost: []int{0}, Stable: true}, {Lost: []int{2}}, {Lost: []int{0, 2}}}}}
+	seen := &views.Seen{Model: &estimator.Model{A: b.Model.A, C: mat.NewDense(1, 1, []float64{1}), SensorNames: []string{"tape"}, StateNames: b.Model.StateNames},
+		Analysis: &estimator.Analysis{Observability: estimator.Observability{Rank: 1}, FloorReason: "none here"}}
+	f.All, f.Rest = seen, seen
+	all := text(f.Lines(80, plain))
+	for _, must := range []string{"this design stays stable without it", "this design is UNSTABLE without it", "UNSTABLE without all of them", "tape would see"} {
+		if !strings.Contains(all, must) {
+			t.Errorf("nothing about %q:\n%s", must, all)
+		}
 	}
 }

@@ -121,6 +121,30 @@ func (p *sensorPage) left() {
 		p.prose(2, "What is left sees every state; a new design works without what is unplugged.", theme.Text)
 	}
 	p.floors(all, rest)
+	p.together()
+}
+
+// together says what this design does when several sensors fail at once.
+func (p *sensorPage) together() {
+	var lost []int
+	for j, on := range p.f.Plugged {
+		if !on {
+			lost = append(lost, j)
+		}
+	}
+	if len(lost) < 2 || p.f.Design == nil {
+		return
+	}
+	for _, s := range p.f.Design.SensorSets {
+		if !slices.Equal(s.Lost, lost) {
+			continue
+		}
+		if s.Stable {
+			p.prose(2, "This design stays stable without all of them.", theme.Text)
+		} else {
+			p.prose(2, "This design is UNSTABLE without all of them.", theme.Trouble)
+		}
+	}
 }
 
 func unstableAmong(list []complex128, period float64) bool {

@@ -118,7 +118,7 @@ func (p *tradePlot) inside(x, y int) bool {
 func (p *tradePlot) draw() {
 	p.ticks()
 	p.limits()
-	scaling, _ := firstRune(p.g.Estimate.Horizontal)
+	scaling := []rune(p.g.Estimate.Horizontal)[0]
 	if p.f.Curve == Floors {
 		p.curve(p.f.Scaling, scaling, theme.Faint)
 		p.curve(p.f.Family, p.g.Dot, theme.Text)
@@ -134,13 +134,6 @@ func (p *tradePlot) draw() {
 	if point, ok := p.f.Point(); ok {
 		p.cursor(point)
 	}
-}
-
-func firstRune(s string) (rune, bool) {
-	for _, r := range s {
-		return r, true
-	}
-	return ' ', false
 }
 
 func (p *tradePlot) ticks() {
