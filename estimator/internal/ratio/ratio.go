@@ -8,10 +8,11 @@
 package ratio
 
 import (
+	"cmp"
 	"errors"
 	"math"
 	"math/cmplx"
-	"sort"
+	"slices"
 )
 
 // Errors of Reset.
@@ -66,7 +67,9 @@ func (x *Sensitivity) Reset(open, closed []complex128, factor float64, discrete 
 	x.zeros = append(x.zeros[:0], open...)
 	x.poles = append(x.poles[:0], closed...)
 	bySize := func(list []complex128) {
-		sort.Slice(list, func(i, j int) bool { return cmplx.Abs(list[i]) < cmplx.Abs(list[j]) })
+		slices.SortFunc(list, func(a, b complex128) int {
+			return cmp.Compare(real(a)*real(a)+imag(a)*imag(a), real(b)*real(b)+imag(b)*imag(b))
+		})
 	}
 	bySize(x.zeros) // paired by size, the partial products stay within range
 	bySize(x.poles)
@@ -92,15 +95,17 @@ func (x *Sensitivity) at(w float64) (q sample, near float64) {
 		pr, pi := real(s)-real(p), imag(s)-imag(p)
 		zz, pp := zr*zr+zi*zi, pr*pr+pi*pi
 		near = min(near, pp)
-		if zz > 0 {
+		if zz > 1e-300 {
 			near = min(near, zz)
-			sumRe += zr / zz
-			sumIm -= zi / zz
+			iz := 1 / zz
+			sumRe += zr * iz
+			sumIm -= zi * iz
 		}
-		sumRe -= pr / pp
-		sumIm += pi / pp
+		ip := 1 / pp
+		sumRe -= pr * ip
+		sumIm += pi * ip
 		// times (s − z) / (s − p)
-		fr, fi := (zr*pr+zi*pi)/pp, (zi*pr-zr*pi)/pp
+		fr, fi := (zr*pr+zi*pi)*ip, (zi*pr-zr*pi)*ip
 		re, im = re*fr-im*fi, re*fi+im*fr
 	}
 	return sample{w, complex(re, im), turn * complex(sumRe, sumIm)}, math.Sqrt(near)
