@@ -318,7 +318,9 @@ func TestViewsOfResearchFit(t *testing.T) {
 			if k == "t" {
 				r.study(study.Answer{Gen: s.last().Gen, Kind: study.Tradeoff, Scaling: curve(0.2, 1, 4), Family: curve(0.01, 1, 1e3), Done: true})
 			}
-			r.slow()
+			if k == "i" {
+				r.slow()
+			}
 			fits(t, r.m.View(), size[0], size[1])
 			r.press("q")
 		}
