@@ -59,7 +59,7 @@ func (w Window) Lattice(held complex128, pair bool) (cells []complex128, width, 
 }
 
 // offset is v less the multiples of d below it.
-func offset(v, d float64) float64 { return v - math.Floor(v/d)*d }
+func offset(v, d float64) float64 { return v - math.Floor(v/d+edge)*d }
 
 // Shade lays tones under what is drawn: row by row those of the upper half and of
 // the axis, mirrored below, or of the axis alone, which then get the rows beside
@@ -107,7 +107,7 @@ func shadeRow(c *canvas.Canvas, x, y int, tones []Tone, t *theme.Theme) {
 }
 
 // hatching is how many cells apart the strokes are.
-const hatching = 4
+const hatching = 6
 
 // Legend explains the shades in one line that ends before column right, within
 // room cells; where that is too little it draws nothing.

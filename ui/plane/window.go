@@ -135,15 +135,20 @@ func (w Window) Inside(p complex128) bool {
 	return c >= 0 && c < w.W && r >= 0 && r < w.H
 }
 
+// edge, in cells, keeps what lies on the edge of a cell, as round numbers often
+// do, from being rounded now to one side and now to the other.
+const edge = 1e-7
+
 // Column of a real part, Row of an imaginary part; beyond the picture they are
 // bounded, but outside it.
 func (w Window) Column(x float64) int {
-	return int(max(min(math.Floor((x-w.X0)/w.DX), 1e6), -1e6))
+	return int(max(min(math.Floor((x-w.X0)/w.DX+edge), 1e6), -1e6))
 }
 
 // Row is the row of an imaginary part.
 func (w Window) Row(y float64) int {
-	return w.H/2 - int(max(min(math.Round(y/w.DY), 1e6), -1e6))
+	n := math.Copysign(math.Floor(math.Abs(y)/w.DY+0.5+edge), y)
+	return w.H/2 - int(max(min(n, 1e6), -1e6))
 }
 
 // series are the preferred numbers R10 of ISO 3, rounded to two digits.

@@ -53,7 +53,7 @@ type mapping struct {
 	tones   []plane.Tone
 }
 
-// held is what a map of the pole in the hand would stand on; false where there is
+// ground is what a map of the pole in the hand would stand on; false where there is
 // none to make.
 func (m *Model) ground() (ground, bool) {
 	t, fixed, ok := m.heldTarget()
@@ -157,7 +157,7 @@ func (m *Model) heldCell() (int, bool) {
 func (m *Model) mapAnswer(a *survey.Answer) {
 	p := &m.plot
 	g, ok := m.ground()
-	if a.Gen != p.gen || !ok || !g.same(&p.ground) {
+	if a.Gen != p.gen || !ok || !g.same(&p.ground) || a.Err == nil && len(a.Spots) != len(p.cells) {
 		return
 	}
 	p.running = p.running && !a.Done && a.Err == nil
@@ -169,6 +169,9 @@ func (m *Model) mapAnswer(a *survey.Answer) {
 	p.shown = a
 	tones := make([]plane.Tone, len(a.Spots))
 	for i, s := range a.Spots {
+		if !s.Known && unstable(p.cells[i], m.period()) {
+			continue // lent from the other side of the border
+		}
 		if s.Seen && (!math.IsNaN(s.OverFloor) || s.Broken >= 0) {
 			tones[i] = plane.Tone{Level: plane.Level(s.OverFloor), Hatched: s.Broken >= 0}
 		}
@@ -191,27 +194,27 @@ func (m *Model) toggleMap() tea.Cmd {
 }
 
 // promise says what the map says of the held pole's cell.
-func (m *Model) promise() (text string, trouble bool) {
+func (m *Model) promise() string {
 	p := &m.plot
 	i, ok := m.heldCell()
 	if p.shown == nil || !ok || i >= len(p.shown.Spots) {
-		return "", false
+		return ""
 	}
 	s := p.shown.Spots[i]
 	switch {
 	case !s.Known:
-		return "", false
+		return ""
 	case math.IsNaN(s.OverFloor) && s.Broken < 0:
-		return "here: no stable estimator, or no floor", true
+		return "here: no stable estimator, or no floor"
 	}
-	text = fmt.Sprintf("here: noise %s x floor", readings.Fixed(s.OverFloor, 2, &m.theme.Glyphs))
+	text := fmt.Sprintf("here: noise %s x floor", readings.Fixed(s.OverFloor, 2, &m.theme.Glyphs))
 	if math.IsNaN(s.OverFloor) {
 		text = "here: no floor"
 	}
 	if s.Broken >= 0 && s.Broken < len(p.shown.Limits) {
-		return text + "; limit broken: " + readings.LimitWords(p.shown.Limits[s.Broken]), true
+		return text + "; limit broken: " + readings.LimitWords(p.shown.Limits[s.Broken])
 	}
-	return text, false
+	return text
 }
 
 // mapLine shows the promise and, where there is room, the legend.
@@ -221,8 +224,7 @@ func (m *Model) mapLine(c *canvas.Canvas) {
 	}
 	x := 0
 	if m.message == "" && m.prompt == nil && m.question == nil {
-		text, _ := m.promise()
-		x = c.Text(0, 0, text, theme.Faint)
+		x = c.Text(0, 0, m.promise(), theme.Faint)
 	} else {
 		x = canvas.TextWidth(m.message)
 	}

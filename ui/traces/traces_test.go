@@ -117,3 +117,49 @@ func TestAnyValues(t *testing.T) {
 		}
 	})
 }
+
+// Events are marked where they are on the time axis, and said where there is room.
+func TestEventsOnTheTimeAxis(t *testing.T) {
+	p := traces.Panel{Curves: [][]float64{nil, ramp(100)}, Axis: traces.Axis{Low: 0, High: 1}, End: 10,
+		Events: []traces.Event{{At: 2.5, Until: 6, Text: "gust"}, {At: 7, Until: inf, Text: "a text that is too long for what is left"}, {At: 30, Text: "later"}}}
+	lines := draw(p, 60, 8)
+	axis := lines[len(lines)-1]
+	if !strings.Contains(axis, "▴gust") || strings.Count(axis, "▴") != 2 || strings.Contains(axis, "later") || strings.Contains(axis, "a text") {
+		t.Errorf("%q", axis)
+	}
+	if k := len([]rune(axis[:strings.Index(axis, "▴")])); k < 21 || k > 23 { // 10 cells of labels, then a quarter of 50
+		t.Errorf("2.5 of 10 s in column %d", k)
+	}
+}
+
+// The time cursor tells the values of both curves there.
+func TestCursorTellsValues(t *testing.T) {
+	at := 4.0
+	p := traces.Panel{Title: "height", Curves: [][]float64{ramp(101), make([]float64, 101)}, Axis: traces.Axis{Low: 0, High: 1}, End: 10, Cursor: &at}
+	lines := draw(p, 60, 8)
+	if !strings.Contains(lines[0], "4.00 s") || !strings.Contains(lines[0], "0.4000") || !strings.Contains(lines[0], "0.0000") {
+		t.Errorf("%q", lines[0])
+	}
+	if v := traces.At(ramp(101), 11, 10); !math.IsNaN(v) {
+		t.Errorf("%g beyond the end", v)
+	}
+	if v := traces.At(nil, 1, 10); !math.IsNaN(v) {
+		t.Errorf("%g of nothing", v)
+	}
+}
+
+// The band lies around the estimate, as wide as it is predicted.
+func TestBandAroundTheEstimate(t *testing.T) {
+	flat := make([]float64, 100)
+	p := traces.Panel{Curves: [][]float64{nil, flat}, Axis: traces.Axis{Low: -1, High: 1}, End: 1, Band: 0.4, Around: true}
+	lines := draw(p, 60, 13) // 11 rows, 5 for a height of 1
+	for row, want := range map[int]bool{3: false, 4: true, 5: true, 7: true, 8: true, 9: false} {
+		if got := strings.Contains(lines[row], "░"); got != want {
+			t.Errorf("row %d: band %v, expected %v\n%s", row, got, want, strings.Join(lines, "\n"))
+		}
+	}
+	p.Around = false
+	if strings.Contains(strings.Join(draw(p, 60, 13), ""), "░") {
+		t.Error("a band without being asked for")
+	}
+}

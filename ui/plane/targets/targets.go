@@ -263,7 +263,9 @@ func (s Set) lift(i, dy int, p complex128, g Grid) (Set, int, Event, error) {
 	return out, i, Joined, nil
 }
 
-func (g Grid) column(x float64) float64 { return math.Floor((x - g.X0) / g.DX) }
+// column is the cell of a real part; on the edge of two it is the right one,
+// whatever rounding does.
+func (g Grid) column(x float64) float64 { return math.Floor((x-g.X0)/g.DX + 1e-7) }
 
 // with returns a copy with target i replaced.
 func (s Set) with(i int, t Target) Set {
