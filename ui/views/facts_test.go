@@ -11,6 +11,7 @@ import (
 	"polewright/estimator"
 	"polewright/estimator/sweep"
 	"polewright/plants/library"
+	"polewright/ui/desk"
 	"polewright/ui/desk/desktest"
 	"polewright/ui/plane/targets"
 	"polewright/ui/views"
@@ -77,33 +78,39 @@ func TestDirectionAmongSeveralIsTheLeastSeen(t *testing.T) {
 func TestSharesOfNoiseAddUp(t *testing.T) {
 	for _, name := range library.Names() {
 		b := desktest.Bench(t, name)
-		_, _, d := desktest.Start(t, b, estimator.Options{})
-		quiet := *b.Model
-		q := mat.NewSymDense(quiet.Q.SymmetricDim(), nil)
-		quiet.Q = q
-		silent, err := estimator.NewDesigner(&quiet, estimator.Options{})
-		if err != nil {
-			t.Fatal(err)
+		for _, form := range []estimator.Form{estimator.Prediction, estimator.Current} {
+			if form == estimator.Current && !b.Model.Discrete() {
+				continue
+			}
+			sharesAddUp(t, name, b, estimator.Options{Form: form})
 		}
-		same, err := silent.Judge(estimator.Given{L: d.Gain})
-		if err != nil {
-			t.Fatal(err)
+	}
+}
+
+func sharesAddUp(t *testing.T, name string, b *desk.Bench, o estimator.Options) {
+	_, _, d := desktest.Start(t, b, o)
+	quiet := *b.Model
+	quiet.Q = mat.NewSymDense(quiet.Q.SymmetricDim(), nil)
+	silent, err := estimator.NewDesigner(&quiet, o)
+	if err != nil {
+		t.Fatal(err)
+	}
+	same, err := silent.Judge(estimator.Given{L: d.Gain, Lf: d.GainCurrent})
+	if err != nil {
+		t.Fatal(err)
+	}
+	sensor, process := views.Shares(b.Model, d)
+	for i, std := range d.Noise.Std {
+		only := 0.0
+		for _, v := range sensor.RawRowView(i) {
+			only = math.Hypot(only, v)
 		}
-		for i, std := range d.Noise.Std {
-			sensor, process := views.Shares(b.Model, d, i)
-			sum := process * process
-			var only float64
-			tiny := 1e-9 * b.Model.StateScale[i] // a delay register is exact but for rounding
-			for _, v := range sensor {
-				sum += v * v
-				only += v * v
-			}
-			if math.Abs(math.Sqrt(sum)-std) > 1e-8*std+tiny {
-				t.Errorf("%s, state %d: parts give %v, expected %v", name, i, math.Sqrt(sum), std)
-			}
-			if want := same.Noise.Std[i]; math.Abs(math.Sqrt(only)-want) > 1e-6*std+tiny {
-				t.Errorf("%s, state %d: sensors give %v, without process noise it is %v", name, i, math.Sqrt(only), want)
-			}
+		tiny := 1e-9 * b.Model.StateScale[i] // a delay register is exact but for rounding
+		if sum := math.Hypot(only, process[i]); !(math.Abs(sum-std) <= 1e-8*std+tiny) {
+			t.Errorf("%s, form %d, state %d: parts give %v, expected %v", name, o.Form, i, sum, std)
+		}
+		if want := same.Noise.Std[i]; !(math.Abs(only-want) <= 1e-6*std+tiny) {
+			t.Errorf("%s, form %d, state %d: sensors give %v, without process noise it is %v", name, o.Form, i, only, want)
 		}
 	}
 }
@@ -113,7 +120,7 @@ func TestSharesOfCorrelatedSensorsAreNotMadeUp(t *testing.T) {
 	_, _, d := desktest.Start(t, b, estimator.Options{})
 	m := *b.Model
 	m.R = mat.NewSymDense(2, []float64{m.R.At(0, 0), 1e-9, 1e-9, m.R.At(1, 1)})
-	if _, process := views.Shares(&m, d, 0); !math.IsNaN(process) {
+	if _, process := views.Shares(&m, d); !math.IsNaN(process[0]) {
 		t.Errorf("process share %v", process)
 	}
 }
