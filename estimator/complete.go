@@ -4,12 +4,14 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"math/cmplx"
 
 	"gonum.org/v1/gonum/mat"
 
 	"polewright/estimator/internal/frequency"
 	"polewright/estimator/internal/placement"
 	"polewright/estimator/internal/schur"
+	"polewright/estimator/poles"
 )
 
 // Complete returns a quick design of this Designer with the figures that were left
@@ -150,7 +152,11 @@ func (d *Designer) float32Shift(out *Design) float64 {
 	if form.Factor(raw(&f)) != nil {
 		return math.NaN()
 	}
-	_, worst := matchPoles(out.Reached, form.Eigenvalues())
+	have, worst := form.Eigenvalues(), 0.0
+	for i, k := range poles.Match(out.Reached, have) {
+		v := out.Reached[i]
+		worst = max(worst, cmplx.Abs(have[k]-v)/d.model.poleSize(v))
+	}
 	return worst
 }
 

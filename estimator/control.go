@@ -165,8 +165,11 @@ func (d *Designer) readMargins(loop *Loop, input int, factor float64) {
 	delay := m.Delay
 	if d.model.Discrete() {
 		delay *= d.model.Period
-		if m.Delay < mostDelay-2 {
+		switch {
+		case m.Delay < mostDelay-2:
 			samples = x.WholeDelay(int(m.Delay) + 2)
+		case m.Delay < math.MaxInt32: // every delay below the margin is stable
+			samples = int(math.Ceil(m.Delay)) - 1
 		}
 	}
 	phase, below, above := m.Phase*180/math.Pi, 20*math.Log10(m.GainBelow), 20*math.Log10(m.GainAbove)

@@ -3,6 +3,7 @@ package estimator_test
 import (
 	"context"
 	"math"
+	"math/cmplx"
 	"testing"
 
 	"gonum.org/v1/gonum/mat"
@@ -128,6 +129,14 @@ func TestInputNoiseOfTheWrittenOutLoop(t *testing.T) {
 		}
 		if err := solve(p.RawMatrix(), q.RawMatrix()); err != nil {
 			t.Skip(err)
+		}
+		if mat.Norm(a, 2) > 1e3 || mat.Norm(p, 2) > 1e8 {
+			t.Skip("a loop that doubles cannot hold to six digits")
+		}
+		for _, v := range form.Eigenvalues() { // near the limit both lose digits
+			if m.Discrete() && cmplx.Abs(v) > 0.999 || !m.Discrete() && real(v) > -1e-3 {
+				t.Skip("a loop on the edge")
+			}
 		}
 		for u := range inputs {
 			row := mat.NewVecDense(2*n, append(mat.Row(nil, u, ux), mat.Row(nil, u, ue)...))

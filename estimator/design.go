@@ -103,7 +103,8 @@ type Design struct {
 	Transient Transient
 	Loop      *Loop // nil without feedback
 	// Float32Shift is the largest relative movement of an eigenvalue of F when
-	// A, L and C are rounded to float32.
+	// A, L and C are rounded to float32; that of one within 0.01 of z = 0 is the
+	// distance itself.
 	Float32Shift float64
 	SensorSets   []SensorSet
 	Warnings     []string

@@ -127,7 +127,7 @@ func extremes() []extreme {
 				}
 			}},
 		{name: "very fast poles", model: oscillator, poles: []complex128{-1e6, -2e6}, stable: true},
-		{name: "very slow poles", model: oscillator, poles: []complex128{-1e-6, -2e-6}, fails: estimator.ErrNotReached}, // det F = 2e-12 is the difference of numbers near 4
+		{name: "very slow poles", model: oscillator, poles: []complex128{-1e-6, -2e-6}, says: "reached only", stable: true}, // det F = 2e-12 is the difference of numbers near 4
 		{name: "far apart", model: oscillator, poles: []complex128{-1e-3, -1e5}, stable: true},
 		{name: "deadbeat", model: everyTenth, poles: []complex128{0, 0}, says: "fewer eigenvectors", stable: true},
 		{name: "at the sampling limit", model: everyTenth, poles: []complex128{-0.5, 0.2}, says: "sampling limit", stable: true},
@@ -249,7 +249,7 @@ func TestExtremeDesigns(t *testing.T) {
 			if defined := c.stable && !c.blank; defined != (got.Noise.Std != nil) {
 				t.Errorf("noise %v of an estimator that is stable: %v; %q", got.Noise.Std, c.stable, got.Warnings)
 			}
-			if got.Wanted != nil && !(got.WorstError < 1e-6) {
+			if got.Wanted != nil && !(got.WorstError < 1e-6) && c.says != "reached only" {
 				t.Errorf("poles off by %g", got.WorstError)
 			}
 			if c.check != nil {

@@ -6,6 +6,7 @@ import (
 	"gonum.org/v1/gonum/mat"
 
 	"polewright/estimator/internal/riccati"
+	"polewright/estimator/internal/schur"
 )
 
 func (d *Designer) findFloor() {
@@ -19,15 +20,68 @@ func (d *Designer) findFloor() {
 		return
 	}
 	cov := sol.P
+	d.clearKnown(cov, sol.L)
 	if d.opt.Form == Current {
 		if cov = d.filtered(sol.P); cov == nil {
 			d.analysis.FloorReason = "no best linear estimator to compare with: the innovation covariance is singular"
 			return
 		}
+		d.clearKnown(cov, nil)
 	}
 	f := &Floor{Covariance: d.unscaleCovariance(cov), Gain: d.unscaleGain(sol.L), Poles: sol.Poles}
 	f.Std = roots(f.Covariance)
 	d.analysis.Floor = f
+}
+
+// clearKnown sets to zero what the floor has for states that are known exactly: no
+// process noise reaches them through the entries of A, and they die out by
+// themselves, as the lag of a known input does. Rounding leaves dust there, which a
+// ratio to the floor would take for a figure.
+func (d *Designer) clearKnown(p, l *mat.Dense) {
+	noisy := make([]bool, d.n)
+	for i := range noisy {
+		noisy[i] = d.w.At(i, i) > 0
+	}
+	for changed := true; changed; {
+		changed = false
+		for i := range noisy {
+			for j := range noisy {
+				if !noisy[i] && noisy[j] && d.a.At(i, j) != 0 {
+					noisy[i], changed = true, true
+				}
+			}
+		}
+	}
+	var known []int
+	for i, n := range noisy {
+		if !n {
+			known = append(known, i)
+		}
+	}
+	if len(known) == 0 {
+		return
+	}
+	part := mat.NewDense(len(known), len(known), nil)
+	for i, r := range known {
+		for j, c := range known {
+			part.Set(i, j, d.a.At(r, c))
+		}
+	}
+	var form schur.Form
+	if form.Factor(raw(part)) != nil || !stable(form.Eigenvalues(), d.model.Discrete()) {
+		return
+	}
+	for _, i := range known {
+		for j := range d.n {
+			p.Set(i, j, 0)
+			p.Set(j, i, 0)
+		}
+		if l != nil {
+			for j := range d.p {
+				l.Set(i, j, 0)
+			}
+		}
+	}
 }
 
 // filtered returns P − P Cᵀ (C P Cᵀ + R)⁻¹ C P; nil where that is singular.

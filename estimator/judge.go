@@ -164,7 +164,8 @@ func (d *Designer) errorMatrix(ls *mat.Dense) *mat.Dense {
 	return f
 }
 
-// currentGain solves A Lf = L in scaled coordinates; nil where nothing does.
+// currentGain solves A Lf = L in scaled coordinates; nil where nothing does. Where A
+// is singular and several do, in current form it is the one with the least noise.
 func (d *Designer) currentGain(ls *mat.Dense) *mat.Dense {
 	var svd mat.SVD
 	if !svd.Factorize(d.a, mat.SVDFull) {
@@ -184,6 +185,11 @@ func (d *Designer) currentGain(ls *mat.Dense) *mat.Dense {
 	back.Sub(&back, ls)
 	if mat.Norm(&back, 2) > 1e-9*mat.Norm(ls, 2) {
 		return nil
+	}
+	if rank < d.n && d.opt.Form == Current {
+		var v mat.Dense
+		svd.VTo(&v)
+		d.quieten(lf, v.Slice(0, d.n, rank, d.n))
 	}
 	return lf
 }

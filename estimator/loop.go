@@ -106,17 +106,22 @@ func (d *Designer) loopMargins(out *Design, l *broken) {
 	}
 }
 
-// mostDelay is the longest delay that is looked at, in samples.
+// mostDelay is the longest delay whose eigenvalues are looked at, in samples. Beyond
+// it the margin for real delays decides.
 const mostDelay = 100
 
 // delaySamples returns the largest whole delay that leaves the loop stable, by
 // the eigenvalues of the loop with that many registers; bound is the margin of a
-// real-valued delay in seconds. It gives up at mostDelay and says −1.
+// real-valued delay in seconds. −1 is for none.
 func (d *Designer) delaySamples(sys frequency.System, bound float64) int {
 	n := sys.A.Rows
-	limit := int(bound/d.model.Period) + 2
-	if limit > mostDelay {
+	real := bound / d.model.Period
+	if real > math.MaxInt32 {
 		return -1
+	}
+	limit := int(real) + 2
+	if limit > mostDelay { // every delay below the margin is stable
+		return int(math.Ceil(real)) - 1
 	}
 	var form schur.Form
 	for k := 1; k <= limit; k++ {

@@ -44,7 +44,7 @@ func (d *Designer) quietNormal(part *mat.Dense, movable []complex128, prev *Desi
 		return nil
 	}
 	var u *mat.Dense
-	best := math.Inf(1)
+	var best float64
 	if prev != nil && prev.frame != nil && prev.frame.kinds == kinds {
 		u = mat.DenseCopyOf(prev.frame.u)
 		best = s.descend(u, 20)

@@ -2,6 +2,7 @@ package estimator
 
 import (
 	"fmt"
+	"math/cmplx"
 
 	"gonum.org/v1/gonum/mat"
 
@@ -35,6 +36,12 @@ func (d *Designer) split(seen *modes.Result) error {
 		var err error
 		if seen, err = modes.Analyse(raw(d.a), raw(c), d.opt.Tolerance); err != nil {
 			return fmt.Errorf("observability of the current form: %w", err)
+		}
+	}
+	size := mat.Norm(d.a, 2)
+	for i, v := range seen.Fixed { // zero but for rounding, as those of ker A are
+		if cmplx.Abs(v) <= 1e-13*size {
+			seen.Fixed[i] = 0
 		}
 	}
 	d.pair = pair{q: seen.Q, rank: seen.Rank, fixed: seen.Fixed, inject: inject}

@@ -73,6 +73,17 @@ func (d *Designer) gainFor(movable []complex128, prev *Design) (ls *mat.Dense, b
 	return ls, branch, turned, nil
 }
 
+// Refusal is a *FixedModesError where a mode that the sensors do not see is not
+// strictly stable, so that no poles at all can be placed; else nil.
+func (d *Designer) Refusal() error {
+	for _, v := range d.pair.fixed {
+		if !strictlyStable(v, d.model.Discrete()) {
+			return &FixedModesError{Fixed: d.Fixed(), Movable: d.pair.rank, Unstable: true}
+		}
+	}
+	return nil
+}
+
 // movable reduces a list to the poles that placement can choose.
 func (d *Designer) movable(wanted []complex128) ([]complex128, error) {
 	for _, v := range wanted {
@@ -80,10 +91,8 @@ func (d *Designer) movable(wanted []complex128) ([]complex128, error) {
 			return nil, fmt.Errorf("pole: %w", ErrNotFinite)
 		}
 	}
-	for _, v := range d.pair.fixed {
-		if !strictlyStable(v, d.model.Discrete()) {
-			return nil, &FixedModesError{Fixed: d.Fixed(), Movable: d.pair.rank, Wanted: len(wanted), Unstable: true}
-		}
+	if err := d.Refusal(); err != nil {
+		return nil, err
 	}
 	refuse := &FixedModesError{Fixed: d.Fixed(), Movable: d.pair.rank, Wanted: len(wanted)}
 	list := append([]complex128(nil), wanted...)
@@ -131,7 +140,9 @@ func (d *Designer) assign(ls *mat.Dense, movable []complex128, prev *Design) (br
 		}
 		err = d.choose(part, movable, branch)
 	}
-	if err != nil {
+	// What is not reached in double precision comes as near as it can, and the
+	// design's warnings say how near.
+	if err != nil && !(errors.Is(err, ErrNotReached) && finite(part)) {
 		return nil, nil, fmt.Errorf("placement: %w", err)
 	}
 	if p1 > 1 && p1 == pr.rank && d.opt.Method == Robust {

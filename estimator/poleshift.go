@@ -14,7 +14,7 @@ import (
 type PoleShift struct {
 	From, To complex128
 	// Distance is |To − From|; Relative is that over |From|, or the distance
-	// itself where the pole is, or was asked for at, 0.
+	// itself where the pole is 0, or within 0.01 of z = 0.
 	Distance, Relative float64
 }
 
@@ -86,6 +86,20 @@ func scaled(m *Model, f *mat.Dense) *mat.Dense {
 	return out
 }
 
+// nearZero is the size below which a pole of z dies out within a few samples,
+// whatever becomes of it: such a pole is as good as zero, and a movement relative to
+// its own size would mean nothing.
+const nearZero = 0.01
+
+// poleSize is what the movement of a pole is relative to.
+func (m *Model) poleSize(v complex128) float64 {
+	size := cmplx.Abs(v)
+	if size == 0 || m.Discrete() && size < nearZero {
+		return 1
+	}
+	return size
+}
+
 // shiftsOf matches the eigenvalues of f, in the user's units, with the design's.
 func shiftsOf(m *Model, d *Design, f *mat.Dense) (shifts []PoleShift, worst int, err error) {
 	if !finite(f) {
@@ -101,10 +115,7 @@ func shiftsOf(m *Model, d *Design, f *mat.Dense) (shifts []PoleShift, worst int,
 	for i, from := range d.Reached {
 		s := PoleShift{From: from, To: have[index[i]]}
 		s.Distance = cmplx.Abs(s.To - from)
-		s.Relative = s.Distance
-		if size := cmplx.Abs(from); size > 0 && !(i < len(d.Wanted) && d.Wanted[i] == 0) {
-			s.Relative /= size
-		}
+		s.Relative = s.Distance / m.poleSize(from)
 		shifts[i] = s
 		if s.Relative > shifts[worst].Relative {
 			worst = i

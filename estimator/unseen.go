@@ -12,8 +12,13 @@ const maxUnseen = 40
 // weighted noise Σ wᵢ Pᵢᵢ is quadratic in them, so that its values at few gains
 // give the least exactly. Where there is no steady state they stay zero.
 func (d *Designer) addUnseenRows(g *mat.Dense) {
-	q2 := d.pair.q.Slice(0, d.n, d.pair.rank, d.n)
-	rows := d.n - d.pair.rank
+	d.quieten(g, d.pair.q.Slice(0, d.n, d.pair.rank, d.n))
+}
+
+// quieten adds to g the columns of q2 (n×k) in the amounts (k×p) that make the
+// weighted noise least. They must move no pole.
+func (d *Designer) quieten(g *mat.Dense, q2 mat.Matrix) {
+	_, rows := q2.Dims()
 	count := rows * d.p
 	if count > maxUnseen {
 		return

@@ -53,7 +53,6 @@ type Runner struct {
 	freeInputs, freeSensors bool
 
 	rows    rows
-	plain   bool      // never fuse
 	y, want []float64 // sensors as deviations; what the estimator expects of them
 	nothing []float64
 	ab, cd  flat // of the real plant

@@ -78,11 +78,19 @@ func toOwn(s []complex128, m *estimator.Model) ([]complex128, error) {
 func floor(m *estimator.Model, d *estimator.Designer) ([]complex128, error) {
 	f := d.Analysis().Floor
 	if f == nil {
+		if err := d.Refusal(); err != nil {
+			return nil, err
+		}
 		return nil, errors.New(d.Analysis().FloorReason)
 	}
 	list := without(f.Poles, d.Fixed())
 	_, registers := d.Movable()
-	for range registers { // exact zeros, which an eigenvalue iteration scatters
+	for i, v := range list { // zero but for what an eigenvalue iteration scatters
+		if m.Discrete() && cmplx.Abs(v) < 1e-8 {
+			list[i] = 0
+		}
+	}
+	for range registers - countZero(list) {
 		small := -1
 		for i, v := range list {
 			if v != 0 && cmplx.Abs(v) < 1e-3 && (small < 0 || cmplx.Abs(v) < cmplx.Abs(list[small])) {
@@ -137,6 +145,19 @@ func faster(whose string, base []complex128, k float64, m *estimator.Model, d *e
 			if s[i], ok = poles.ToS(v, m.Period); !ok {
 				return nil, fmt.Errorf("%s pole at z = 0 has no place in the s-plane to make faster", whose)
 			}
+		}
+	}
+	// Rounding moves a mode that neither grows nor dies off the limit.
+	limit := 0.0
+	for _, v := range s {
+		limit = max(limit, 1e-13*cmplx.Abs(v))
+	}
+	if m.Discrete() {
+		limit = 1e-12 / m.Period
+	}
+	for i, v := range s {
+		if math.Abs(real(v)) <= limit {
+			s[i] = complex(0, imag(v))
 		}
 	}
 	out, err := poles.Faster(s, k)

@@ -8,6 +8,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"math/cmplx"
 	"runtime"
 	"sync"
 	"sync/atomic"
@@ -65,6 +66,7 @@ type Answer struct {
 // Surveyor owns the workers.
 type Surveyor struct {
 	bench  *desk.Bench
+	bare   *desk.Bench // without the control loop; nil where bench has none either
 	notify func(Answer)
 	box    *newest.Box[Request]
 	crew   []*worker
@@ -72,15 +74,24 @@ type Surveyor struct {
 
 // worker has designers of its own: one Designer serves one goroutine.
 type worker struct {
-	designers map[estimator.Options]*estimator.Designer
+	designers map[post]*estimator.Designer
+}
+
+// post is what a designer is for.
+type post struct {
+	bench   *desk.Bench
+	options estimator.Options
 }
 
 // New starts a surveyor. notify is called from the background, one answer at a
 // time; it may wait, but must not be reached from inside Ask or Close.
 func New(bench *desk.Bench, notify func(Answer)) *Surveyor {
 	s := &Surveyor{bench: quicker(bench), notify: notify}
+	if s.bench.Model.K != nil {
+		s.bare = bare(bench)
+	}
 	for range min(max(runtime.GOMAXPROCS(0), 1), 8) {
-		s.crew = append(s.crew, &worker{map[estimator.Options]*estimator.Designer{}})
+		s.crew = append(s.crew, &worker{map[post]*estimator.Designer{}})
 	}
 	ready := make(chan struct{})
 	s.box = newest.Start(func(ctx context.Context, r Request) {
@@ -98,6 +109,10 @@ func quicker(b *desk.Bench) *desk.Bench {
 	if l.Sensitivity != nil || l.PhaseMargin != nil || l.DelayMargin != nil || len(l.InputStd) > 0 {
 		return b
 	}
+	return bare(b)
+}
+
+func bare(b *desk.Bench) *desk.Bench {
 	c, m := *b, *b.Model
 	m.K = nil
 	c.Model = &m
@@ -133,18 +148,35 @@ func (s *Surveyor) serve(ctx context.Context, r Request) {
 			names = append(names, l.Name)
 		}
 	}
-	spots := make([]Spot, len(r.Cells))
-	copy(spots, r.Known)
-	for stride := coarsest; stride >= 1; stride /= 2 {
-		if err := s.level(ctx, r, spots, stride); err != nil {
-			send(Answer{Err: err})
-			return
-		}
-		if ctx.Err() != nil {
-			return
-		}
-		send(Answer{Spots: append([]Spot(nil), spots...), Limits: names, Done: stride == 1})
+	w := &work{r: r, spots: make([]Spot, len(r.Cells)), sure: make([]bool, len(r.Cells))}
+	copy(w.spots, r.Known)
+	passes := []*desk.Bench{s.bench}
+	if s.bare != nil { // the noise first: margins take several times as long
+		passes = []*desk.Bench{s.bare, s.bench}
 	}
+	for _, w.bench = range passes {
+		w.partial = w.bench != s.bench
+		for stride := coarsest; stride >= 1; stride /= 2 {
+			if err := s.level(ctx, w, stride); err != nil {
+				send(Answer{Err: err})
+				return
+			}
+			if ctx.Err() != nil {
+				return
+			}
+			send(Answer{Spots: append([]Spot(nil), w.spots...), Limits: names, Done: stride == 1 && !w.partial})
+		}
+	}
+}
+
+// work is a map in the making.
+type work struct {
+	r     Request
+	bench *desk.Bench
+	// partial tells that the limits on margins are left for later.
+	partial bool
+	spots   []Spot
+	sure    []bool // the noise of a spot is its own, though it is not known yet
 }
 
 // coarsest is the first distance between cells that are looked at.
@@ -152,11 +184,12 @@ const coarsest = 8
 
 // level looks at every cell of a stride that is not known yet, with all workers,
 // and lends what it finds to the unknown cells around.
-func (s *Surveyor) level(ctx context.Context, r Request, spots []Spot, stride int) error {
+func (s *Surveyor) level(ctx context.Context, m *work, stride int) error {
+	r, spots := m.r, m.spots
 	var list []int
 	for y := 0; y < r.Height; y += stride {
 		for x := 0; x < r.Width; x += stride {
-			if i := y*r.Width + x; !spots[i].Known {
+			if i := y*r.Width + x; !spots[i].Known && !(m.partial && m.sure[i]) {
 				list = append(list, i)
 			}
 		}
@@ -178,12 +211,12 @@ func (s *Surveyor) level(ctx context.Context, r Request, spots []Spot, stride in
 				if n >= len(list) {
 					return
 				}
-				spot, err := w.look(s.bench, r, r.Cells[list[n]])
+				spot, err := w.look(m, r.Cells[list[n]])
 				if err != nil {
 					problems[k] = err
 					return
 				}
-				spots[list[n]] = spot
+				spots[list[n]], m.sure[list[n]] = spot, true
 			}
 		}()
 	}
@@ -193,20 +226,25 @@ func (s *Surveyor) level(ctx context.Context, r Request, spots []Spot, stride in
 	}
 	if ctx.Err() == nil {
 		for _, i := range list {
-			lend(r, spots, i, stride)
+			m.lend(i, stride)
 		}
 	}
 	return nil
 }
 
-// lend copies a cell to the unknown ones of its square.
-func lend(r Request, spots []Spot, i, stride int) {
-	from := spots[i]
+// lend copies a cell to the unknown ones of its square; to those whose noise is
+// their own, only that a limit breaks.
+func (m *work) lend(i, stride int) {
+	from, w := m.spots[i], m.r.Width
 	from.Known = false
-	for y := i / r.Width; y < min(i/r.Width+stride, r.Height); y++ {
-		for x := i % r.Width; x < min(i%r.Width+stride, r.Width); x++ {
-			if k := y*r.Width + x; !spots[k].Known {
-				spots[k] = from
+	for y := i / w; y < min(i/w+stride, m.r.Height); y++ {
+		for x := i % w; x < min(i%w+stride, w); x++ {
+			switch k := y*w + x; {
+			case m.spots[k].Known:
+			case !m.sure[k]:
+				m.spots[k] = from
+			case m.spots[k].Broken < 0 && !math.IsNaN(m.spots[k].OverFloor):
+				m.spots[k].Broken = from.Broken
 			}
 		}
 	}
@@ -214,15 +252,16 @@ func lend(r Request, spots []Spot, i, stride int) {
 
 // look makes the design with the held pole at a place. A design that cannot be
 // made is an answer; an error is one of the model itself.
-func (w *worker) look(b *desk.Bench, r Request, at complex128) (Spot, error) {
-	none := Spot{Known: true, Seen: true, OverFloor: math.NaN(), Broken: -1}
-	if at != at { // NaN: no place
+func (w *worker) look(m *work, at complex128) (Spot, error) {
+	b, r := m.bench, m.r
+	none := Spot{Known: !m.partial, Seen: true, OverFloor: math.NaN(), Broken: -1}
+	if cmplx.IsNaN(at) { // no place
 		none.Seen = false
 		return none, nil
 	}
-	o := estimator.Options{Form: r.Form, Method: r.Method}
+	o := post{b, estimator.Options{Form: r.Form, Method: r.Method}}
 	if w.designers[o] == nil {
-		d, err := estimator.NewDesigner(b.Model, o)
+		d, err := estimator.NewDesigner(b.Model, o.options)
 		if err != nil {
 			return none, err
 		}
@@ -239,13 +278,15 @@ func (w *worker) look(b *desk.Bench, r Request, at complex128) (Spot, error) {
 	}
 	spot := none
 	spot.OverFloor = design.Noise.OverFloorRMS
-	spot.Broken = firstBroken(b.Scenario.Judge(design, b.Model, b.Plant, nil))
+	spot.Broken = firstBroken(b.Scenario.Judge(design, b.Model, b.Plant, nil), m.partial)
 	return spot, nil
 }
 
-func firstBroken(list []scenarios.LimitResult) int {
+// firstBroken is the index of the first limit that breaks, -1 for none. One whose
+// figure is not there breaks too, unless partial says that it is to come.
+func firstBroken(list []scenarios.LimitResult, partial bool) int {
 	for i, l := range list {
-		if !l.Met {
+		if !l.Met && !(partial && math.IsNaN(l.Value)) {
 			return i
 		}
 	}
