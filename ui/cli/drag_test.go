@@ -6,8 +6,6 @@ import (
 	"slices"
 	"testing"
 	"time"
-
-	"github.com/creack/pty"
 )
 
 // While a pole is dragged over the shaded plane at 120x40, a key costs few bytes:
@@ -25,9 +23,7 @@ func TestDraggingCostsFewBytes(t *testing.T) {
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			p := open(t, program, t.TempDir(), c.args...)
-			if err := pty.Setsize(p.file, &pty.Winsize{Rows: 40, Cols: 120}); err != nil {
-				t.Fatal(err)
-			}
+			p.resize(40, 120)
 			p.waitFor("limit broken") // the legend of a map that is there
 			p.still()
 			var bytes []int

@@ -11,8 +11,6 @@ import (
 	"path/filepath"
 	"testing"
 	"time"
-
-	"github.com/creack/pty"
 )
 
 // tool finds a program that a test needs; without it the test skips, or fails
@@ -109,9 +107,7 @@ func TestOverSSH(t *testing.T) {
 	p.waitFor("of 3 broken")
 	p.press(right + right)
 	p.waitFor("unsaved")
-	if err := pty.Setsize(p.file, &pty.Winsize{Rows: 36, Cols: 120}); err != nil {
-		t.Fatal(err)
-	}
+	p.resize(36, 120)
 	p.press(right)
 	p.waitFor("f floor") // the status line has room for more keys
 	p.press("s")

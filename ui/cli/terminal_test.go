@@ -5,7 +5,6 @@ package cli_test
 import (
 	"bytes"
 	"encoding/json"
-	"fmt"
 	"math/cmplx"
 	"os"
 	"os/exec"
@@ -27,12 +26,12 @@ type terminal struct {
 	file *os.File
 	cmd  *exec.Cmd
 
-	mu   sync.Mutex
-	out  []byte
-	more *sync.Cond
-	ends bool
-	mark int       // what was written before was looked at already
-	last time.Time // when something was written
+	mu     sync.Mutex
+	out    []byte
+	more   *sync.Cond
+	ends   bool
+	screen *emulator
+	last   time.Time // when something was written
 }
 
 func build(t *testing.T) string {
@@ -59,7 +58,7 @@ func open(t *testing.T, program, dir string, args ...string) *terminal {
 	if err != nil {
 		t.Skipf("no pseudo-terminal on %s: %v", runtime.GOOS, err)
 	}
-	p := &terminal{t: t, file: file, cmd: cmd}
+	p := &terminal{t: t, file: file, cmd: cmd, screen: newEmulator(24, 80)}
 	p.more = sync.NewCond(&p.mu)
 	go p.read()
 	t.Cleanup(func() {
@@ -75,6 +74,7 @@ func (p *terminal) read() {
 		n, err := p.file.Read(buf)
 		p.mu.Lock()
 		p.out = append(p.out, buf[:n]...)
+		p.screen.write(buf[:n])
 		if n > 0 {
 			p.last = time.Now()
 		}
@@ -89,14 +89,8 @@ func (p *terminal) read() {
 
 var escape = regexp.MustCompile(`\x1b\[[0-9;?]*[A-Za-z]|\x1b[()][A-Z0-9]|\x1b[=>]`)
 
-// waitFor waits until text has been written since the last call that found
-// something, colours apart.
+// waitFor waits until text is on the screen.
 func (p *terminal) waitFor(text string) {
-	p.t.Helper()
-	p.until(fmt.Sprintf("%q", text), func(fresh string) bool { return strings.Contains(fresh, text) })
-}
-
-func (p *terminal) until(what string, found func(fresh string) bool) {
 	p.t.Helper()
 	timer := time.AfterFunc(20*time.Second, func() {
 		p.mu.Lock()
@@ -108,15 +102,24 @@ func (p *terminal) until(what string, found func(fresh string) bool) {
 	p.mu.Lock()
 	defer p.mu.Unlock()
 	for {
-		fresh := escape.ReplaceAllString(string(p.out[p.mark:]), "")
-		if found(fresh) {
-			p.mark = len(p.out)
+		if strings.Contains(p.screen.text(), text) {
 			return
 		}
 		if p.ends {
-			p.t.Fatalf("%s did not appear; the terminal has\n%s", what, fresh)
+			p.t.Fatalf("%q did not appear; the terminal has\n%s", text, p.screen.text())
 		}
 		p.more.Wait()
+	}
+}
+
+// resize changes the terminal's size under the program.
+func (p *terminal) resize(rows, cols int) {
+	p.t.Helper()
+	p.mu.Lock()
+	p.screen.resize(rows, cols)
+	p.mu.Unlock()
+	if err := pty.Setsize(p.file, &pty.Winsize{Rows: uint16(rows), Cols: uint16(cols)}); err != nil {
+		p.t.Fatal(err)
 	}
 }
 
@@ -249,7 +252,7 @@ func (p *terminal) waitForChange(file string, before []complex128) {
 	}
 	p.mu.Lock()
 	defer p.mu.Unlock()
-	p.t.Fatalf("%s did not change from %v; the terminal has\n%s", file, before, escape.ReplaceAllString(string(p.out), ""))
+	p.t.Fatalf("%s did not change from %v; the terminal has\n%s", file, before, p.screen.text())
 }
 
 // cexp is exp(0.01·(re + im i)).
