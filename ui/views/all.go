@@ -44,7 +44,7 @@ func Readings(w int, f readings.Facts, t *theme.Theme) []string {
 	}
 	p.matrix("gain L, prediction form, one column per sensor", f, f.Design.Gain, g)
 	p.matrix("gain Lf, current form", f, f.Design.GainCurrent, g)
-	p.matrix("noise of each state per unit of noise on one sensor", f, f.Design.Noise.SensorToState, g)
+	p.matrix("noise of each state per unit of noise on one sensor, prediction form", f, f.Design.Noise.SensorToState, g)
 	p.lost(f)
 	return p.lines(t)
 }

@@ -22,7 +22,7 @@ func (p *sensorPage) shares() {
 	}
 	n, _, sensors := m.Dims()
 	p.title("where the noise of the design in hand comes from, std")
-	name := min(max(p.w-(sensors+2)*13, 20), 40)
+	name := min(max(p.w-(sensors+2)*16, 22), 40)
 	width := min(max((p.w-name)/(sensors+2), 12), 20)
 	fit := max((p.w-name)/width, 1)
 	from := max(p.f.Cursor-fit+3, 0) // the sensor under the cursor is in sight, and two columns more
