@@ -40,7 +40,12 @@ func request(t testing.TB, b *desk.Bench, width, height int) (survey.Request, *e
 
 // What the map promises is what landing there gives.
 func TestTheMapKeepsItsPromise(t *testing.T) {
-	b := desktest.Bench(t, "lift")
+	for _, name := range []string{"lift", "pan-drive", "balancer"} { // without and with limits on margins, one sensor and two
+		t.Run(name, func(t *testing.T) { keepsItsPromise(t, desktest.Bench(t, name)) })
+	}
+}
+
+func keepsItsPromise(t *testing.T, b *desk.Bench) {
 	r, d := request(t, b, 12, 6)
 	answers := make(chan survey.Answer, 100)
 	s := survey.New(b, func(a survey.Answer) { answers <- a })
