@@ -33,8 +33,9 @@ func Level(overFloor float64) uint8 {
 func Levels() []float64 { return levels[:] }
 
 // Lattice returns the places where moves by whole cells bring the held pole: one
-// for every cell of the rows from the top to the real axis, in the plane shown. On
-// the axis a pair has the imaginary part 0 where a step from above stops.
+// for every cell of the rows from the top to the real axis, in the plane shown. In
+// the row of the axis a pair has the imaginary part 0, where a step from above
+// stops, unless it can stand in that row just above.
 // For a real pole only the row of the axis is returned.
 func (w Window) Lattice(held complex128, pair bool) (cells []complex128, width, height int) {
 	x := offset(real(held)-w.X0, w.DX)

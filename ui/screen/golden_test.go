@@ -125,7 +125,7 @@ func TestNothingJumpsWhileDragging(t *testing.T) {
 // Whatever is typed, the screen stands, fits, and holds three poles.
 func TestAnyKeys(t *testing.T) {
 	names := []string{"tab", "shift+tab", "left", "right", "up", "down", "shift+left", "enter", "esc", "backspace", "ctrl+r", "ctrl+s",
-		"h", "j", "k", "l", "H", "J", "K", "L", "n", "N", "=", "p", "f", "<", ">", "u", "U", "z", "+", "-", "0", "c", ".", ",", "e", "a", "1", "2", "v", "r", "s", "?", "q", "x", "y", "i", "M", "5", "[", "O", "A", "~", " ", "é", "漢"}
+		"h", "j", "k", "l", "H", "J", "K", "L", "n", "N", "=", "p", "f", "<", ">", "u", "U", "z", "+", "-", "0", "c", ".", ",", "e", "a", "1", "2", "v", "r", "s", "?", "q", "x", "y", "i", "M", "T", "b", "P", "5", "[", "O", "A", "~", " ", "é", "漢"}
 	rapid.Check(t, func(t *rapid.T) {
 		r := newRig(bare{t: t}, []complex128{z(-8 + 6i), z(-8 - 6i), z(-12)})
 		w, h := rapid.SampledFrom([]int{60, 80, 121}).Draw(t, "w"), rapid.SampledFrom([]int{18, 24, 37}).Draw(t, "h")
