@@ -15,6 +15,8 @@ import (
 	"pgregory.net/rapid"
 
 	"polewright/ui/desk"
+	"polewright/ui/screen"
+	"polewright/ui/survey"
 )
 
 var update = flag.Bool("update", false, "write the golden frames anew")
@@ -127,13 +129,25 @@ func TestAnyKeys(t *testing.T) {
 	names := []string{"tab", "shift+tab", "left", "right", "up", "down", "shift+left", "enter", "esc", "backspace", "ctrl+r", "ctrl+s",
 		"h", "j", "k", "l", "H", "J", "K", "L", "n", "N", "=", "p", "f", "<", ">", "u", "U", "z", "+", "-", "0", "c", ".", ",", "e", "a", "1", "2", "v", "r", "s", "?", "q", "x", "y", "i", "M", "T", "b", "P", "5", "[", "O", "A", "~", " ", "é", "漢"}
 	rapid.Check(t, func(t *rapid.T) {
-		r := newRig(bare{t: t}, []complex128{z(-8 + 6i), z(-8 - 6i), z(-12)})
+		var maps []survey.Request
+		r := newRig(bare{t: t}, []complex128{z(-8 + 6i), z(-8 - 6i), z(-12)}, func(c *screen.Config) {
+			c.Map = func(q survey.Request) { maps = append(maps, q) }
+		})
 		w, h := rapid.SampledFrom([]int{60, 80, 121}).Draw(t, "w"), rapid.SampledFrom([]int{18, 24, 37}).Draw(t, "h")
 		r.send(tea.WindowSizeMsg{Width: w, Height: h})
 		for range rapid.IntRange(1, 40).Draw(t, "n") {
 			r.press(rapid.SampledFrom(names).Draw(t, "key"))
 			if k := rapid.IntRange(0, 3).Draw(t, "reply"); k < 2 {
 				r.reply(desk.Stage(k))
+			}
+			switch k := rapid.IntRange(0, 5).Draw(t, "map"); {
+			case k == 0:
+				r.send(screen.MapTick)
+			case k < 3 && len(maps) > 0:
+				r.send(chart(maps[rapid.IntRange(0, len(maps)-1).Draw(t, "which")], k == 1))
+			case k == 3:
+				x, y := rapid.IntRange(0, w).Draw(t, "x"), rapid.IntRange(0, h).Draw(t, "y")
+				r.mouse(tea.MouseAction(rapid.IntRange(0, 2).Draw(t, "mouse")), x, y)
 			}
 			fits(t, r.m.View(), w, h)
 			list := r.work().Poles
