@@ -1,6 +1,9 @@
 package views
 
 import (
+	"strconv"
+	"strings"
+
 	"polewright/ui/canvas"
 	"polewright/ui/keys"
 	"polewright/ui/measures"
@@ -53,8 +56,39 @@ func Help(w int, k keys.Map, t *theme.Theme) []string {
 			p.row(span{x: 2, text: string(plane.Glyph(m.Kind, &t.Glyphs)), ink: plane.Ink(m.Kind)}, span{x: 4, text: m.Short}, span{x: column + 2, text: l, ink: theme.Faint})
 		}
 	}
+	p.shades(t, column)
 	p.title("Before it moves a machine")
 	p.prose(2, measures.Caution, theme.Text)
 	p.prose(2, advice, theme.Text)
 	return p.lines(t)
+}
+
+// shades explains what lies under the marks and on the time axis.
+func (p *page) shades(t *theme.Theme, column int) {
+	g := &t.Glyphs
+	p.title("Shades of the plane: noise over the floor if the held pole went there")
+	step := func(level uint8, words string) {
+		text := string(g.Grain[level][0]) + string(g.Grain[level][1])
+		if t.Backed {
+			text = "  "
+		}
+		p.row(span{x: 2, text: text + text, ink: theme.Grid, shade: level}, span{x: column + 2, text: words, ink: theme.Faint})
+	}
+	levels := plane.Levels()
+	for i, top := range levels {
+		step(uint8(i), "up to "+strconv.FormatFloat(top, 'g', -1, 64)+" times the floor")
+	}
+	step(theme.Shades-1, "more")
+	row := func(sign, words string) {
+		for i, l := range canvas.Wrap(words, p.w-column-2) {
+			if i > 0 {
+				sign = ""
+			}
+			p.row(span{x: 2, text: sign, ink: theme.Grid}, span{x: column + 2, text: l, ink: theme.Faint})
+		}
+	}
+	hatch := strings.Repeat(" ", 3) + string(g.Hatch)
+	row(string(g.Hatch)+hatch, "a limit breaks there; the line below the screen names it for the cell of the held pole")
+	row(string(g.Target)+"2", "so many poles in one cell; Tab takes one after the other")
+	row(string(g.Up), "on the time axis: a fault, or a surprise that the estimator is not told of")
 }

@@ -13,6 +13,7 @@ type span struct {
 	text  string
 	ink   theme.Ink
 	right bool
+	shade uint8 // behind it
 }
 
 // page collects rows; it becomes lines of text at the end.
@@ -47,7 +48,9 @@ func (p *page) lines(t *theme.Theme) []string {
 			if s.right {
 				c.Right(s.x, y, s.text, s.ink)
 			} else {
-				c.Text(s.x, y, s.text, s.ink)
+				for x, end := s.x, c.Text(s.x, y, s.text, s.ink); x < end && s.shade > 0; x++ {
+					c.Shade(x, y, s.shade)
+				}
 			}
 		}
 	}
