@@ -50,8 +50,8 @@ func TestQuickMarginsAreConfirmed(t *testing.T) {
 			t.Fatal("the quick design should be the partial one")
 		}
 		a, b := quick.Loop, whole.Loop
-		if b.SensitivityPeak > 50 {
-			t.Skip("nearly unstable")
+		if b.SensitivityPeak > 50 || whole.GainNorm > 100 {
+			t.Skip("nearly unstable, or eigenvalues with few digits")
 		}
 		same := func(what string, got, want float64) {
 			t.Helper()

@@ -4,7 +4,9 @@
 // A loop L with one input and one output has S = 1/(1 + L) = k Π(s − zᵢ) / Π(s − pᵢ),
 // with the eigenvalues zᵢ of the open and pᵢ of the closed loop, as
 // det(sI − A) / det(sI − A_closed) shows. A value of it costs as many operations as there
-// are poles, instead of their square on a Hessenberg form.
+// are poles, instead of their square on a Hessenberg form. It is as accurate as rounding
+// of A lets the determinants be: ‖A‖ ‖(sI − A)⁻¹‖ ε relative, so that large gains cost
+// digits, first of all where |L| is small.
 package ratio
 
 import (
