@@ -99,6 +99,7 @@ func (p *terminal) endsAnyhow() (string, error) {
 // Whatever ends the program in the middle of a drag, the drag is recovered at the
 // next start, once, and no file is written before the person saves.
 func TestRecoverADrag(t *testing.T) {
+	t.Parallel()
 	program := build(t)
 	for name, c := range map[string]struct {
 		end    func(p *terminal) error
@@ -192,6 +193,7 @@ func restored(t *testing.T, out string) {
 // Recovered work is unsaved: leaving asks, a second crash keeps it, and given up it
 // is gone.
 func TestRecoveredWorkIsUnsaved(t *testing.T) {
+	t.Parallel()
 	program, dir := build(t), t.TempDir()
 	p := open(t, program, dir, "lift")
 	p.waitFor("Platform lift")
@@ -218,6 +220,7 @@ func TestRecoveredWorkIsUnsaved(t *testing.T) {
 
 // Two programs on one session: the one that saves second asks.
 func TestTwoProgramsOnOneSession(t *testing.T) {
+	t.Parallel()
 	program, dir := build(t), t.TempDir()
 	file := filepath.Join(dir, "Platform lift.session.json")
 	p := open(t, program, dir, "lift")
@@ -251,6 +254,7 @@ func TestTwoProgramsOnOneSession(t *testing.T) {
 
 // Where nothing can be kept, the screen says so and works all the same.
 func TestWithoutAStateFolder(t *testing.T) {
+	t.Parallel()
 	program, dir := build(t), t.TempDir()
 	if err := os.WriteFile(filepath.Join(dir, "polewright"), nil, 0o600); err != nil { // in the folder's place
 		t.Fatal(err)

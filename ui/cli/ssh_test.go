@@ -100,6 +100,7 @@ func (s server) login(t *testing.T, program, dir string, args string) *terminal 
 // Over a real connection: drag, resize while dragging, save; then the line drops in
 // the middle of a drag, and the drag is there at the next login.
 func TestOverSSH(t *testing.T) {
+	t.Parallel()
 	program, dir := build(t), t.TempDir()
 	s := serve(t)
 

@@ -178,6 +178,7 @@ const right, shiftRight, enter, ctrlS = "\x1b[C", "\x1b[1;2C", "\r", "\x13"
 
 // The main job in a real pseudo-terminal: drag, type, undo, save, reopen.
 func TestDragTypeUndoSaveReopen(t *testing.T) {
+	t.Parallel()
 	program, dir := build(t), t.TempDir()
 	file := filepath.Join(dir, "Platform lift.session.json")
 

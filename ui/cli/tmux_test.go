@@ -53,6 +53,7 @@ func (p *pane) shows(text string) string {
 // Any keys, pastes and resizes leave the program alive, and the terminal as it was.
 // POLEWRIGHT_LONG=1 goes on for two minutes.
 func TestRandomKeysInATerminal(t *testing.T) {
+	t.Parallel()
 	program, dir := build(t), t.TempDir()
 	p := newPane(t, 80, 24, fmt.Sprintf("cd '%s'; echo BEFORE; XDG_STATE_HOME='%s' LC_ALL=C.UTF-8 '%s' balancer; echo ENDED $?; sleep 600", dir, dir, program))
 	p.shows("Balancing trolley")
@@ -97,5 +98,5 @@ func length() time.Duration {
 	if os.Getenv("POLEWRIGHT_LONG") == "1" {
 		return 2 * time.Minute
 	}
-	return 6 * time.Second
+	return 4 * time.Second
 }
