@@ -21,9 +21,8 @@ func drag(r *rig, i int) {
 	r.reply(desk.Traced)
 }
 
-// The terminal gets every line anew in which one cell changed. The aim for the
-// median while dragging at 120x40 is 2500 bytes a key in true colour and 900 in
-// ASCII; the second is not reached, its bound here only keeps it from growing.
+// The renderer takes every line anew in which one cell changed; what of that goes
+// to the terminal is measured there. Fewer lines are less work all the same.
 func TestBytesWhileDragging(t *testing.T) {
 	for _, c := range []struct {
 		name   string

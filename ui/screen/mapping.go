@@ -46,6 +46,7 @@ type mapping struct {
 	gen     uint64
 	ground  ground         // of the newest request
 	cells   []complex128   // of the newest request, own plane
+	place   complex128     // of the held pole when it was made
 	shown   *survey.Answer // nil while none fits what is in hand
 	running bool           // asked for and not done
 	ticking bool
@@ -120,7 +121,7 @@ func (m *Model) mapTick() {
 	}
 	p.gen++
 	r.Gen = p.gen
-	p.ground, p.cells, p.running = g, cells, true
+	p.ground, p.cells, p.place, p.running = g, cells, t.At, true
 	m.cfg.Map(r)
 }
 
@@ -131,6 +132,9 @@ func (m *Model) onLattice() bool {
 	t, _, _ := m.heldTarget()
 	at, _ := m.heldPlace()
 	i, ok := m.heldCell()
+	if len(p.cells) > 0 && t.At == p.place {
+		return true
+	}
 	if !ok || i >= len(p.cells) {
 		return len(p.cells) > 0 // out of sight
 	}

@@ -88,7 +88,7 @@ func (p *page) shades(t *theme.Theme, column int) {
 		}
 	}
 	hatch := strings.Repeat(" ", 3) + string(g.Hatch)
-	row(string(g.Hatch)+hatch, "a limit breaks there; the line below the screen names it for the cell of the held pole")
+	row(string(g.Hatch)+hatch, "a limit breaks there; the line under the traces names it for the cell of the held pole")
 	row(string(g.Target)+"2", "so many poles in one cell; Tab takes one after the other")
 	row(string(g.Up), "on the time axis: a fault, or a surprise that the estimator is not told of")
 }

@@ -24,7 +24,11 @@ func New(f *os.File) *Terminal { return &Terminal{File: f} }
 
 // Write takes one whole frame, or anything that is none.
 func (t *Terminal) Write(p []byte) (int, error) {
-	if _, err := t.File.Write(t.thin.Thin(p)); err != nil {
+	out := t.thin.Thin(p)
+	if len(out) == 0 {
+		return len(p), nil
+	}
+	if _, err := t.File.Write(out); err != nil {
 		return 0, err
 	}
 	return len(p), nil
