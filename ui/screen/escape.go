@@ -95,7 +95,7 @@ func (m *Model) letter(r rune) tea.Cmd {
 		}
 		return tea.Batch(m.flush(), m.letter(r))
 	case inControl:
-		if r >= '0' && r <= '9' || r == ';' {
+		if r >= '0' && r <= '9' || r == ';' || r == '<' { // < begins what a mouse does
 			m.input.pending += string(r)
 			return m.begin(inControl)
 		}

@@ -22,7 +22,7 @@ type MapMsg struct{ survey.Answer }
 
 // mapAfter is how long no key must have come before a map is asked for: a held
 // key repeats sooner.
-const mapAfter = 90 * time.Millisecond
+const mapAfter = 60 * time.Millisecond
 
 type mapMsg struct{}
 
@@ -44,11 +44,12 @@ func (a *ground) same(b *ground) bool {
 type mapping struct {
 	off     bool
 	gen     uint64
-	ground  ground         // of the newest request
-	cells   []complex128   // of the newest request, own plane
-	place   complex128     // of the held pole when it was made
-	shown   *survey.Answer // nil while none fits what is in hand
-	running bool           // asked for and not done
+	ground  ground            // of the newest request
+	cells   []complex128      // of the newest request, own plane
+	place   complex128        // of the held pole when it was made
+	from    *estimator.Design // whose branch it follows
+	shown   *survey.Answer    // nil while none fits what is in hand
+	running bool              // asked for and not done
 	ticking bool
 	lastKey time.Time
 	tones   []plane.Tone
@@ -87,11 +88,17 @@ func (m *Model) mapDue() tea.Cmd {
 		p.shown, p.tones = nil, nil
 		m.dirty |= planeRegion | statusRegion
 	}
-	if !ok || p.ticking || p.running || p.shown != nil && p.shown.Done && m.onLattice() {
+	if !ok || p.ticking || p.running || m.mapped(&g) {
 		return nil
 	}
 	p.ticking = true
 	return tea.Tick(mapAfter, func(time.Time) tea.Msg { return mapMsg{} })
+}
+
+// mapped tells whether the map that is shown is whole and right.
+func (m *Model) mapped(g *ground) bool {
+	p := &m.plot
+	return p.shown != nil && p.shown.Done && g.same(&p.ground) && m.onLattice() && m.keepsPromise()
 }
 
 // mapTick asks for a map once the hands rest and the design in hand is known.
@@ -99,7 +106,7 @@ func (m *Model) mapTick() {
 	p := &m.plot
 	p.ticking = false
 	g, ok := m.ground()
-	if !ok || p.running || m.cfg.Now().Sub(p.lastKey) < mapAfter-5*time.Millisecond || m.shownGen < m.gen && m.failure == nil {
+	if !ok || p.running || m.mapped(&g) || m.cfg.Now().Sub(p.lastKey) < mapAfter-5*time.Millisecond || m.shownGen < m.gen && m.failure == nil {
 		return // the Update around this sees whether to wait again
 	}
 	t, _, _ := m.heldTarget()
@@ -116,12 +123,12 @@ func (m *Model) mapTick() {
 	if m.shown != nil && m.shown.Stable && m.shown.Form == g.form && m.shown.Method == g.method {
 		r.From = m.shown
 	}
-	if p.shown != nil && g.same(&p.ground) && m.onLattice() {
-		r.Known = p.shown.Spots
+	if p.shown != nil && g.same(&p.ground) && m.onLattice() && m.keepsPromise() {
+		r.Known, r.From = p.shown.Spots, p.from // goes on
 	}
 	p.gen++
 	r.Gen = p.gen
-	p.ground, p.cells, p.place, p.running = g, cells, t.At, true
+	p.ground, p.cells, p.place, p.from, p.running = g, cells, t.At, r.From, true
 	m.cfg.Map(r)
 }
 
@@ -141,6 +148,20 @@ func (m *Model) onLattice() bool {
 	there, ok := targets.Shown(p.cells[i], m.plane, m.period())
 	return ok && math.Abs(real(there)-real(at)) <= 1e-6*m.window.DX &&
 		(!t.Pair || math.Abs(imag(there)-imag(at)) <= 1e-6*m.window.DY)
+}
+
+// keepsPromise tells whether landing gave what the map says. With several sensors
+// the gain depends on the way there as well; then the map is made anew from where
+// the pole has come.
+func (m *Model) keepsPromise() bool {
+	p := &m.plot
+	t, _, _ := m.heldTarget()
+	i, ok := m.heldCell()
+	if !ok || t.At == p.place || m.shown == nil || m.shownGen < m.gen || i >= len(p.shown.Spots) || !p.shown.Spots[i].Known {
+		return true
+	}
+	said, is := p.shown.Spots[i].OverFloor, m.shown.Noise.OverFloorRMS
+	return math.Abs(said-is) <= 0.002*is || math.IsNaN(said) && !(m.shown.Stable && is > 0)
 }
 
 // heldCell is the index of the held pole's cell in the map.
