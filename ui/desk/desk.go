@@ -64,7 +64,10 @@ type Answer struct {
 	Design    *estimator.Design
 	Limits    []scenarios.LimitResult
 	Run       *scenarios.Run
-	Err       error // a design that cannot be made; the other fields may be nil
+	// Better is a gain for the same poles that was found from cold, where the
+	// branch that Design followed is worse; nil where it is not. It is offered.
+	Better *estimator.Design
+	Err    error // a design that cannot be made; the other fields may be nil
 }
 
 // Candidate is a design that was kept under a letter.

@@ -10,7 +10,7 @@ type Map struct {
 	Left, Right, Up, Down                   key.Binding
 	FarLeft, FarRight, FarUp, FarDown       key.Binding
 	Place, Pattern, Floor, Faster, Slower   key.Binding
-	Undo, Redo                              key.Binding
+	Undo, Redo, Better                      key.Binding
 	Plane, ZoomIn, ZoomOut, Fit, Map        key.Binding
 	Method, Form                            key.Binding
 	NextState, PreviousState, Trace         key.Binding
@@ -48,6 +48,7 @@ func Default() Map {
 		Slower:   bind("<", "all poles 5 % slower", "<"),
 		Undo:     bind("u", "undo (a held key is one step)", "u"),
 		Redo:     bind("U Ctrl+R", "redo", "U", "ctrl+r"),
+		Better:   bind("g", "take the better gain that was found for these poles, when one is offered", "g"),
 		Plane:    bind("z", "show the other plane: s or z", "z"),
 		Map:      bind("M", "shade the plane by the noise that the held pole would give there, hatched where a limit breaks", "M"),
 		ZoomIn:   bind("+", "zoom in", "+"),
@@ -104,7 +105,7 @@ type Group struct {
 func (m Map) Groups() []Group {
 	return []Group{
 		{"Hold and move", []key.Binding{m.Next, m.Previous, m.Left, m.Down, m.Up, m.Right, m.FarLeft, m.FarDown, m.FarUp, m.FarRight}},
-		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Fastest, m.Quietest, m.Undo, m.Redo, m.Form, m.Method}},
+		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Fastest, m.Quietest, m.Undo, m.Redo, m.Better, m.Form, m.Method}},
 		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.Map, m.Mouse, m.NextState, m.PreviousState, m.Trace, m.Band, m.Clock, m.Readings, m.Tradeoff, m.Sensors, m.Stress}},
 		{"Candidates", []key.Binding{m.Keep, m.Recall, m.Compare}},
 		{"Session", []key.Binding{m.Save, m.Help, m.Leave, m.Quit, m.Suspend}},

@@ -57,6 +57,7 @@ func (m *Model) bindings() map[string]action {
 	plain(k.Floor, func(m *Model) tea.Cmd { return m.snapToFloor() })
 	plain(k.Undo, func(m *Model) tea.Cmd { return m.undo() })
 	plain(k.Redo, func(m *Model) tea.Cmd { return m.redo() })
+	plain(k.Better, func(m *Model) tea.Cmd { return m.takeBetter() })
 	plain(k.Form, func(m *Model) tea.Cmd { return m.toggleForm() })
 	plain(k.Method, func(m *Model) tea.Cmd { return m.toggleMethod() })
 	plain(k.Plane, func(m *Model) tea.Cmd { return m.togglePlane() })

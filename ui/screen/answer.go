@@ -93,6 +93,9 @@ func (m *Model) upToDate(a *desk.Answer) {
 	}
 	m.now.design, m.now.limits, m.now.run, m.now.traced = a.Design, m.limits, a.Run, a.Stage >= desk.Traced
 	m.now.on = m.truth.name
+	if a.Better != nil {
+		m.offerBetter(a)
+	}
 	m.studyDue()
 	if m.keepWanted && a.Stage >= desk.Traced {
 		m.keepWanted = false

@@ -41,7 +41,7 @@ func (m *Model) change(next state, held string) tea.Cmd {
 		m.past = m.past.push(m.now)
 	}
 	m.future = nil
-	next.design, next.run, next.limits, next.traced = nil, nil, nil, false
+	next.design, next.run, next.limits, next.traced, next.better = nil, nil, nil, false, nil
 	m.now = next
 	return m.changed()
 }

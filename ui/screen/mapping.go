@@ -151,13 +151,13 @@ func (m *Model) onLattice() bool {
 }
 
 // keepsPromise tells whether landing gave what the map says. With several sensors
-// the gain depends on the way there as well; then the map is made anew from where
-// the pole has come.
+// the gain depends on the way there as well, or another one was taken; then the
+// map is made anew from the design in hand, once.
 func (m *Model) keepsPromise() bool {
 	p := &m.plot
 	t, _, _ := m.heldTarget()
 	i, ok := m.heldCell()
-	if !ok || t.At == p.place || m.shown == nil || m.shownGen < m.gen || i >= len(p.shown.Spots) || !p.shown.Spots[i].Known {
+	if !ok || t.At == p.place && p.from == m.shown || m.shown == nil || m.shownGen < m.gen || i >= len(p.shown.Spots) || !p.shown.Spots[i].Known {
 		return true
 	}
 	said, is := p.shown.Spots[i].OverFloor, m.shown.Noise.OverFloorRMS

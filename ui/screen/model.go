@@ -31,8 +31,9 @@ type state struct {
 	design *estimator.Design
 	limits []readings.Limit
 	run    *scenarios.Run
-	traced bool   // all is there
-	on     string // the real plant of the run, empty for the scenario's own
+	traced bool              // all is there
+	better *estimator.Design // for the same poles, on offer; nil for none
+	on     string            // the real plant of the run, empty for the scenario's own
 }
 
 // runsKept bounds the states before this one that keep their run, which is the

@@ -110,6 +110,25 @@ func (w *work) stages(ctx context.Context, r desk.Request, send func(desk.Answer
 		a.Limits = w.bench.Scenario.Judge(a.Design, w.bench.Model, w.bench.Plant, run)
 	}
 	send(a)
+	if r.From == nil || r.Gain != nil || r.GainCurrent != nil || a.Err != nil {
+		return
+	}
+	if a.Better = w.fresh(ctx, r, a.Design); a.Better != nil && ctx.Err() == nil {
+		send(a)
+	}
+}
+
+// fresh looks from cold for a gain that is better than the branch.
+func (w *work) fresh(ctx context.Context, r desk.Request, design *estimator.Design) *estimator.Design {
+	d, err := w.designer(estimator.Options{Form: r.Form, Method: r.Method})
+	if err != nil {
+		return nil
+	}
+	better, err := d.Fresh(ctx, design)
+	if err != nil {
+		return nil // no offer: the design at hand stands
+	}
+	return better
 }
 
 // judge is the first stage: the design, its readings and the limits on these.
