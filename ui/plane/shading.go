@@ -100,7 +100,7 @@ func shadeRow(c *canvas.Canvas, x, y int, tones []Tone, t *theme.Theme) {
 			case tone.Hatched && (col+y)%hatching == 0:
 				c.Set(x+col, y, t.Glyphs.Hatch, theme.Grid)
 			case !t.Backed:
-				c.Set(x+col, y, t.Glyphs.Grain[min(tone.Level, theme.Shades-1)][(col+y)%2], theme.Grid)
+				c.Set(x+col, y, t.Glyphs.Grain[min(tone.Level, theme.Shades-1)][y%2][col%4], theme.Grid)
 			}
 		}
 		before = r
@@ -117,19 +117,23 @@ func Legend(c *canvas.Canvas, right, y, room int, t *theme.Theme) {
 	type part struct {
 		text  string
 		level uint8
-		glyph [2]rune
+		glyph [4]rune
 	}
 	var parts []part
 	n := 0
-	add := func(text string, level uint8, glyph [2]rune) {
+	wide := 4
+	if t.Backed {
+		wide = 2
+	}
+	add := func(text string, level uint8, glyph [4]rune) {
 		parts = append(parts, part{text, level, glyph})
-		n += 3 + canvas.TextWidth(text) + 2
+		n += wide + 1 + canvas.TextWidth(text) + 2
 	}
 	for i, top := range levels {
-		add(g.AtMost+number(top), uint8(i), g.Grain[i])
+		add(g.AtMost+number(top), uint8(i), g.Grain[i][0])
 	}
-	add("more", theme.Shades-1, g.Grain[theme.Shades-1])
-	add("limit broken", 0, [2]rune{g.Hatch, g.Hatch})
+	add("more", theme.Shades-1, g.Grain[theme.Shades-1][0])
+	add("limit", 0, [4]rune{g.Hatch, g.Hatch, g.Hatch, g.Hatch})
 	title := "noise x floor "
 	n += len(title) - 2
 	if n > room {
@@ -141,7 +145,7 @@ func Legend(c *canvas.Canvas, right, y, room int, t *theme.Theme) {
 	}
 	x := c.Text(right-n, y, title, theme.Faint)
 	for i, p := range parts {
-		for k := range 2 {
+		for k := range wide {
 			c.Set(x+k, y, ' ', theme.Text)
 			if t.Backed {
 				c.Shade(x+k, y, p.level)
@@ -150,7 +154,7 @@ func Legend(c *canvas.Canvas, right, y, room int, t *theme.Theme) {
 				c.Set(x+k, y, p.glyph[k], theme.Grid)
 			}
 		}
-		x = c.Text(x+3, y, p.text, theme.Faint) + 2
+		x = c.Text(x+wide+1, y, p.text, theme.Faint) + 2
 	}
 }
 

@@ -10,9 +10,9 @@ type Glyphs struct {
 	Cursor                            rune
 	Ellipsis                          rune
 
-	// Grain is what stands for the shades where they are no colours: a cell has the
-	// first or the second mark by turns. Hatch is a stroke of hatching.
-	Grain [Shades][2]rune
+	// Grain is what stands for the shades where they are no colours: the pattern of
+	// even and of odd rows, four cells long. Hatch is a stroke of hatching.
+	Grain [Shades][2][4]rune
 	Hatch rune
 
 	Truth    Line
@@ -32,7 +32,7 @@ var unicode = Glyphs{
 	Target: '○', Selected: '●', Fixed: '■', Plant: '×', Controller: '△', Floor: '◇',
 	Rule: '─', Vertical: '│', Cross: '┼', Dot: '·', Limit: '╌',
 	Left: '◂', Right: '▸', Up: '▴', Down: '▾', Cursor: '▏', Ellipsis: '…',
-	Grain: [Shades][2]rune{{' ', ' '}, {'░', ' '}, {'░', '░'}, {'▒', '░'}, {'▒', '▒'}}, Hatch: '╱',
+	Grain: [Shades][2][4]rune{{{' ', ' ', ' ', ' '}, {' ', ' ', ' ', ' '}}, {{'░', ' ', ' ', ' '}, {' ', ' ', '░', ' '}}, {{'░', ' ', '░', ' '}, {' ', '░', ' ', '░'}}, {{'░', '░', '░', '░'}, {'░', '░', '░', '░'}}, {{'▒', '░', '▒', '░'}, {'░', '▒', '░', '▒'}}}, Hatch: '╱',
 	Truth:     Line{"─", "│", "╭", "╮", "╰", "╯", "╶", "╴", "───"},
 	Estimate:  Line{"•", "•", "•", "•", "•", "•", "•", "•", "•••"},
 	Band:      '┄',
@@ -43,7 +43,7 @@ var ascii = Glyphs{
 	Target: 'o', Selected: '@', Fixed: '#', Plant: 'x', Controller: '^', Floor: 'v',
 	Rule: '-', Vertical: '|', Cross: '+', Dot: '.', Limit: '=',
 	Left: '<', Right: '>', Up: '^', Down: 'v', Cursor: '_', Ellipsis: '~',
-	Grain: [Shades][2]rune{{' ', ' '}, {',', ' '}, {':', ' '}, {':', ':'}, {'%', ':'}}, Hatch: '/',
+	Grain: [Shades][2][4]rune{{{' ', ' ', ' ', ' '}, {' ', ' ', ' ', ' '}}, {{',', ' ', ' ', ' '}, {' ', ' ', ',', ' '}}, {{',', ' ', ',', ' '}, {' ', ',', ' ', ','}}, {{':', ' ', ':', ' '}, {' ', ':', ' ', ':'}}, {{':', ':', ':', ':'}, {':', ':', ':', ':'}}}, Hatch: '/',
 	Truth:     Line{"-", "|", ".", ".", "'", "'", "-", "-", "---"},
 	Estimate:  Line{"*", "*", "*", "*", "*", "*", "*", "*", "***"},
 	Band:      '~',

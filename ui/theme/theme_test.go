@@ -95,6 +95,22 @@ func TestMarksDifferInShape(t *testing.T) {
 			}
 			seen[r] = true
 		}
+		ink := -1 // of a shade, in cells of eight
+		for level, rows := range g.Grain {
+			n := 0
+			for _, row := range rows {
+				for _, r := range row {
+					if ansi.StringWidth(string(r)) != 1 || ascii && r > '~' || seen[r] {
+						t.Errorf("ascii %v: grain of %q", ascii, r)
+					}
+					n += map[rune]int{' ': 0, ',': 1, '░': 1, ':': 2, '▒': 2}[r]
+				}
+			}
+			if n <= ink {
+				t.Errorf("ascii %v: shade %d is no denser than the one before", ascii, level)
+			}
+			ink = n
+		}
 		v := reflect.ValueOf(g)
 		for i := range v.NumField() {
 			if f := v.Field(i); f.Kind() == reflect.Int32 {

@@ -110,7 +110,7 @@ func band(c *canvas.Canvas, x, top, width, rows int, p Panel, t *theme.Theme) {
 			if t.Backed {
 				c.Shade(x+1+j, top+r, 1)
 			} else if c.At(x+1+j, top+r) == ' ' {
-				c.Set(x+1+j, top+r, t.Glyphs.Grain[1][0], theme.Grid)
+				c.Set(x+1+j, top+r, t.Glyphs.Grain[3][0][0], theme.Grid)
 			}
 		}
 	}

@@ -68,11 +68,11 @@ func (p *page) shades(t *theme.Theme, column int) {
 	g := &t.Glyphs
 	p.title("Shades of the plane: noise over the floor if the held pole went there")
 	step := func(level uint8, words string) {
-		text := string(g.Grain[level][0]) + string(g.Grain[level][1])
+		text := string(g.Grain[level][0][:])
 		if t.Backed {
-			text = "  "
+			text = "    "
 		}
-		p.row(span{x: 2, text: text + text, ink: theme.Grid, shade: level}, span{x: column + 2, text: words, ink: theme.Faint})
+		p.row(span{x: 2, text: text, ink: theme.Grid, shade: level}, span{x: column + 2, text: words, ink: theme.Faint})
 	}
 	levels := plane.Levels()
 	for i, top := range levels {
