@@ -54,6 +54,12 @@ func open(t *testing.T, program, dir string, args ...string) *terminal {
 	cmd.Env = append(slices.DeleteFunc(os.Environ(), func(v string) bool {
 		return strings.HasPrefix(v, "NO_COLOR=") || strings.HasPrefix(v, "COLORFGBG=")
 	}), "TERM=xterm-256color", "LC_ALL=C.UTF-8", "XDG_STATE_HOME="+dir)
+	return attach(t, cmd)
+}
+
+// attach starts a command in a pseudo-terminal of 80x24.
+func attach(t *testing.T, cmd *exec.Cmd) *terminal {
+	t.Helper()
 	file, err := pty.StartWithSize(cmd, &pty.Winsize{Rows: 24, Cols: 80})
 	if err != nil {
 		t.Skipf("no pseudo-terminal on %s: %v", runtime.GOOS, err)
