@@ -26,6 +26,7 @@ type replayOptions struct {
 	inputLag        int
 	skip            float64
 	resample, force bool
+	sweep           bool
 }
 
 func newReplay() *cobra.Command {
@@ -43,7 +44,8 @@ with. An empty field or NaN is a lost sample, which the estimator predicts throu
 Row k has the sensors sampled at t and the inputs held from t to the next row.
 
 Logs of any length are read in constant memory. The statistics leave out the first
-tenth of the samples, or --skip seconds.
+tenth of the samples, or --skip seconds. With --sweep the log is read once more, for
+the speed of the poles that predicts it best.
 
 ` + measures.Caution,
 		Example: `  polewright replay hoist.toml --poles bessel@40 --log monday.csv
@@ -62,6 +64,7 @@ tenth of the samples, or --skip seconds.
 	f.Float64Var(&r.skip, "skip", 0, "seconds at the start that stay out of the statistics (default: a tenth of the log)")
 	f.StringVar(&r.start, "start", "", `estimate before the first sample: deviations like "0.3,0", or first-sample to solve for the sensors (default zero deviation)`)
 	f.BoolVar(&r.resample, "resample", false, "hold the last row on the design's period where the log has another")
+	f.BoolVar(&r.sweep, "sweep", false, "find the best speed for this log: the least one-step-ahead error over speeds of the poles and the floor's family")
 	f.BoolVar(&r.force, "force", false, "overwrite an existing file")
 	return cmd
 }
@@ -101,13 +104,20 @@ func (r *replayOptions) run(cmd *cobra.Command, o *designOptions, arg string) er
 	if err != nil {
 		return r.failed(err)
 	}
+	var best *swept
+	if r.sweep {
+		shown.begin("sweeping")
+		if best, err = bestSpeed(cmd.Context(), log, t, q); err != nil {
+			return r.failed(err)
+		}
+	}
 	shown.begin("replaying")
 	result, err := r.replay(cmd.Context(), log, q)
 	if err != nil {
 		return r.failed(err)
 	}
 	shown.clear()
-	return r.report(cmd, t, log.Survey(), result)
+	return r.report(cmd, t, log.Survey(), result, best)
 }
 
 // read turns the options into a request and names of columns.
@@ -239,6 +249,7 @@ type replayed struct {
 	*logs.Result
 	Noise   *logs.NoiseFigures `json:"noise_figures"` // null where the log gives none
 	NoNoise string             `json:"noise_figures_missing,omitempty"`
+	Sweep   *swept             `json:"sweep,omitempty"` // with --sweep
 	Limits  []measures.Limit   `json:"limits,omitempty"`
 	Caution string             `json:"caution"`
 }
@@ -252,7 +263,7 @@ type replayedOf struct {
 }
 
 // report prints what came out. Limits are judged where a scenario was named.
-func (r *replayOptions) report(cmd *cobra.Command, t *task, v *logs.Survey, result *logs.Result) error {
+func (r *replayOptions) report(cmd *cobra.Command, t *task, v *logs.Survey, result *logs.Result, best *swept) error {
 	var limits []scenarios.LimitResult
 	if cmd.Flags().Changed("scenario") {
 		var err error
@@ -263,7 +274,7 @@ func (r *replayOptions) report(cmd *cobra.Command, t *task, v *logs.Survey, resu
 	noise, noNoise := result.NoiseFigures()
 	var err error
 	if t.opt.json {
-		doc := &replayed{Format: 1, Plant: t.Plant.Name, Form: measures.FormName(t.design.Form), Result: result, Noise: noise, Caution: measures.Caution,
+		doc := &replayed{Format: 1, Plant: t.Plant.Name, Form: measures.FormName(t.design.Form), Result: result, Noise: noise, Sweep: best, Caution: measures.Caution,
 			Log: replayedOf{File: r.log, Rows: v.Rows, Start: logs.Number(v.Start), End: logs.Number(v.End), Ignored: append([]string{}, v.PassedOver...)}}
 		if noNoise != nil {
 			doc.Noise, doc.NoNoise = nil, noNoise.Error()
@@ -273,7 +284,10 @@ func (r *replayOptions) report(cmd *cobra.Command, t *task, v *logs.Survey, resu
 		}
 		err = printJSON(cmd.OutOrStdout(), doc)
 	} else {
-		s := &replaySheet{task: t, options: r, survey: v, result: result, noise: noise, noNoise: noNoise, limits: limits}
+		s := &replaySheet{task: t, options: r, survey: v, result: result, noise: noise, noNoise: noNoise, best: best, limits: limits}
+		if cmd.Flags().Changed("skip") {
+			s.skip = &r.skip
+		}
 		err = s.print(cmd.OutOrStdout())
 	}
 	if err != nil {

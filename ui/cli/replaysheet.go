@@ -21,6 +21,8 @@ type replaySheet struct {
 	result  *logs.Result
 	noise   *logs.NoiseFigures
 	noNoise error
+	best    *swept   // nil without --sweep
+	skip    *float64 // s; nil for a tenth
 	limits  []scenarios.LimitResult
 }
 
@@ -33,6 +35,9 @@ func (s *replaySheet) print(w io.Writer) error {
 	s.printWhiteness(line)
 	s.printReferences(line)
 	s.printNoise(line)
+	if s.best != nil {
+		s.printSweep(line)
+	}
 	if len(s.limits) > 0 {
 		line("")
 		line("limit\tvalue\tlimit\t")
@@ -235,4 +240,17 @@ func (s *replaySheet) printNoise(line func(string, ...any)) {
 		line("fit\tp %.3g\t%s", fit, words)
 	}
 	line("(std of one sample, quantisation included; taking figures over is your choice, no file was changed)")
+}
+
+// printSweep says which speed predicts the log best.
+func (s *replaySheet) printSweep(line func(string, ...any)) {
+	unit := ""
+	if len(s.result.Innovations) == 1 {
+		unit = unitOf(s.result.Innovations[0].Unit)
+	}
+	skipped := (s.survey.End - s.survey.Start) / 10
+	if s.skip != nil {
+		skipped = *s.skip
+	}
+	s.best.print(line, unit, skipped)
 }
