@@ -113,7 +113,7 @@ func filtered(m *estimator.Model, d *estimator.Design, j int) []float64 {
 	f.Sub(m.A, &f)
 	l := d.Gain.ColView(j)
 	x.Outer(1, l, l)
-	const most = 60 // doublings: enough for a pole within 1e-15 of the circle
+	const most = 60                                    // doublings: enough for a pole within 1e-15 of the circle
 	for k := 0; k < most && mat.Norm(&f, 1) > 0; k++ { // powers of a stable F end at 0
 		var step, moved mat.Dense
 		moved.Mul(&f, &x)
