@@ -106,19 +106,6 @@ func span(low, high logs.Number) string {
 	return figure(float64(low)) + " to " + figure(float64(high))
 }
 
-// place says where a figure lies to its band.
-func place(v, low, high logs.Number) string {
-	switch {
-	case v < low:
-		return "BELOW"
-	case v > high:
-		return "ABOVE"
-	case v >= low && v <= high:
-		return "inside"
-	}
-	return ""
-}
-
 func unitOf(unit string) string {
 	if unit == "" {
 		return ""
@@ -131,7 +118,7 @@ func (s *replaySheet) printInnovations(line func(string, ...any)) {
 	line("")
 	line("innovations of this gain\tmeasured\texpected\t95 of 100 true logs\t")
 	row := func(what string, v, expected, low, high logs.Number) {
-		line("%s\t%s\t%s\t%s\t%s", what, figure(float64(v)), figure(float64(expected)), span(low, high), place(v, low, high))
+		line("%s\t%s\t%s\t%s\t%s", what, figure(float64(v)), figure(float64(expected)), span(low, high), measures.Place(v, low, high))
 	}
 	for _, v := range r.Innovations {
 		row(v.Name+unitOf(v.Unit)+", mean", v.Mean, 0, v.MeanLow, v.MeanHigh)
@@ -139,47 +126,10 @@ func (s *replaySheet) printInnovations(line func(string, ...any)) {
 	}
 	row("normalised squared (NIS), mean", r.NISMean, logs.Number(len(r.Innovations)), r.NISLow, r.NISHigh)
 	for i := range r.Innovations {
-		if out, all := outsideLags(&r.Innovations[i]); all > 0 {
+		if out, all := measures.OutsideLags(&r.Innovations[i]); all > 0 {
 			line("%s, autocorrelation\t%d of %d lags outside this gain's own 95 %% band (neighbours go together)", r.Innovations[i].Name, out, all)
 		}
 	}
-}
-
-// outsideLags counts the lags whose autocorrelation is outside its band, and those
-// that have one.
-func outsideLags(v *logs.Innovation) (out, all int) {
-	for j, have := range v.Autocorrelation {
-		switch place(have, v.AutocorrelationLow[j], v.AutocorrelationHigh[j]) {
-		case "BELOW", "ABOVE":
-			out++
-			all++
-		case "inside":
-			all++
-		}
-	}
-	return out, all
-}
-
-// Largest |autocorrelation| that is called small, and moderate.
-const (
-	smallCorrelation    = 0.1
-	moderateCorrelation = 0.3
-)
-
-// whiteWords puts a test in words: what is significant in a long log can be a trifle.
-func whiteWords(w *logs.Whiteness) string {
-	p, size := float64(w.P), float64(w.EffectSize)
-	switch {
-	case math.IsNaN(p) || math.IsNaN(size):
-		return "not defined"
-	case p >= 0.05:
-		return "nothing speaks against white"
-	case size < smallCorrelation:
-		return "not white, but the correlation is small"
-	case size < moderateCorrelation:
-		return "not white, moderate correlation"
-	}
-	return "NOT WHITE, strong correlation"
 }
 
 func (s *replaySheet) printWhiteness(line func(string, ...any)) {
@@ -191,7 +141,7 @@ func (s *replaySheet) printWhiteness(line func(string, ...any)) {
 	line("whiteness at the floor gain\tp\tlargest |autocorrelation|\t")
 	for i := range s.result.Whiteness {
 		w := &s.result.Whiteness[i]
-		line("%s\t%s\t%s\t%s", w.Name, figure(float64(w.P)), figure(float64(w.EffectSize)), whiteWords(w))
+		line("%s\t%s\t%s\t%s", w.Name, figure(float64(w.P)), figure(float64(w.EffectSize)), measures.WhiteWords(w))
 	}
 }
 
@@ -205,9 +155,6 @@ func (s *replaySheet) printReferences(line func(string, ...any)) {
 		line("%s%s\t%s\t%s\t%d", c.Name, unitOf(c.Unit), figure(float64(c.RMS)), figure(float64(c.Bias)), c.Count)
 	}
 }
-
-// root is the standard deviation of a variance.
-func root(v logs.Number) logs.Number { return logs.Number(math.Sqrt(float64(v))) }
 
 func (s *replaySheet) printNoise(line func(string, ...any)) {
 	line("")
@@ -224,20 +171,15 @@ func (s *replaySheet) printNoise(line func(string, ...any)) {
 	line("noise figures from this log\tsuggested\tplant file\t95 %% confidence")
 	for i, e := range n.Sensors {
 		v := s.result.Innovations[i]
-		line("std of %s%s\t%s\t%s\t%s", v.Name, unitOf(v.Unit), figure(float64(root(e.Value))), figure(float64(root(n.Model[i]))), span(root(e.Low), root(e.High)))
+		line("std of %s%s\t%s\t%s\t%s", v.Name, unitOf(v.Unit), figure(float64(measures.RootOf(e.Value))), figure(float64(measures.RootOf(n.Model[i]))), span(measures.RootOf(e.Low), measures.RootOf(e.High)))
 	}
 	apart := ""
 	if !n.Apart {
 		apart = ", not to be told from the sensors' noise"
 	}
 	line("factor on the process noise Q\t%s\t1\t%s%s", figure(float64(n.Process.Value)), span(n.Process.Low, n.Process.High), apart)
-	fit := float64(n.Fit)
-	words := "the noise figures alone can explain this log"
-	if fit < 0.05 {
-		words = "noise figures ALONE DO NOT explain this log: look at the model"
-	}
-	if !math.IsNaN(fit) {
-		line("fit\tp %.3g\t%s", fit, words)
+	if words := measures.FitWords(n.Fit); words != "" {
+		line("fit\tp %.3g\t%s", float64(n.Fit), words)
 	}
 	line("(std of one sample, quantisation included; taking figures over is your choice, no file was changed)")
 }

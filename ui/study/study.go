@@ -1,5 +1,6 @@
 // Package study does in the background what takes longer than a drag: curves of
-// the price of speed, the worst case over tolerances, searches for poles. One
+// the price of speed, the worst case over tolerances, searches for poles, the
+// replay of a log. One
 // study runs at a time; a new one replaces it.
 package study
 
@@ -17,6 +18,7 @@ import (
 	"polewright/scenarios/tolerance"
 	"polewright/ui/desk"
 	"polewright/ui/newest"
+	"polewright/ui/replays"
 )
 
 // Kind of a study.
@@ -34,6 +36,8 @@ const (
 	Fastest
 	// Quietest seeks the quietest poles within SettleMax and the limits.
 	Quietest
+	// Replay runs the design, then Rivals, over Log.
+	Replay
 )
 
 // Request is one study of a design. It is immutable.
@@ -42,6 +46,15 @@ type Request struct {
 	Kind      Kind
 	Design    *estimator.Design
 	SettleMax float64 // s, Quietest only
+
+	Log    *replays.Log // Replay only
+	Rivals []Rival
+}
+
+// Rival is a kept design that a replay shows beside the one in hand.
+type Rival struct {
+	Name   string
+	Design *estimator.Design
 }
 
 // Answer is a study as far as it has come. It is immutable.
@@ -55,6 +68,8 @@ type Answer struct {
 	Envelope        *tolerance.Envelope // Tolerances, when done
 	Best            *estimator.Design   // searches: the best so far
 	Found           *seek.Result        // searches, when done
+	Replay          *replays.Outcome    // Replay, of the design in hand
+	Rivals          []replays.Rival     // Replay, those so far
 	Err             error
 }
 
@@ -64,6 +79,7 @@ type Student struct {
 	period *float64
 	notify func(Answer)
 	box    *newest.Box[Request]
+	runner *replays.Runner // of the worker; nil before the first replay
 }
 
 // New starts a student. notify is called from the background, one answer at a
@@ -115,6 +131,8 @@ func (s *Student) serve(ctx context.Context, r Request) {
 		a = s.tolerances(ctx, r, send)
 	case Fastest, Quietest:
 		a = s.seek(ctx, r, send)
+	case Replay:
+		a = s.replay(ctx, r, send)
 	default:
 		a = Answer{Err: fmt.Errorf("no study of kind %d", r.Kind)}
 	}

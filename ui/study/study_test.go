@@ -7,6 +7,7 @@ import (
 	"polewright/estimator"
 	"polewright/ui/desk"
 	"polewright/ui/desk/desktest"
+	"polewright/ui/replays/replaystest"
 	"polewright/ui/study"
 )
 
@@ -62,6 +63,38 @@ func TestEveryStudyEnds(t *testing.T) {
 	s.Ask(study.Request{Gen: 4, Kind: study.Quietest, Design: design, SettleMax: 0.35})
 	if a = wait(t, answers, 4); a.Found == nil || !a.Found.Met {
 		t.Errorf("got %+v", a.Found)
+	}
+}
+
+// A replay answers for the design in hand before the rivals are done, and ends
+// with all of them in order.
+func TestReplayOfALog(t *testing.T) {
+	b, design := bench(t, "lift")
+	log := replaystest.Log(t, b, replaystest.Made{Rows: 400, Seed: 1})
+	answers := make(chan study.Answer, 1000)
+	s := study.New(b, func(a study.Answer) { answers <- a })
+	defer s.Close()
+	rivals := []study.Rival{{Name: "A", Design: design}, {Name: "B"}, {Name: "C", Design: design}}
+	s.Ask(study.Request{Gen: 1, Kind: study.Replay, Design: design, Log: log, Rivals: rivals})
+	first := <-answers
+	if first.Done || first.Replay == nil || len(first.Rivals) != 0 {
+		t.Errorf("first %+v", first)
+	}
+	a := wait(t, answers, 1)
+	if a.Replay == nil || len(a.Rivals) != 3 {
+		t.Fatalf("got %+v", a)
+	}
+	for i, r := range a.Rivals {
+		if r.Name != rivals[i].Name || (r.Err == nil) != (rivals[i].Design != nil) {
+			t.Errorf("rival %d: %+v", i, r)
+		}
+	}
+	if have, want := a.Rivals[2].Result.NISMean, a.Replay.Result.NISMean; have != want {
+		t.Errorf("the same design: NIS %v and %v", have, want)
+	}
+	s.Ask(study.Request{Gen: 2, Kind: study.Replay, Design: design})
+	if a := <-answers; a.Gen != 2 || !a.Done || a.Err == nil {
+		t.Errorf("without a log: %+v", a)
 	}
 }
 

@@ -85,7 +85,10 @@ func heading(c *canvas.Canvas, x, y, w int, p Panel, g *theme.Glyphs) {
 			c.Text(at, y, strings.Repeat(string(g.Band), 3)+" 2 "+g.Sigma+" due", theme.Faint)
 		}
 	default:
-		c.Text(at, y, g.Estimate.Sample+" innovation", ink)
+		at = c.Text(at, y, g.Estimate.Sample+" innovation", ink) + 2
+		if text := strings.Repeat(string(g.Band), 3) + " 2 " + g.Sigma + " due"; p.Band > 0 && x+w-at >= canvas.TextWidth(text) {
+			c.Text(at, y, text, theme.Faint)
+		}
 	}
 }
 
@@ -157,7 +160,7 @@ func plot(c *canvas.Canvas, x, top, width, rows int, p Panel, g *theme.Glyphs) {
 			}
 		}
 		level(0, g.Rule)
-		if p.Mode == Error && p.Band > 0 {
+		if p.Band > 0 {
 			level(p.Band, g.Band)
 			level(-p.Band, g.Band)
 		}

@@ -1,5 +1,6 @@
 // Package views draws what opens on top of the screen: help, all readings, the
-// candidates side by side, the trade-off, sensors and modes, the worst case.
+// candidates side by side, the trade-off, sensors and modes, the worst case, a real
+// log.
 package views
 
 import (
@@ -18,8 +19,15 @@ type span struct {
 
 // page collects rows; it becomes lines of text at the end.
 type page struct {
-	w    int
-	rows [][]span
+	w     int
+	rows  [][]span
+	plots []plot
+}
+
+// plot draws itself from row y on.
+type plot struct {
+	y    int
+	draw func(c *canvas.Canvas, y int)
 }
 
 func (p *page) row(spans ...span) { p.rows = append(p.rows, spans) }
@@ -40,6 +48,12 @@ func (p *page) prose(x int, text string, ink theme.Ink) {
 	}
 }
 
+// plot leaves so many rows to a drawing.
+func (p *page) plot(rows int, draw func(c *canvas.Canvas, y int)) {
+	p.plots = append(p.plots, plot{len(p.rows), draw})
+	p.rows = append(p.rows, make([][]span, rows)...)
+}
+
 func (p *page) lines(t *theme.Theme) []string {
 	var c canvas.Canvas
 	c.Reset(p.w, len(p.rows))
@@ -53,6 +67,9 @@ func (p *page) lines(t *theme.Theme) []string {
 				}
 			}
 		}
+	}
+	for _, d := range p.plots {
+		d.draw(&c, d.y)
 	}
 	return c.Lines(t, true)
 }

@@ -1,0 +1,158 @@
+package replays_test
+
+import (
+	"bytes"
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"testing"
+
+	"polewright/estimator"
+	"polewright/scenarios/logs"
+	"polewright/ui/desk"
+	"polewright/ui/desk/desktest"
+	"polewright/ui/replays"
+)
+
+// recorded is a made-up log of the lift with so many rows, its fifth sample lost and
+// one reading that stands out.
+func recorded(t *testing.T, b *desk.Bench, rows, spike, most int, from float64) (*replays.Log, error) {
+	t.Helper()
+	l, err := logs.NewLayout(b.Plant, b.Model)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var text bytes.Buffer
+	text.WriteString("t")
+	for _, list := range [][]logs.Signal{l.Inputs, l.Sensors} {
+		for _, s := range list {
+			fmt.Fprintf(&text, ",%s", s.Name)
+		}
+	}
+	text.WriteString("\n")
+	for k := range rows {
+		fmt.Fprintf(&text, "%.9g", float64(k)*l.Period)
+		for _, s := range l.Inputs {
+			fmt.Fprintf(&text, ",%.9g", s.Operating)
+		}
+		for _, s := range l.Sensors {
+			v := s.Operating + 1e-4*math.Sin(float64(k*k))
+			if k == spike {
+				v += 0.5
+			}
+			if k == 4 {
+				text.WriteString(",")
+				continue
+			}
+			fmt.Fprintf(&text, ",%.9g", v)
+		}
+		text.WriteString("\n")
+	}
+	log, err := logs.Open(context.Background(), bytes.NewReader(text.Bytes()), l, logs.Options{File: "made.csv"})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return replays.Load(context.Background(), log, from, most)
+}
+
+// The window says what it is of; what is shown of it is what a replay of the whole
+// gives, and no spike is lost between the bins of a trace.
+func TestOutcomeIsTheReplayOfTheWindow(t *testing.T) {
+	b := desktest.Bench(t, "lift")
+	_, _, d := desktest.Start(t, b, estimator.Options{})
+	log, err := recorded(t, b, 5000, 3000, 4000, 0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if log.Whole != 5000 || log.Record.Survey().Samples != 4000 || log.File != "made.csv" {
+		t.Errorf("%d of %d samples of %s", log.Record.Survey().Samples, log.Whole, log.File)
+	}
+	r, err := replays.NewRunner(b.Model)
+	if err != nil {
+		t.Fatal(err)
+	}
+	o, err := r.Run(context.Background(), log, d)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var largest float64
+	want, err := logs.Replay(context.Background(), log.Record, logs.Request{Model: b.Model, Gain: logs.GainOf(d), Each: func(row *logs.Row) error {
+		if e := math.Abs(row.Innovation[0]); e > largest {
+			largest = e
+		}
+		return nil
+	}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if have := o.Result.Innovations[0].Std; have != want.Innovations[0].Std || len(o.Result.Whiteness) != 1 {
+		t.Errorf("std %v, want %v; whiteness %v", have, want.Innovations[0].Std, o.Result.Whiteness)
+	}
+	seen, at := 0.0, -1
+	for k, v := range o.Traces[0] {
+		if math.Abs(v) > seen {
+			seen, at = math.Abs(v), k
+		}
+	}
+	if seen != largest || at != 3000*len(o.Traces[0])/4000 {
+		t.Errorf("largest %g in bin %d of %d, want %g", seen, at, len(o.Traces[0]), largest)
+	}
+	rival := r.Rival(context.Background(), log, "A", d)
+	if rival.Err != nil || rival.Name != "A" || rival.Result.NISMean != o.Result.NISMean {
+		t.Errorf("the same design as a rival: %+v", rival)
+	}
+	if rival = r.Rival(context.Background(), log, "B", nil); !errors.Is(rival.Err, estimator.ErrShape) {
+		t.Errorf("no design as a rival: %v", rival.Err)
+	}
+}
+
+// A short log has a bin for every sample, and none where one was lost.
+func TestShortLogsHaveABinPerSample(t *testing.T) {
+	b := desktest.Bench(t, "lift")
+	_, _, d := desktest.Start(t, b, estimator.Options{})
+	log, err := recorded(t, b, 50, -1, replays.Most, 0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	r, err := replays.NewRunner(b.Model)
+	if err != nil {
+		t.Fatal(err)
+	}
+	o, err := r.Run(context.Background(), log, d)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(o.Traces[0]) != 50 {
+		t.Fatalf("%d bins", len(o.Traces[0]))
+	}
+	for k, v := range o.Traces[0] {
+		if math.IsNaN(v) != (k == 4) {
+			t.Errorf("bin %d: %v", k, v)
+		}
+	}
+}
+
+func TestWindows(t *testing.T) {
+	b := desktest.Bench(t, "lift")
+	log, err := recorded(t, b, 100, -1, 10, 0.5)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if v := log.Record.Survey(); v.Start != 0.5 || v.Samples != 10 {
+		t.Errorf("%d samples from %g s", v.Samples, v.Start)
+	}
+	if _, err = recorded(t, b, 100, -1, 10, 1e6); !errors.Is(err, replays.ErrEmpty) {
+		t.Errorf("a window behind the end: %v", err)
+	}
+	_, _, d := desktest.Start(t, b, estimator.Options{})
+	r, err := replays.NewRunner(b.Model)
+	if err != nil {
+		t.Fatal(err)
+	}
+	ctx, cancel := context.WithCancel(context.Background())
+	cancel()
+	if _, err := r.Run(ctx, log, d); !errors.Is(err, context.Canceled) {
+		t.Errorf("a cancelled replay: %v", err)
+	}
+}
