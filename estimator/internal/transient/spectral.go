@@ -67,7 +67,7 @@ func (g *spectral) tridiagonal(m int) {
 		head := row[k+1]
 		total = rest + head*head
 		g.off2[k] = total
-		if rest == 0 {
+		if rest < 1e-60 { // nothing beside the largest entry, which is 1, and its square may vanish
 			continue
 		}
 		// v with H = I − 2 v vᵀ/(vᵀv) takes the row to one entry
