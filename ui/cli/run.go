@@ -10,6 +10,7 @@ import (
 	"os"
 	"os/signal"
 	"strings"
+	"unicode"
 
 	"github.com/spf13/cobra"
 
@@ -60,10 +61,12 @@ func Run(args []string, stdin io.Reader, stdout, stderr io.Writer) int {
 	return statusBad
 }
 
-// oneLine keeps the message of an error on one line and free of control characters.
+// oneLine keeps the message of an error on one line and free of what a terminal
+// could take for a command: control characters, invisible ones, those that turn the
+// writing direction.
 func oneLine(err error) string {
 	text := strings.Map(func(r rune) rune {
-		if r < ' ' || r == 0x7f || r >= 0x80 && r < 0xa0 {
+		if !unicode.IsPrint(r) {
 			return ' '
 		}
 		return r
