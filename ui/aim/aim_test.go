@@ -1,6 +1,7 @@
 package aim_test
 
 import (
+	"fmt"
 	"math"
 	"math/cmplx"
 	"strings"
@@ -11,6 +12,7 @@ import (
 	"polewright/estimator"
 	"polewright/estimator/poles"
 	"polewright/ui/aim"
+	"polewright/ui/desk/desktest"
 )
 
 // tank is a two-mode plant, sampled where period is above 0, by hand: A is
@@ -96,6 +98,37 @@ func TestRefusals(t *testing.T) {
 	}
 	if _, err := aim.Own(spec, "s", m, d); err == nil || !strings.Contains(err.Error(), "feedback") {
 		t.Errorf("no controller: %v", err)
+	}
+}
+
+// A prompt takes no list that is too short or too long; only delay registers may
+// be left out.
+func TestResolverCounts(t *testing.T) {
+	m, _ := tank(t, 0.1)
+	resolve := aim.Resolver(m)
+	for text, want := range map[string]string{
+		"0.5": "1 poles were given; expected 2", "0.5, 0.6, 0.7": "3 poles were given; expected 2", "0.5, 0.6": "", "equal@3": "",
+	} {
+		if _, err := resolve(text, "z", estimator.Prediction); fmt.Sprint(err) != want && (err != nil || want != "") {
+			t.Errorf("%s: %v, expected %q", text, err, want)
+		}
+	}
+	b := desktest.Bench(t, "gangway")
+	d, err := estimator.NewDesigner(b.Model, estimator.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	movable, registers := d.Movable()
+	if registers == 0 {
+		t.Fatal("no delay registers: the test shows nothing")
+	}
+	resolve = aim.Resolver(b.Model)
+	for k := 1; k <= movable+1; k++ {
+		list := strings.TrimSuffix(strings.Repeat("0.5, ", k), ", ")
+		_, err := resolve(list, "z", estimator.Prediction)
+		if ok := k == movable || k == movable-registers; ok != (err == nil) {
+			t.Errorf("%d poles of %d, %d delay registers: %v", k, movable, registers, err)
+		}
 	}
 }
 

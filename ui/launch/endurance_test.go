@@ -14,6 +14,7 @@ import (
 	tea "github.com/charmbracelet/bubbletea"
 
 	"polewright/estimator"
+	"polewright/ui/aim"
 	"polewright/ui/desk"
 	"polewright/ui/desk/desktest"
 	"polewright/ui/screen"
@@ -89,7 +90,7 @@ func sit(t *testing.T, name string) *desktop {
 		Map:     surveyor.Ask,
 		Study:   student.Ask,
 		Save:    func(string, desk.Work, bool) error { return errors.New("no disk") },
-		Resolve: (&resolver{bench: b}).resolve,
+		Resolve: aim.Resolver(b.Model),
 		Theme:   theme.Options{},
 		Now:     func() time.Time { return time.Unix(0, d.clock.Load()) },
 		Width:   120, Height: 40,

@@ -4,7 +4,6 @@ package launch
 
 import (
 	"context"
-	"errors"
 	"io"
 	"os"
 	"path/filepath"
@@ -12,8 +11,6 @@ import (
 
 	tea "github.com/charmbracelet/bubbletea"
 
-	"polewright/estimator"
-	"polewright/estimator/poles"
 	"polewright/ui/aim"
 	"polewright/ui/desk"
 	"polewright/ui/journal"
@@ -88,7 +85,7 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 		Map:     surveyor.Ask,
 		Study:   student.Ask,
 		Save:    store.save,
-		Resolve: (&resolver{bench: o.Work.Bench}).resolve,
+		Resolve: aim.Resolver(o.Work.Bench.Model),
 		Theme:   o.Theme,
 		Calm:    o.Calm,
 		Message: message,
@@ -111,31 +108,6 @@ func newStore(o *Options) (*store, error) {
 	path, err := filepath.Abs(o.Work.File)
 	s.own = content{path, o.Known}
 	return s, err
-}
-
-// resolver reads pole lists and patterns with designers of its own, so that the
-// prompt never waits for the solver.
-type resolver struct {
-	bench     *desk.Bench
-	designers [2]*estimator.Designer // by form
-}
-
-func (r *resolver) resolve(text, plane string, form estimator.Form) ([]complex128, error) {
-	if int(form) >= len(r.designers) {
-		return nil, errors.New("unknown form")
-	}
-	spec, err := poles.Parse(text)
-	if err != nil {
-		return nil, err
-	}
-	if r.designers[form] == nil {
-		d, err := estimator.NewDesigner(r.bench.Model, estimator.Options{Form: form})
-		if err != nil {
-			return nil, err
-		}
-		r.designers[form] = d
-	}
-	return aim.Own(spec, plane, r.bench.Model, r.designers[form])
 }
 
 // IsTerminal reports whether both streams are files that a screen can be shown
