@@ -6,6 +6,7 @@ import (
 	"testing"
 
 	"polewright/plants"
+	"polewright/plants/library"
 )
 
 // FuzzParse wants a plant or an *Error of one line that names the file, and from a
@@ -16,6 +17,13 @@ func FuzzParse(f *testing.F) {
 	f.Add(tank(stepped, "lag_s = 0.25\ndelay_samples = 1", "wrap = 6.28", "[sensor_noise]\ncovariance = [[1]]"), false)
 	f.Add(`{"format": 1, "model": {"time": "continuous", "A": [["-1^2"]], "C": [[1]]}}`, true)
 	f.Add(`{"format": 1, "model": {"time": "discrete", "period_s": 1e-9, "A": [[1e300]], "B": [[]], "C": [[1]]}}`, true)
+	f.Add(strings.Replace(base, "\"-damp/mass\"", "\"-9^9^9^9\"", 1), false)
+	f.Add(strings.Repeat("a={", 500), false)
+	f.Add(strings.Repeat("[", 2000), true)
+	for _, name := range library.Names() {
+		text, _, _ := library.Plant(name)
+		f.Add(string(text), false)
+	}
 	f.Fuzz(func(t *testing.T, text string, isJSON bool) {
 		if len(text) > 4096 {
 			return

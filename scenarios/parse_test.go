@@ -9,6 +9,7 @@ import (
 	"testing"
 
 	"polewright/plants"
+	"polewright/plants/library"
 )
 
 // contract is a scenario with every key.
@@ -187,6 +188,13 @@ func FuzzParse(f *testing.F) {
 	f.Add("format = 1\nduration_s = 3\ndrive = [{ input = \"force\", shape = \"chirp\", size = 1e300, frequency_hz = 1, to_hz = 2, at_s = 3 }]")
 	f.Add("format = 1\nduration_s = 3\n[truth]\nplant = \"a.toml\"\n[initial]\ntrue = [1, 2, 3]")
 	f.Add("format = 1\nduration_s = 3\nfault = [{ sensor = \"tacho\", kind = \"spike\", size = -1e308, from_s = 3 }]")
+	f.Add("format = 1\nduration_s = 1e300")
+	f.Add("format = 1\nduration_s = 3\ninitial = " + strings.Repeat("[", 500))
+	for _, name := range library.Names() {
+		for _, file := range library.Scenarios(name) {
+			f.Add(string(file.Text))
+		}
+	}
 	f.Fuzz(func(t *testing.T, text string) {
 		s, err := Parse("s.toml", []byte(text), p)
 		if err != nil {

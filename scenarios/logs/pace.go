@@ -101,12 +101,14 @@ func (p *pace) count(span float64, k int) {
 	p.low, p.high = math.Min(p.low, rest), math.Max(p.high, rest)
 }
 
-// period is the mean of the intervals without missing rows.
+// period is the mean of the intervals without missing rows; their median where gaps
+// are so long that no digits of the others are left beside them.
 func (p *pace) period() float64 {
-	if p.intervals == 0 {
+	rest := p.end - p.begin - p.gaps
+	if p.intervals == 0 || !(rest > 1e-9*p.gaps) {
 		return p.median
 	}
-	return (p.end - p.begin - p.gaps) / float64(p.intervals)
+	return rest / float64(p.intervals)
 }
 
 // jitter is the largest deviation of an interval over the period.

@@ -326,6 +326,9 @@ func FuzzReader(f *testing.F) {
 	f.Add([]byte(header+"0,4100,1.2,0\n0.011,,NaN,\"0\"\n0.05,1,2,3"), 1, true)
 	f.Add([]byte("t,gyro,\"gate speed\",rail encoder,cable force\r\n0,1,2,3,4\r\n1e-2,1,2,3,4\r\n"), -2, false)
 	f.Add([]byte("\xef\xbb\xbft,\"a\"\"\n"), 0, false)
+	f.Add([]byte(header+"0,1,1,1\n1e-300,1,1,1\n1,1,1,1\n"), 0, true)
+	f.Add([]byte(header+"0,1e308,-1e308,Inf\n1e308,1,1,1\n"), 10000, false)
+	f.Add([]byte(header+"0,\x1b[2J,1,1\n0.01,\xe2\x80\xae,1,1\n"), 0, false)
 	f.Fuzz(func(t *testing.T, data []byte, lag int, resample bool) {
 		opt := logs.Options{File: "fuzz.csv", InputLag: lag, Resample: resample}
 		log, err := logs.Open(context.Background(), bytes.NewReader(data), hoist(), opt)
