@@ -93,6 +93,15 @@ func (m *Model) upToDate(a *desk.Answer) {
 	}
 	m.now.design, m.now.limits, m.now.run, m.now.traced = a.Design, m.limits, a.Run, a.Stage >= desk.Traced
 	m.now.on = m.truth.name
+	if m.current == "" {
+		if m.current = m.keptAs(); m.current != "" {
+			m.dirty |= headerRegion
+			if m.keepWanted {
+				m.keepWanted = false
+				m.say("this design is kept as " + m.current + " already")
+			}
+		}
+	}
 	if a.Better != nil {
 		m.offerBetter(a)
 	}

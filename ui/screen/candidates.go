@@ -5,6 +5,7 @@ import (
 
 	"github.com/charmbracelet/bubbles/key"
 	tea "github.com/charmbracelet/bubbletea"
+	"gonum.org/v1/gonum/mat"
 
 	"polewright/scenarios"
 	"polewright/ui/desk"
@@ -60,6 +61,7 @@ func (m *Model) keep() {
 	m.revision++
 	m.dirty |= headerRegion | statusRegion
 	m.say("kept as " + letter + "; v shows the candidates side by side")
+	m.studyDue()
 }
 
 // recall takes a candidate into the hand, with its stored gain.
@@ -139,8 +141,40 @@ func (m *Model) opener() key.Binding {
 		return m.keys.Sensors
 	case stressView:
 		return m.keys.Stress
+	case replayView:
+		return m.keys.Log
 	}
 	return key.Binding{}
+}
+
+// keptAs is the letter of the candidate with the gain in hand, empty for none. What
+// rounding does to a gain that is reached on another way makes no other design.
+func (m *Model) keptAs() string {
+	gain, current := m.now.gain, m.now.gainCurrent
+	if d := m.now.design; d != nil {
+		gain, current = d.Gain, d.GainCurrent
+	}
+	for _, c := range m.candidates {
+		d := c.Design
+		if d != nil && gain != nil && c.Form == m.now.form && c.Method == m.now.method && sameGain(d.Gain, gain) && sameGain(d.GainCurrent, current) {
+			return c.Letter
+		}
+	}
+	return ""
+}
+
+// sameGain says that two gains differ by at most 1e-9 of their norm.
+func sameGain(a, b *mat.Dense) bool {
+	if a == nil || b == nil {
+		return a == b
+	}
+	n, p := a.Dims()
+	if r, c := b.Dims(); r != n || c != p {
+		return false
+	}
+	var d mat.Dense
+	d.Sub(a, b)
+	return mat.Norm(&d, 2) <= 1e-9*mat.Norm(a, 2)
 }
 
 // columns are the candidates and, where it is none of them, the design in hand.
@@ -200,6 +234,8 @@ func (m *Model) viewKey(name string) tea.Cmd {
 		return m.sensorsKey(s)
 	case m.open == stressView:
 		return m.stressKey(s)
+	case m.open == replayView:
+		return m.replayKey(s)
 	}
 	return nil
 }

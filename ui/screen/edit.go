@@ -198,6 +198,7 @@ func (m *Model) restore() tea.Cmd {
 		m.now.run, m.now.traced = nil, false
 	}
 	cmd := m.changed()
+	m.current = m.keptAs()
 	if m.now.design == nil {
 		return cmd
 	}

@@ -231,6 +231,28 @@ func TestCandidates(t *testing.T) {
 	r.wantShown("no candidate 2")
 }
 
+// A design that is back in hand has its letter again and is not kept twice.
+func TestKeptDesignHasItsLetterAgain(t *testing.T) {
+	r := start(t)
+	r.press("a", "left")
+	r.reply(desk.Traced)
+	if r.work().Current != "" {
+		t.Fatal("another design has the letter")
+	}
+	r.press("u")
+	r.wantShown("candidate A")
+	r.press("a")
+	r.wantShown("kept as A already")
+	r.press("left", "right", "a") // reached by moving: known once its gain is there
+	r.reply(desk.Judged)
+	r.wantShown("kept as A already")
+	r.reply(desk.Traced)
+	r.wantShown("candidate A")
+	if n := len(r.work().Candidates); n != 1 {
+		t.Errorf("%d candidates", n)
+	}
+}
+
 func TestFormIsAskedFor(t *testing.T) {
 	r := start(t)
 	r.press("c")

@@ -20,7 +20,8 @@ func (m *Model) takeFixed(list []complex128) {
 
 // refit makes the poles in hand as many as the form in hand has: delay registers
 // have poles at z = 0 that one form can choose and the other cannot. Other poles
-// that are missing are not made up. It tells whether that helped, so that asking again is of use.
+// that are missing are not made up. It tells whether that helped, so that asking
+// again is of use.
 func (m *Model) refit(a *desk.Answer) bool {
 	have := m.now.set.Count()
 	if m.now.gain != nil || m.period() == 0 || a.Movable == 0 || have == 0 || have == a.Movable || have < a.Movable-a.Registers {
