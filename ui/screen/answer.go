@@ -214,13 +214,20 @@ func without(list, others []complex128) []complex128 {
 }
 
 // newRun gives every trace that is looked at an axis, the first time; later runs
-// keep it until the hands rest.
+// keep it while it serves, and until the hands rest in any case. An axis that a
+// run without bounds asked for goes with that run.
 func (m *Model) newRun() {
+	wild := m.run != nil && m.run.Diverged || m.shown != nil && !m.shown.Stable
+	loose := m.wildAxes && !wild || !m.resting
 	for _, key := range m.panels() {
 		curves := traces.Curves(m.run, key.mode, key.index)
-		if _, ok := m.axes[key]; !ok && curves != nil {
+		axis, ok := m.axes[key]
+		if curves != nil && (!ok || loose && !axis.Serves(curves)) {
 			m.axes[key] = traces.Axes(curves)
 		}
+	}
+	if m.run != nil {
+		m.wildAxes = wild
 	}
 }
 

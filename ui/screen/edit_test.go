@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
+	"math"
 	"math/cmplx"
 	"slices"
 	"strings"
@@ -250,6 +251,50 @@ func TestKeptDesignHasItsLetterAgain(t *testing.T) {
 	r.wantShown("candidate A")
 	if n := len(r.work().Candidates); n != 1 {
 		t.Errorf("%d candidates", n)
+	}
+}
+
+// The axes that an unstable design asked for go with it.
+func TestAxesOfAnUnstableDesignDoNotStick(t *testing.T) {
+	labels := func(r *rig) string {
+		var out strings.Builder
+		for _, l := range strings.Split(strip(r.m.View()), "\n") {
+			if before, _, ok := strings.Cut(l, "│"); ok && strings.TrimSpace(before) != "" {
+				out.WriteString(strings.TrimSpace(before) + " ")
+			}
+		}
+		return out.String()
+	}
+	r := start(t)
+	r.press("a", "0")
+	sound := labels(r)
+	if !strings.Contains(sound, "1.0") {
+		t.Fatalf("the axis is not found: %q", sound)
+	}
+	unstable := func() {
+		r.press("right")
+		a := answer(r.last(), desk.Traced)
+		a.Design.Stable, a.Run.Diverged = false, true
+		for k := range a.Run.T {
+			a.Run.Estimate[0][k] = math.Exp(float64(k) / 12)
+		}
+		r.send(screen.AnswerMsg{Answer: a})
+		r.press("0")
+		if labels(r) == sound {
+			t.Fatal("the axis does not hold the unstable run")
+		}
+	}
+	unstable()
+	r.press("1")
+	if got := labels(r); got != sound {
+		t.Errorf("after a recall the axis is %q, expected %q", got, sound)
+	}
+	unstable()
+	r.press("left")
+	r.reply(desk.Judged)
+	r.reply(desk.Traced)
+	if got := labels(r); got != sound {
+		t.Errorf("after a stable design the axis is %q, expected %q", got, sound)
 	}
 }
 

@@ -77,11 +77,12 @@ const (
 	tradeoffView
 	sensorsView
 	stressView
+	replayView
 )
 
 // viewNames are the views' names in a session file.
 var viewNames = [...]string{none: "", helpView: "help", readingsView: "readings", compareView: "candidates",
-	tradeoffView: "trade-off", sensorsView: "sensors", stressView: "stress"}
+	tradeoffView: "trade-off", sensorsView: "sensors", stressView: "stress", replayView: "log"}
 
 // Model is the root model. Update works on its own copy and returns it; slices
 // and maps in it are replaced, not written to, except the axes and canvases,
@@ -134,23 +135,24 @@ type Model struct {
 	scroll, cursor int
 
 	// the picture
-	w, h    int
-	lay     layout
-	plane   targets.Plane
-	window  plane.Window
-	half    float64 // height above the axis that the user zoomed to; 0 fits
-	trace   int
-	mode    traces.Mode
-	axes    map[axisKey]traces.Axis
-	dirty   region
-	canvas  [4]canvas.Canvas
-	drawn   [4][]string
-	frame   string
-	slow    trickle
-	plot    mapping
-	clock   timeCursor
-	pointer pointer
-	band    bool // around the estimates
+	w, h     int
+	lay      layout
+	plane    targets.Plane
+	window   plane.Window
+	half     float64 // height above the axis that the user zoomed to; 0 fits
+	trace    int
+	mode     traces.Mode
+	axes     map[axisKey]traces.Axis
+	wildAxes bool // they may be those of an unstable design
+	dirty    region
+	canvas   [4]canvas.Canvas
+	drawn    [4][]string
+	frame    string
+	slow     trickle
+	plot     mapping
+	clock    timeCursor
+	pointer  pointer
+	band     bool // around the estimates
 }
 
 func (m *Model) period() float64 { return m.cfg.Work.Bench.Model.Period }
