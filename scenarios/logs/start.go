@@ -20,6 +20,12 @@ type Start struct {
 	FirstSample bool
 }
 
+// Check fails where the start does not fit the model.
+func (s Start) Check(m *estimator.Model) error {
+	_, err := s.vector(m)
+	return err
+}
+
 // vector checks a given start.
 func (s Start) vector(m *estimator.Model) ([]float64, error) {
 	n, _, _ := m.Dims()

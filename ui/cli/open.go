@@ -2,6 +2,7 @@ package cli
 
 import (
 	"fmt"
+	"math"
 	"os"
 	"strings"
 
@@ -13,6 +14,7 @@ import (
 	"polewright/ui/desk"
 	"polewright/ui/launch"
 	"polewright/ui/quiet"
+	"polewright/ui/replays"
 	"polewright/ui/session"
 	"polewright/ui/theme"
 )
@@ -22,11 +24,15 @@ type screenOptions struct {
 	scenario, form, background, colours string
 	period                              float64
 	ascii, calm, lines                  bool
+	real                                logOptions
+	from                                float64
 }
 
 func (o *screenOptions) register(cmd *cobra.Command) {
 	f := cmd.Flags()
 	f.StringVar(&o.scenario, "scenario", "", "scenario name (built-in plants) or file")
+	o.real.register(cmd)
+	f.Float64Var(&o.from, "from", math.Inf(-1), fmt.Sprintf("time in the log from which on it is held in memory, at most %d samples (default: its beginning)", replays.Most))
 	f.StringVar(&o.form, "form", "prediction", "prediction or current (discrete estimators)")
 	f.Float64Var(&o.period, "period", 0, "sample period in seconds in place of the plant file's; 0 drops it")
 	f.BoolVar(&o.ascii, "ascii", false, "draw with 7-bit characters only")
@@ -95,17 +101,37 @@ func openScreen(cmd *cobra.Command, o screenOptions, args []string) error {
 		return err
 	}
 	if o.lines || os.Getenv("TERM") == "dumb" {
+		if o.real.log != "" {
+			return usageError("log", "given for the dialogue in lines", "the screen, or the command replay")
+		}
 		return talk(cmd, w, known)
 	}
 	in, out, ok := launch.IsTerminal(cmd.InOrStdin(), cmd.OutOrStdout())
 	if !ok {
-		return &plants.Error{Where: "terminal", Wrong: "the screen needs a terminal that can move its cursor", Expected: "one; or --lines for a dialogue in lines"}
+		return &plants.Error{Where: "terminal", Wrong: "input and output are no terminal, which the screen needs", Expected: "expected a terminal, or --lines for a dialogue in plain lines"}
 	}
-	saved, err := launch.Run(cmd.Context(), launch.Options{Work: *w, Known: known, Any: len(args) == 0, Program: "polewright " + Version, Theme: look, Calm: o.calm, In: in, Out: out})
+	log, err := o.readLog(cmd, w.Bench, strings.Join(args, ""))
+	if err != nil {
+		return err
+	}
+	saved, err := launch.Run(cmd.Context(), launch.Options{Work: *w, Log: log, Known: known, Any: len(args) == 0, Program: "polewright " + Version, Theme: look, Calm: o.calm, In: in, Out: out})
 	if saved != "" {
 		fmt.Fprintln(cmd.OutOrStdout(), "saved in "+saved)
 	}
 	return err
+}
+
+// readLog reads the log of the real machine where one is named.
+func (o *screenOptions) readLog(cmd *cobra.Command, b *desk.Bench, arg string) (*replays.Log, error) {
+	if o.real.log != "" {
+		return o.real.window(cmd, b, arg, o.from)
+	}
+	for _, name := range []string{"map", "input-lag", "skip", "start", "resample", "from"} {
+		if cmd.Flags().Changed(name) {
+			return nil, usageError(name, "given without a log", "--log FILE.csv with it")
+		}
+	}
+	return nil, nil
 }
 
 // work is what the screen starts from, and what stands for the content of the

@@ -2,17 +2,11 @@ package cli
 
 import (
 	"context"
-	"errors"
-	"fmt"
 	"io"
-	"math"
 	"os"
-	"strconv"
-	"strings"
 
 	"github.com/spf13/cobra"
 
-	"polewright/plants"
 	"polewright/scenarios"
 	"polewright/scenarios/logs"
 	"polewright/ui/measures"
@@ -21,12 +15,9 @@ import (
 
 // replayOptions are those of replay alone.
 type replayOptions struct {
-	log, out, start string
-	maps            []string
-	inputLag        int
-	skip            float64
-	resample, force bool
-	sweep           bool
+	logOptions
+	out          string
+	sweep, force bool
 }
 
 func newReplay() *cobra.Command {
@@ -57,19 +48,17 @@ the speed of the poles that predicts it best.
 	}
 	o.register(cmd)
 	f := cmd.Flags()
-	f.StringVar(&r.log, "log", "", "CSV file to replay")
+	r.logOptions.register(cmd)
 	f.StringVar(&r.out, "out", "", "CSV file to write: time, estimates, innovations")
-	f.StringArrayVar(&r.maps, "map", nil, `rename a column: "u_cmd=cable force"; "note=" leaves one out, "*=" all that the plant does not know`)
-	f.IntVar(&r.inputLag, "input-lag", 0, "shift the inputs by so many rows: row k gets those of row k - N")
-	f.Float64Var(&r.skip, "skip", 0, "seconds at the start that stay out of the statistics (default: a tenth of the log)")
-	f.StringVar(&r.start, "start", "", `estimate before the first sample: deviations like "0.3,0", or first-sample to solve for the sensors (default zero deviation)`)
-	f.BoolVar(&r.resample, "resample", false, "hold the last row on the design's period where the log has another")
 	f.BoolVar(&r.sweep, "sweep", false, "find the best speed for this log: the least one-step-ahead error over speeds of the poles and the floor's family")
 	f.BoolVar(&r.force, "force", false, "overwrite an existing file")
 	return cmd
 }
 
 func (r *replayOptions) run(cmd *cobra.Command, o *designOptions, arg string) error {
+	if r.log == "" {
+		return usageError("log", "not given", "a CSV file")
+	}
 	q, names, err := r.read(cmd)
 	if err != nil {
 		return err
@@ -120,45 +109,6 @@ func (r *replayOptions) run(cmd *cobra.Command, o *designOptions, arg string) er
 	return r.report(cmd, t, log.Survey(), result, best)
 }
 
-// read turns the options into a request and names of columns.
-func (r *replayOptions) read(cmd *cobra.Command) (q logs.Request, names map[string]string, err error) {
-	if r.log == "" {
-		return q, nil, usageError("log", "not given", "a CSV file")
-	}
-	names = map[string]string{}
-	for _, m := range r.maps {
-		from, to, ok := strings.Cut(m, "=")
-		if !ok || from == "" {
-			return q, nil, usageError("map", strconv.Quote(m), `COLUMN=NAME, like "u_cmd=cable force"`)
-		}
-		if _, twice := names[from]; twice {
-			return q, nil, usageError("map", fmt.Sprintf("%q given twice", from), "once")
-		}
-		names[from] = to
-	}
-	if cmd.Flags().Changed("skip") {
-		if !(r.skip >= 0) || math.IsInf(r.skip, 0) {
-			return q, nil, usageError("skip", fmt.Sprintf("%g", r.skip), "seconds, 0 or more")
-		}
-		q.Skip = &r.skip
-	}
-	switch r.start {
-	case "":
-		return q, names, nil
-	case "first-sample":
-		q.Start.FirstSample = true
-		return q, names, nil
-	}
-	for _, field := range strings.Split(r.start, ",") {
-		v, err := strconv.ParseFloat(strings.TrimSpace(field), 64)
-		if err != nil {
-			return q, nil, usageError("start", strconv.Quote(r.start), `deviations like "0.3,0", one per state, or first-sample`)
-		}
-		q.Start.State = append(q.Start.State, v)
-	}
-	return q, names, nil
-}
-
 // outIsFree refuses an output that cannot be written before a long log is read.
 func (r *replayOptions) outIsFree() error {
 	if r.out == "" {
@@ -179,22 +129,6 @@ func (r *replayOptions) outIsFree() error {
 
 // newFile is what an output must be.
 const newFile = "a new file in an existing folder (--force overwrites)"
-
-func openLog(file string) (*os.File, int64, error) {
-	const what = "a CSV file"
-	info, err := os.Stat(file)
-	if err == nil && !info.Mode().IsRegular() {
-		err = errors.New("not a regular file")
-	}
-	if err != nil {
-		return nil, 0, fileError(file, what, err)
-	}
-	f, err := os.Open(file)
-	if err != nil {
-		return nil, 0, fileError(file, what, err)
-	}
-	return f, info.Size(), nil
-}
 
 // replay runs the estimator, and writes its rows where a file is wanted.
 func (r *replayOptions) replay(ctx context.Context, log *logs.Log, q logs.Request) (result *logs.Result, err error) {
@@ -223,21 +157,6 @@ func writeReplay(ctx context.Context, w io.Writer, log *logs.Log, q logs.Request
 		return nil, err
 	}
 	return result, rows.Flush()
-}
-
-// failed says in one line why a log could not be replayed.
-func (r *replayOptions) failed(err error) error {
-	var content *plants.Error
-	switch {
-	case errors.Is(err, context.Canceled):
-		return &plants.Error{File: r.log, Where: "replay", Wrong: "interrupted", Expected: "nothing was written"}
-	case errors.As(err, &content):
-		if content.File == "" && content.Where == "start" {
-			return usageError("start", content.Wrong, content.Expected)
-		}
-		return inFile(r.log, content)
-	}
-	return fileError(r.log, "a log that can be read to its end", err)
 }
 
 // replayed is what `replay --json` prints.

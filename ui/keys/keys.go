@@ -16,7 +16,7 @@ type Map struct {
 	NextState, PreviousState, Trace         key.Binding
 	Band, Clock, Mouse                      key.Binding
 	Keep, Recall, Compare, Readings         key.Binding
-	Tradeoff, Sensors, Stress               key.Binding
+	Tradeoff, Sensors, Stress, Log          key.Binding
 	Fastest, Quietest, OtherCurve           key.Binding
 	Save, Help, Leave, Quit, Suspend        key.Binding
 	ViewUp, ViewDown, ViewLeft, ViewRight   key.Binding
@@ -73,6 +73,7 @@ func Default() Map {
 		Tradeoff: bind("t", "trade-off: noise against settle time, with the curves to walk along", "t"),
 		Sensors:  bind("i", "instruments: what the sensors see, and what is lost without one", "i"),
 		Stress:   bind("w", "worst case within the tolerances of the plant", "w"),
+		Log:      bind("d", "data: the log of the real machine, and what it says of this design", "d"),
 		Fastest:  bind("F", "seek the fastest poles within the limits; Enter takes what is found, Esc stops", "F"),
 		Quietest: bind("Q", "seek the quietest poles that settle in a given time", "Q"),
 
@@ -106,7 +107,7 @@ func (m Map) Groups() []Group {
 	return []Group{
 		{"Hold and move", []key.Binding{m.Next, m.Previous, m.Left, m.Down, m.Up, m.Right, m.FarLeft, m.FarDown, m.FarUp, m.FarRight}},
 		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Fastest, m.Quietest, m.Undo, m.Redo, m.Better, m.Form, m.Method}},
-		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.Map, m.Mouse, m.NextState, m.PreviousState, m.Trace, m.Band, m.Clock, m.Readings, m.Tradeoff, m.Sensors, m.Stress}},
+		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.Map, m.Mouse, m.NextState, m.PreviousState, m.Trace, m.Band, m.Clock, m.Readings, m.Tradeoff, m.Sensors, m.Stress, m.Log}},
 		{"Candidates", []key.Binding{m.Keep, m.Recall, m.Compare}},
 		{"Session", []key.Binding{m.Save, m.Help, m.Leave, m.Quit, m.Suspend}},
 		{"In a view", []key.Binding{m.ViewUp, m.ViewDown, m.PageUp, m.PageDown, m.ViewLeft, m.ViewRight, m.OtherCurve, m.Choose, m.Delete, m.Close}},

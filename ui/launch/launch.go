@@ -14,6 +14,7 @@ import (
 	"polewright/ui/aim"
 	"polewright/ui/desk"
 	"polewright/ui/journal"
+	"polewright/ui/replays"
 	"polewright/ui/screen"
 	"polewright/ui/session"
 	"polewright/ui/solver"
@@ -31,7 +32,8 @@ type Options struct {
 	Program string      // name and version, for session files
 	Theme   theme.Options
 	Calm    bool
-	In, Out *os.File // the terminal
+	Log     *replays.Log // of the real machine, read for Work.Bench; nil without
+	In, Out *os.File     // the terminal
 }
 
 // Run shows the screen until the person quits and returns where the work was
@@ -48,6 +50,9 @@ func Run(ctx context.Context, o Options) (saved string, err error) {
 	if left != nil {
 		o.Work, o.Known, keeper.journal, keeper.recovered = *left.work, left.sum, left.journal, true
 		message = "recovered; not saved yet"
+		if o.Log != nil && !o.Log.Fits(o.Work.Bench.Plant, o.Work.Bench.Model) {
+			o.Log, message = nil, "recovered; not saved yet; the log was read for another plant and is left out"
+		}
 	} else if keeper.journal, err = journal.Open(folder, o.Program); err != nil {
 		message = "unsaved work cannot be kept against a crash: " + err.Error()
 	}
@@ -84,6 +89,7 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 		Ask:     work.Ask,
 		Map:     surveyor.Ask,
 		Study:   student.Ask,
+		Log:     o.Log,
 		Save:    store.save,
 		Resolve: aim.Resolver(o.Work.Bench.Model),
 		Theme:   o.Theme,

@@ -7,8 +7,10 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"reflect"
 
 	"polewright/estimator"
+	"polewright/plants"
 	"polewright/scenarios/logs"
 )
 
@@ -38,6 +40,12 @@ func Load(ctx context.Context, log *logs.Log, from float64, most int) (*Log, err
 		return nil, ErrEmpty
 	}
 	return &Log{File: log.Survey().File, Record: r, Whole: log.Survey().Samples}, nil
+}
+
+// Fits tells whether the log was read for this plant and model.
+func (g *Log) Fits(p *plants.Plant, m *estimator.Model) bool {
+	l, err := logs.NewLayout(p, m)
+	return err == nil && reflect.DeepEqual(l, g.Record.Layout())
 }
 
 // Outcome is what a replay of the design in hand comes to. It is immutable.

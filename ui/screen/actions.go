@@ -76,6 +76,7 @@ func (m *Model) bindings() map[string]action {
 	plain(k.Readings, func(m *Model) tea.Cmd { return m.openView(readingsView) })
 	plain(k.Tradeoff, func(m *Model) tea.Cmd { return m.openTradeoff() })
 	plain(k.Sensors, func(m *Model) tea.Cmd { return m.openSensors() })
+	plain(k.Log, func(m *Model) tea.Cmd { return m.openReplay() })
 	plain(k.Stress, func(m *Model) tea.Cmd { return m.openStress() })
 	plain(k.Fastest, func(m *Model) tea.Cmd { return m.seekFastest() })
 	plain(k.Quietest, func(m *Model) tea.Cmd { return m.seekQuietest() })

@@ -13,6 +13,7 @@ import (
 	"polewright/ui/desk"
 	"polewright/ui/keys"
 	"polewright/ui/plane/targets"
+	"polewright/ui/replays"
 	"polewright/ui/study"
 	"polewright/ui/survey"
 	"polewright/ui/theme"
@@ -32,6 +33,9 @@ type Config struct {
 	// one of kind None stops the work in progress. Answers come back as StudyMsg.
 	// Without it there are no curves, worst cases and searches.
 	Study func(study.Request)
+
+	// Log is a log of the real machine in memory; nil without.
+	Log *replays.Log
 
 	// Map takes a request for a map of the plane and returns at once; one without
 	// cells stops the work in progress. Answers come back as MapMsg. Without it
@@ -88,6 +92,7 @@ func New(cfg Config) Model {
 	}
 	m.plot.off = w.View.MapOff
 	m.actions = m.bindings()
+	m.keys.Log.SetEnabled(cfg.Log != nil)
 	if w.View.Plane == "z" && m.period() > 0 || w.View.Plane == "" && m.period() > 0 && !w.Bench.Plant.Continuous {
 		m.plane = targets.Z
 	}
@@ -100,7 +105,7 @@ func New(cfg Config) Model {
 		m.trace = 0
 	}
 	for v, name := range viewNames {
-		if name == w.View.Focus {
+		if name == w.View.Focus && (view(v) != replayView || cfg.Log != nil) {
 			m.open = view(v)
 		}
 	}

@@ -150,6 +150,11 @@ func (m *Model) press(name string, text rune) tea.Cmd {
 	if m.clock.on && m.cursorKey(name) {
 		return nil
 	}
+	return m.act(name)
+}
+
+// act does what a key does on the screen itself.
+func (m *Model) act(name string) tea.Cmd {
 	act, ok := m.actions[name]
 	if !ok {
 		return nil

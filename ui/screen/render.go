@@ -139,6 +139,8 @@ func (m *Model) viewBody(b *strings.Builder) {
 		lines = m.sensors().Lines(m.w, m.theme)
 	case stressView:
 		lines = m.stress().Lines(m.w, m.theme)
+	case replayView:
+		lines = m.replay().Lines(m.w, m.lay.body, m.theme)
 	}
 	m.scroll = max(min(m.scroll, len(lines)-m.lay.body), 0)
 	for y := range m.lay.body {
@@ -322,6 +324,8 @@ func (m *Model) hints(c *canvas.Canvas) {
 		list = []hint{{"h l", "choose"}, {"Enter", "unplug or plug in"}, {"j k", "scroll"}, {"Esc", "leave"}}
 	case m.open == stressView:
 		list = []hint{{"Enter", "run on the hardest case, or back"}, {"j k", "scroll"}, {"Esc", "leave"}}
+	case m.open == replayView:
+		list = []hint{{"< >", "speed"}, {"u", "undo"}, {"1 to 9", "recall"}, {"a", "keep"}, {"j k", "scroll"}, {"space b", "page"}, {"Esc", "leave"}}
 	case m.open != none:
 		list = []hint{{"j k", "scroll"}, {"space b", "page"}, {"Esc", "leave"}}
 	}

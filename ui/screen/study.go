@@ -24,6 +24,7 @@ type research struct {
 	tradeOf  *estimator.Design
 	stress   views.Stress
 	stressOf *estimator.Design
+	replay   replaying
 	hunt     *hunt
 	offer    *offer
 	sensing  sensing
@@ -36,6 +37,8 @@ func (m *Model) studied() study.Kind {
 		return study.Tradeoff
 	case stressView:
 		return study.Tolerances
+	case replayView:
+		return study.Replay
 	}
 	return study.None
 }
@@ -56,6 +59,9 @@ func (m *Model) studyDue() {
 	case kind == study.Tolerances && !same(m.research.stressOf, d):
 		m.research.stress.Older = m.research.stress.Envelope != nil
 		m.research.stress.Tried, m.research.stress.All, m.research.stress.Trouble = 0, 0, ""
+	case kind == study.Replay && m.replayDue(d):
+		m.askReplay(d)
+		return
 	default:
 		return
 	}
@@ -83,7 +89,8 @@ func (m *Model) askStudy(r study.Request) {
 
 // stopStudy stops what runs for a view that is left; a search goes on.
 func (m *Model) stopStudy() {
-	if m.research.kind == study.Tradeoff || m.research.kind == study.Tolerances {
+	switch m.research.kind {
+	case study.Tradeoff, study.Tolerances, study.Replay:
 		m.askStudy(study.Request{Kind: study.None})
 	}
 }
@@ -98,6 +105,8 @@ func (m *Model) studyAnswer(a *study.Answer) tea.Cmd {
 		m.curves(a)
 	case study.Tolerances:
 		m.envelope(a)
+	case study.Replay:
+		m.replayed(a)
 	case study.Fastest, study.Quietest:
 		m.hunted(a)
 	}

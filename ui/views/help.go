@@ -36,6 +36,9 @@ func Help(w int, k keys.Map, t *theme.Theme) []string {
 	for _, group := range k.Groups() {
 		p.title(group.Title)
 		for _, b := range group.Bindings {
+			if !b.Enabled() {
+				continue
+			}
 			h := b.Help()
 			for i, l := range canvas.Wrap(h.Desc, w-column-2) {
 				name := span{x: 2, text: h.Key}
@@ -56,6 +59,9 @@ func Help(w int, k keys.Map, t *theme.Theme) []string {
 			p.row(span{x: 2, text: string(plane.Glyph(m.Kind, &t.Glyphs)), ink: plane.Ink(m.Kind)}, span{x: 4, text: m.Short}, span{x: column + 2, text: l, ink: theme.Faint})
 		}
 	}
+	g := &t.Glyphs
+	p.row(span{x: 2, text: string([]rune{g.Left, ' ', g.Right, ' ', g.Up, ' ', g.Down})},
+		span{x: column + 2, text: canvas.Cut("at the edge: a wanted or fixed pole lies further out that way", w-column-2, g.Ellipsis), ink: theme.Faint})
 	p.shades(t, column)
 	p.title("Before it moves a machine")
 	p.prose(2, measures.Caution, theme.Text)
@@ -90,5 +96,5 @@ func (p *page) shades(t *theme.Theme, column int) {
 	hatch := strings.Repeat(" ", 3) + string(g.Hatch)
 	row(string(g.Hatch)+hatch, "a limit breaks there; the line under the traces names it for the cell of the held pole")
 	row(string(g.Target)+"2", "so many poles in one cell; Tab takes one after the other")
-	row(string(g.Up), "on the time axis: a fault, or a surprise that the estimator is not told of")
+	row(string(g.Event), "on the time axis: a fault, or a surprise that the estimator is not told of")
 }

@@ -49,7 +49,16 @@ func (f *Replay) Lines(w, h int, t *theme.Theme) []string {
 // heading says what log this is, which part of it, and how far the replay has come.
 func (f *Replay) heading(p *page, g *theme.Glyphs) {
 	v := f.Log.Record.Survey()
-	p.row(span{text: canvas.Cut("log "+f.File(), p.w, g.Ellipsis), ink: theme.Title})
+	state := ""
+	switch {
+	case f.Trouble != "":
+	case f.Outcome == nil || f.Older:
+		state = "computing"
+	case f.Running:
+		state = "computing candidates"
+	}
+	room := p.w - canvas.TextWidth(state) - 2
+	p.row(span{text: canvas.Cut("log "+f.Log.File, room, g.Ellipsis), ink: theme.Title}, span{x: p.w, text: state, ink: theme.Faint, right: true})
 	text := fmt.Sprintf("%d samples from %s to %s s", v.Samples, tick6(v.Start), tick6(v.End))
 	if f.Log.Whole > v.Samples {
 		text = fmt.Sprintf("a window: %d of %d samples, from %s to %s s; start with --from SECONDS for another", v.Samples, f.Log.Whole, tick6(v.Start), tick6(v.End))
@@ -65,18 +74,10 @@ func (f *Replay) heading(p *page, g *theme.Glyphs) {
 	if lost+v.Missing+v.Held > 0 {
 		p.prose(2, fmt.Sprintf("lost readings %d, missing rows %d, rows without an input %d: predicted through", lost, v.Missing, v.Held), theme.Faint)
 	}
-	switch {
-	case f.Trouble != "":
+	if f.Trouble != "" {
 		p.prose(2, f.Trouble, theme.Trouble)
-	case f.Outcome == nil:
-		p.row(span{x: 2, text: "the log is being replayed", ink: theme.Faint})
-	case f.Older:
-		p.row(span{x: 2, text: "of the design before; another replay is on its way", ink: theme.Faint})
 	}
 }
-
-// File is the log's name.
-func (f *Replay) File() string { return f.Log.File }
 
 // Columns of the figures below a plot.
 const (

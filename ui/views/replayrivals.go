@@ -62,9 +62,6 @@ func (p *page) rivals(f *Replay, g *theme.Glyphs) {
 	for _, r := range f.Rivals {
 		p.rival(r, columns[:fit], name, wide, g)
 	}
-	if f.Running {
-		p.row(span{x: 2, text: "others are on their way", ink: theme.Faint})
-	}
 	p.row(span{x: 2, text: canvas.Cut(string(g.Up)+" above, "+string(g.Down)+" below what 95 of 100 true logs give that gain", p.w-2, g.Ellipsis), ink: theme.Faint})
 	if more := len(columns) - fit; more > 0 {
 		p.row(span{x: 2, text: fmt.Sprintf("on a wider screen, more columns: %d", more), ink: theme.Faint})
