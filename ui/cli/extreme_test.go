@@ -132,6 +132,19 @@ func edges() []edge {
 	}
 }
 
+// text is the plant file of the case.
+func (c *edge) text(t *testing.T) string {
+	t.Helper()
+	text := spring
+	for i := 0; i < len(c.change); i += 2 {
+		if !strings.Contains(text, c.change[i]) {
+			t.Fatalf("no %q in the file", c.change[i])
+		}
+		text = strings.Replace(text, c.change[i], c.change[i+1], 1)
+	}
+	return text
+}
+
 // notNumbers are words that a number turns into where nobody looked.
 var notNumbers = regexp.MustCompile(`(?i)\b(nan|[-+]?inf(inity)?)\b`)
 
@@ -144,15 +157,8 @@ func TestDesignsAtTheEdge(t *testing.T) {
 	}
 	for _, c := range list {
 		t.Run(c.name, func(t *testing.T) {
-			text := spring
-			for i := 0; i < len(c.change); i += 2 {
-				if !strings.Contains(text, c.change[i]) {
-					t.Fatalf("no %q in the file", c.change[i])
-				}
-				text = strings.Replace(text, c.change[i], c.change[i+1], 1)
-			}
 			file := filepath.Join(t.TempDir(), "spring.toml")
-			if err := os.WriteFile(file, []byte(text), 0o600); err != nil {
+			if err := os.WriteFile(file, []byte(c.text(t)), 0o600); err != nil {
 				t.Fatal(err)
 			}
 			args := append([]string{"design", file}, strings.Fields(c.args)...)

@@ -280,7 +280,10 @@ func loop(f Facts, g *theme.Glyphs) Section {
 		s.Note = "unstable"
 	}
 	db := func(v float64) string {
-		if math.IsInf(v, 0) {
+		switch {
+		case math.IsNaN(v):
+			return g.Undefined
+		case math.IsInf(v, 0):
 			return "none"
 		}
 		return fmt.Sprintf("%+.1f", v)
