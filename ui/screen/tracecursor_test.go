@@ -25,7 +25,7 @@ func TestTimeCursor(t *testing.T) {
 	before := r.work().Poles
 	r.press("T", "b")
 	view := strip(r.m.View())
-	if !strings.Contains(view, "1.000 s") || !strings.Contains(view, "▴winch step") {
+	if !strings.Contains(view, "1.000 s") || !strings.Contains(view, "!winch step") {
 		t.Errorf("no time or no surprise:\n%s", view)
 	}
 	r.press("h", "left", "H", "k")

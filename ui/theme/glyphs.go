@@ -7,6 +7,7 @@ type Glyphs struct {
 
 	Rule, Vertical, Cross, Dot, Limit rune
 	Left, Right, Up, Down             rune // at the edge: further out that way
+	Event                             rune // on the time axis
 	Cursor                            rune
 	Ellipsis                          rune
 
@@ -31,7 +32,7 @@ type Line struct {
 var unicode = Glyphs{
 	Target: '○', Selected: '●', Fixed: '■', Plant: '×', Controller: '△', Floor: '◇',
 	Rule: '─', Vertical: '│', Cross: '┼', Dot: '·', Limit: '╌',
-	Left: '◂', Right: '▸', Up: '▴', Down: '▾', Cursor: '▏', Ellipsis: '…',
+	Left: '◂', Right: '▸', Up: '▴', Down: '▾', Event: '!', Cursor: '▏', Ellipsis: '…',
 	Grain: [Shades][2][4]rune{{{' ', ' ', ' ', ' '}, {' ', ' ', ' ', ' '}}, {{'░', ' ', ' ', ' '}, {' ', ' ', '░', ' '}}, {{'░', ' ', '░', ' '}, {' ', '░', ' ', '░'}}, {{'░', '░', '░', '░'}, {'░', '░', '░', '░'}}, {{'▒', '░', '▒', '░'}, {'░', '▒', '░', '▒'}}}, Hatch: '╱',
 	Truth:     Line{"─", "│", "╭", "╮", "╰", "╯", "╶", "╴", "───"},
 	Estimate:  Line{"•", "•", "•", "•", "•", "•", "•", "•", "•••"},
@@ -40,10 +41,10 @@ var unicode = Glyphs{
 }
 
 var ascii = Glyphs{
-	Target: 'o', Selected: '@', Fixed: '#', Plant: 'x', Controller: '^', Floor: 'v',
+	Target: 'o', Selected: '@', Fixed: '#', Plant: 'x', Controller: 'c', Floor: '*',
 	Rule: '-', Vertical: '|', Cross: '+', Dot: '.', Limit: '=',
-	Left: '<', Right: '>', Up: '^', Down: 'v', Cursor: '_', Ellipsis: '~',
-	Grain: [Shades][2][4]rune{{{' ', ' ', ' ', ' '}, {' ', ' ', ' ', ' '}}, {{',', ' ', ' ', ' '}, {' ', ' ', ',', ' '}}, {{',', ' ', ',', ' '}, {' ', ',', ' ', ','}}, {{':', ' ', ':', ' '}, {' ', ':', ' ', ':'}}, {{':', ':', ':', ':'}, {':', ':', ':', ':'}}}, Hatch: '/',
+	Left: '<', Right: '>', Up: '^', Down: 'v', Event: '!', Cursor: '_', Ellipsis: '~',
+	Grain: [Shades][2][4]rune{{{' ', ' ', ' ', ' '}, {' ', ' ', ' ', ' '}}, {{',', ' ', ' ', ' '}, {' ', ' ', ',', ' '}}, {{',', ' ', ',', ' '}, {' ', ',', ' ', ','}}, {{':', ' ', ':', ' '}, {' ', ':', ' ', ':'}}, {{':', ':', ':', ':'}, {':', ':', ':', ':'}}}, Hatch: '%',
 	Truth:     Line{"-", "|", ".", ".", "'", "'", "-", "-", "---"},
 	Estimate:  Line{"*", "*", "*", "*", "*", "*", "*", "*", "***"},
 	Band:      '~',

@@ -89,7 +89,7 @@ func TestMarksDifferInShape(t *testing.T) {
 	for _, ascii := range []bool{false, true} {
 		g := theme.New(theme.Options{ASCII: ascii}).Glyphs
 		seen := map[rune]bool{}
-		for _, r := range []rune{g.Target, g.Selected, g.Fixed, g.Plant, g.Controller, g.Floor} {
+		for _, r := range []rune{g.Target, g.Selected, g.Fixed, g.Plant, g.Controller, g.Floor, g.Up, g.Down, g.Left, g.Right, g.Event, g.Hatch, g.Dot} {
 			if seen[r] {
 				t.Errorf("ascii %v: %q stands for two marks", ascii, r)
 			}

@@ -47,7 +47,7 @@ func events(c *canvas.Canvas, x, y, width int, p Panel, g *theme.Glyphs) {
 				continue
 			}
 		}
-		c.Set(x+at, y, g.Up, theme.Text)
+		c.Set(x+at, y, g.Event, theme.Text)
 		if !math.IsInf(e.Until, 1) {
 			for k := at + 1; k <= to && c.At(x+k, y) == ' '; k++ {
 				c.Set(x+k, y, g.Band, theme.Grid)
