@@ -49,7 +49,7 @@ func (d *Designer) Complete(ctx context.Context, quick *Design) (_ *Design, err 
 	out.SensorSets = d.sensorSets(ls)
 	for _, s := range out.SensorSets {
 		if out.Stable && !s.Stable && len(s.Lost) == 1 && d.p > 1 {
-			out.Warnings = append(out.Warnings, fmt.Sprintf("with %s lost and its column of L set to zero the estimator is unstable",
+			out.Warnings = append(out.Warnings, fmt.Sprintf("with %s lost and its column of L set to zero the estimator is unstable, or its error stays for good",
 				name(d.model.SensorNames, "y", s.Lost[0])))
 		}
 	}
@@ -160,6 +160,17 @@ func (d *Designer) float32Shift(out *Design) float64 {
 	return worst
 }
 
+// settles asks every eigenvalue to be strictly stable: what stands on the limit but for
+// rounding never forgets its error.
+func settles(list []complex128, discrete bool) bool {
+	for _, v := range list {
+		if !strictlyStable(v, discrete) {
+			return false
+		}
+	}
+	return true
+}
+
 // sensorSets judges F with the columns of lost sensors set to zero: every
 // subset for up to six sensors, else each sensor alone.
 func (d *Designer) sensorSets(ls *mat.Dense) []SensorSet {
@@ -173,7 +184,7 @@ func (d *Designer) sensorSets(ls *mat.Dense) []SensorSet {
 			}
 		}
 		if form.Factor(raw(d.errorMatrix(l))) == nil {
-			sets = append(sets, SensorSet{Lost: lost, Stable: stable(form.Eigenvalues(), d.model.Discrete())})
+			sets = append(sets, SensorSet{Lost: lost, Stable: settles(form.Eigenvalues(), d.model.Discrete())})
 		}
 	}
 	if d.p > 6 {

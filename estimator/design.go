@@ -158,7 +158,8 @@ type Loop struct {
 }
 
 // SensorSet is what is left when the sensors in Lost fail and their columns of
-// L are set to zero.
+// L are set to zero: Stable where the error still dies out, by a relative margin of
+// 1e-9.
 type SensorSet struct {
 	Lost   []int
 	Stable bool

@@ -74,6 +74,9 @@ func (s Study) Run(ctx context.Context, progress func(done, total int)) (*Envelo
 	if err := results[0].err; err != nil {
 		return nil, fmt.Errorf("the nominal plant: %w", err)
 	}
+	if len(s.Plant.Unknowns) > 0 {
+		notes = append(notes, "the unknowns' own drift is left out, since off the model its effect can grow without end: noise can be below that of the design itself")
+	}
 	e := &Envelope{Parameters: list, Cases: len(all), Exhaustive: exhaustive, Notes: notes, Discrete: model.Discrete()}
 	e.note(list, samples)
 	e.collect(all, results, s.measures(model))

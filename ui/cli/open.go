@@ -21,11 +21,11 @@ import (
 
 // screenOptions are those of polewright without a command.
 type screenOptions struct {
-	scenario, form, background, colours string
-	period                              float64
-	ascii, calm, lines                  bool
-	real                                logOptions
-	from                                float64
+	scenario, form, gain, background, colours string
+	period                                    float64
+	ascii, calm, lines                        bool
+	real                                      logOptions
+	from                                      float64
 }
 
 func (o *screenOptions) register(cmd *cobra.Command) {
@@ -34,6 +34,7 @@ func (o *screenOptions) register(cmd *cobra.Command) {
 	o.real.register(cmd)
 	f.Float64Var(&o.from, "from", math.Inf(-1), fmt.Sprintf("time in the log from which on it is held in memory, at most %d samples (default: its beginning)", replays.Most))
 	f.StringVar(&o.form, "form", "prediction", "prediction or current (discrete estimators)")
+	f.StringVar(&o.gain, "gain", "least-noise", "least-noise (at the floor poles it is the floor) or robust (best-conditioned eigenvectors); m changes it")
 	f.Float64Var(&o.period, "period", 0, "sample period in seconds in place of the plant file's; 0 drops it")
 	f.BoolVar(&o.ascii, "ascii", false, "draw with 7-bit characters only")
 	f.BoolVar(&o.calm, "calm", false, "send little over a slow link: traces follow when the hands rest")
@@ -41,7 +42,7 @@ func (o *screenOptions) register(cmd *cobra.Command) {
 	f.StringVar(&o.background, "background", "auto", "dark, light or auto (from COLORFGBG, else dark)")
 	f.StringVar(&o.colours, "colours", "auto", "none, 16, 256, all or auto (from TERM, COLORTERM and NO_COLOR)")
 	for name, words := range map[string][]string{
-		"form": {"prediction", "current"}, "background": {"auto", "dark", "light"}, "colours": {"auto", "none", "16", "256", "all"},
+		"form": {"prediction", "current"}, "gain": {"least-noise", "robust"}, "background": {"auto", "dark", "light"}, "colours": {"auto", "none", "16", "256", "all"},
 	} {
 		cobra.CheckErr(cmd.RegisterFlagCompletionFunc(name, cobra.FixedCompletions(words, cobra.ShellCompDirectiveNoFileComp)))
 	}
@@ -141,8 +142,12 @@ func (o *screenOptions) work(cmd *cobra.Command, args []string) (w *desk.Work, k
 	if err != nil {
 		return nil, known, err
 	}
+	method, err := word("gain", o.gain, methods)
+	if err != nil {
+		return nil, known, err
+	}
 	if len(args) == 1 && session.Is(args[0]) {
-		for _, name := range []string{"period", "scenario", "form"} {
+		for _, name := range []string{"period", "scenario", "form", "gain"} {
 			if cmd.Flags().Changed(name) {
 				return nil, known, usageError(name, "given with a session", "the session's own")
 			}
@@ -175,5 +180,8 @@ func (o *screenOptions) work(cmd *cobra.Command, args []string) (w *desk.Work, k
 	if form == estimator.Current && !b.Model.Discrete() {
 		return nil, known, usageError("form", "current for an estimator in continuous time", "prediction, or a sample period")
 	}
-	return &desk.Work{Bench: b, Form: form}, known, nil
+	if len(b.Model.SensorNames) == 1 && !cmd.Flags().Changed("gain") {
+		method = estimator.Robust // the gain is unique
+	}
+	return &desk.Work{Bench: b, Form: form, Method: method}, known, nil
 }

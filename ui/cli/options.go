@@ -43,7 +43,15 @@ func (o *designOptions) register(cmd *cobra.Command) {
 
 // usageError is a wrong option.
 func usageError(option, wrong, expected string) error {
-	return &plants.Error{Where: "--" + option, Wrong: wrong, Expected: expected}
+	return &plants.Error{Where: "--" + option, Wrong: wrong, Expected: expecting(expected)}
+}
+
+// expecting begins what is expected with that word where it does not yet.
+func expecting(text string) string {
+	if strings.Contains(text, "expected") {
+		return text
+	}
+	return "expected " + text
 }
 
 // word looks up the word given for an option.
@@ -55,13 +63,16 @@ func word[T any](option, have string, list map[string]T) (T, error) {
 	return v, nil
 }
 
+// methods are the words of --gain.
+var methods = map[string]estimator.Method{"robust": estimator.Robust, "least-noise": estimator.LeastNoise}
+
 // designer reads the options that say what kind of estimator is wanted.
 func (o *designOptions) designer() (estimator.Options, error) {
 	form, err := word("form", o.form, map[string]estimator.Form{"prediction": estimator.Prediction, "current": estimator.Current})
 	if err != nil {
 		return estimator.Options{}, err
 	}
-	method, err := word("gain", o.gain, map[string]estimator.Method{"robust": estimator.Robust, "least-noise": estimator.LeastNoise})
+	method, err := word("gain", o.gain, methods)
 	return estimator.Options{Form: form, Method: method}, err
 }
 

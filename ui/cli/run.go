@@ -88,7 +88,7 @@ the others. With a session file it goes on where you left off.
 
 ` + measures.Caution,
 		Version:       Version,
-		Args:          cobra.MaximumNArgs(1),
+		Args:          oneFile,
 		SilenceErrors: true,
 		SilenceUsage:  true,
 		RunE: func(cmd *cobra.Command, args []string) error {
@@ -99,6 +99,20 @@ the others. With a session file it goes on where you left off.
 	root.SetVersionTemplate("polewright {{.Version}}\n")
 	root.AddCommand(newDesign(), newModes(), newSimulate(), newStress(), newVerify(), newReplay(), newEmit(), newReport(), newLibrary())
 	return root
+}
+
+// oneFile takes a plant or a session, or nothing; a word before it was meant for a
+// command.
+func oneFile(cmd *cobra.Command, args []string) error {
+	if len(args) < 2 {
+		return nil
+	}
+	text := "one plant or session, or a command that 'polewright --help' lists"
+	cmd.SuggestionsMinimumDistance = 2
+	if near := cmd.SuggestionsFor(args[0]); len(near) > 0 {
+		text = strings.Join(near, " or ")
+	}
+	return &plants.Error{Where: "command", Wrong: fmt.Sprintf("no command %q", args[0]), Expected: expecting(text)}
 }
 
 // fileError turns what reading a file gives into the one-line form.
@@ -115,5 +129,5 @@ func fileError(file, what string, err error) error {
 	if errors.As(err, &content) {
 		return content
 	}
-	return &plants.Error{File: file, Where: "file", Wrong: wrong, Expected: what}
+	return &plants.Error{File: file, Where: "file", Wrong: wrong, Expected: expecting(what)}
 }

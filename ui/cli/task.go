@@ -97,7 +97,7 @@ func (t *task) fromSession(cmd *cobra.Command, kind *estimator.Options) error {
 
 func candidateNames(w *desk.Work) string {
 	if len(w.Candidates) == 0 {
-		return "--poles: this session keeps no candidate"
+		return "--poles, since this session keeps no candidate"
 	}
 	var names []string
 	for _, c := range w.Candidates {

@@ -43,7 +43,7 @@ func offer(ctx context.Context, o *Options, folder string, now time.Time) (*left
 			f.Drop()
 			continue
 		}
-		answer, err := ask(ctx, o.In, o.Out, "unsaved work on "+title(f)+" was found: r recover, d drop, k keep for later (then Enter): ")
+		answer, err := ask(ctx, o.In, o.Out, "unsaved work on "+title(f)+" was found.\nr recover, d drop, k keep for later (then Enter): ")
 		if err != nil {
 			return nil, err
 		}
