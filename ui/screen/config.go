@@ -90,7 +90,8 @@ func New(cfg Config) Model {
 	if cfg.Unsaved {
 		m.revision++
 	}
-	m.plot.off = w.View.MapOff
+	m.plot.unasked = cfg.Theme.ASCII && !w.View.MapOff // its marks bury the rest there
+	m.plot.off = w.View.MapOff || m.plot.unasked
 	m.actions = m.bindings()
 	m.keys.Log.SetEnabled(cfg.Log != nil)
 	if w.View.Plane == "z" && m.period() > 0 || w.View.Plane == "" && m.period() > 0 && !w.Bench.Plant.Continuous {
@@ -135,7 +136,7 @@ func (m Model) Work() desk.Work {
 	}
 	w.Candidates = append([]desk.Candidate(nil), m.candidates...)
 	w.Current = m.current
-	w.View = desk.View{Plane: string(byte(m.plane)), Zoom: m.half, Selected: m.now.held, Trace: m.trace, Focus: viewNames[m.open], MapOff: m.plot.off}
+	w.View = desk.View{Plane: string(byte(m.plane)), Zoom: m.half, Selected: m.now.held, Trace: m.trace, Focus: viewNames[m.open], MapOff: m.plot.off && !m.plot.unasked}
 	return w
 }
 

@@ -43,6 +43,7 @@ func (a *ground) same(b *ground) bool {
 // mapping is the map of the plane and its making.
 type mapping struct {
 	off     bool
+	unasked bool // off for the look of the screen: a session does not keep that
 	gen     uint64
 	ground  ground            // of the newest request
 	cells   []complex128      // of the newest request, own plane
@@ -207,7 +208,7 @@ func (m *Model) mapAnswer(a *survey.Answer) {
 
 // toggleMap shows or hides the map.
 func (m *Model) toggleMap() tea.Cmd {
-	m.plot.off = !m.plot.off
+	m.plot.off, m.plot.unasked = !m.plot.off, false
 	m.plot.shown, m.plot.tones = nil, nil
 	text := "the plane is shaded by the noise over the floor that the held pole would give there"
 	if m.plot.off {

@@ -70,11 +70,14 @@ func chart(q survey.Request, done bool) screen.MapMsg {
 
 func TestMapFrames(t *testing.T) {
 	for _, size := range []struct{ w, h int }{{80, 24}, {120, 36}, {200, 50}} {
-		for name, opt := range map[string]option{"plain": plain, "colour": colour, "ascii": seven} {
-			name := fmt.Sprintf("%dx%d-map-%s", size.w, size.h, name)
+		for look, opt := range map[string]option{"plain": plain, "colour": colour, "ascii": seven} {
+			name := fmt.Sprintf("%dx%d-map-%s", size.w, size.h, look)
 			t.Run(name, func(t *testing.T) {
 				r := startMapped(t, opt)
 				r.send(tea.WindowSizeMsg{Width: size.w, Height: size.h})
+				if look == "ascii" {
+					r.press("M") // off at first
+				}
 				r.send(chart(r.due(), true))
 				r.press("right", "right") // the map stays while its own pole moves
 				r.reply(desk.Traced)
@@ -194,6 +197,23 @@ func TestMapCanBeSwitchedOff(t *testing.T) {
 	off := startMapped(t, func(c *screen.Config) { c.Work.View.MapOff = true })
 	if q := off.due(); len(q.Cells) != 0 {
 		t.Error("a session with the map off asks for one")
+	}
+}
+
+// In 7 bits the marks of a map bury the plane: it waits to be asked for, which
+// says nothing about the next terminal.
+func TestMapWaitsInSevenBits(t *testing.T) {
+	r := startMapped(t, seven)
+	if q := r.due(); len(q.Cells) != 0 || r.work().View.MapOff {
+		t.Error("a map was asked for, or the session keeps that there is none")
+	}
+	r.press("M")
+	if q := r.due(); len(q.Cells) == 0 {
+		t.Error("no map after M")
+	}
+	r.press("M")
+	if !r.work().View.MapOff {
+		t.Error("a session does not remember that it was switched off")
 	}
 }
 
