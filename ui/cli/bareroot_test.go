@@ -53,8 +53,9 @@ func TestRunsOnABareRoot(t *testing.T) {
 		{"simulate lift --poles floor", "t,"},
 	} {
 		out, err := inside(root, strings.Fields(c.args)...).CombinedOutput()
-		if errors.Is(err, syscall.EPERM) {
-			t.Skipf("no chroot for this user: %v", err)
+		var refused *os.PathError
+		if errors.As(err, &refused) && !errors.Is(err, os.ErrNotExist) { // a library that is missing does not exist
+			t.Skipf("no root folder of its own for this user: %v", err)
 		}
 		if err != nil || !strings.Contains(string(out), c.says) {
 			t.Errorf("%s: %v\n%.400s", c.args, err, out)
