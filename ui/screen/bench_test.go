@@ -152,7 +152,7 @@ func (r *rig) hold(k string, n int) {
 func keyMsg(k string) tea.KeyMsg {
 	named := map[string]tea.KeyType{"tab": tea.KeyTab, "shift+tab": tea.KeyShiftTab, "left": tea.KeyLeft, "right": tea.KeyRight,
 		"up": tea.KeyUp, "down": tea.KeyDown, "shift+left": tea.KeyShiftLeft, "enter": tea.KeyEnter, "esc": tea.KeyEsc,
-		"backspace": tea.KeyBackspace, "ctrl+r": tea.KeyCtrlR, "ctrl+s": tea.KeyCtrlS, "ctrl+c": tea.KeyCtrlC, "ctrl+z": tea.KeyCtrlZ}
+		"backspace": tea.KeyBackspace, "home": tea.KeyHome, "ctrl+r": tea.KeyCtrlR, "ctrl+s": tea.KeyCtrlS, "ctrl+c": tea.KeyCtrlC, "ctrl+z": tea.KeyCtrlZ}
 	if t, ok := named[k]; ok {
 		return tea.KeyMsg{Type: t}
 	}

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
+	"maps"
 	"math"
 	"math/cmplx"
 	"slices"
@@ -341,6 +342,40 @@ func TestSaveAndQuit(t *testing.T) {
 	r.run()
 	if !r.quit {
 		t.Error("all is saved: quit must not ask")
+	}
+}
+
+// What a prompt suggests gives way to typing, and is there to be edited.
+func TestTypingReplacesWhatAPromptSuggests(t *testing.T) {
+	for _, c := range []struct {
+		keys []string
+		file string
+	}{
+		{[]string{"a", "b"}, "ab.session.json"},
+		{[]string{"left", "right", "b", "backspace"}, "Test hoist.session.json"},
+		{[]string{"home", "a"}, "aTest hoist.session.json"},
+		{[]string{"backspace", "n"}, "Test hoist.session.json"},
+	} {
+		r := start(t)
+		r.press("left")
+		r.reply(desk.Judged)
+		r.press("s")
+		r.press(c.keys...)
+		r.press("enter")
+		r.run()
+		if _, ok := r.saved[c.file]; !ok {
+			t.Errorf("%v: saved %v, expected %s", c.keys, slices.Collect(maps.Keys(r.saved)), c.file)
+		}
+	}
+	r := start(t)
+	r.press("left")
+	r.reply(desk.Judged)
+	r.press("s")
+	r.send(tea.KeyMsg{Type: tea.KeyRunes, Runes: []rune("pasted"), Paste: true})
+	r.press("enter")
+	r.run()
+	if _, ok := r.saved["pasted.session.json"]; !ok {
+		t.Errorf("a paste: saved %v", slices.Collect(maps.Keys(r.saved)))
 	}
 }
 

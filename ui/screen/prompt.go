@@ -15,19 +15,26 @@ type prompt struct {
 	label  string
 	text   []rune
 	cursor int
+	// offered says that the text was suggested and not touched: typing replaces it,
+	// any key that edits takes it on.
+	offered bool
 	// done takes what was typed; an error keeps the prompt open and is shown.
 	done func(m *Model, text string) (tea.Cmd, error)
 }
 
 const longestInput = 2000
 
-// insert puts text at the cursor, without control characters.
+// insert puts text at the cursor, without control characters, or in place of what
+// was suggested.
 func (p *prompt) insert(s string) {
 	var add []rune
 	for _, r := range s {
 		if unicode.IsPrint(r) && canvas.Width(r) > 0 {
 			add = append(add, r)
 		}
+	}
+	if p.offered && len(add) > 0 {
+		p.text, p.cursor, p.offered = nil, 0, false
 	}
 	if len(p.text)+len(add) > longestInput {
 		return
@@ -68,6 +75,7 @@ func (p *prompt) edit(name string) bool {
 	default:
 		return false
 	}
+	p.offered = false
 	return true
 }
 
@@ -88,7 +96,7 @@ func (p *prompt) shown(w int) (label, text string, cursor int) {
 }
 
 func (m *Model) openPrompt(label, text string, done func(m *Model, text string) (tea.Cmd, error)) tea.Cmd {
-	m.prompt = &prompt{label: label, text: []rune(text), cursor: len([]rune(text)), done: done}
+	m.prompt = &prompt{label: label, text: []rune(text), cursor: len([]rune(text)), offered: text != "", done: done}
 	m.dirty |= statusRegion
 	return nil
 }

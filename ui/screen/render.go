@@ -291,7 +291,11 @@ func (m *Model) status() string {
 func (m *Model) drawPrompt(c *canvas.Canvas) {
 	label, text, cursor := m.prompt.shown(m.w)
 	x := c.Text(0, 0, label, theme.Title)
-	c.Text(x, 0, text, theme.Text)
+	ink := theme.Text
+	if m.prompt.offered {
+		ink = theme.Faint
+	}
+	c.Text(x, 0, text, ink)
 	if r := c.At(cursor, 0); r == ' ' {
 		c.Set(cursor, 0, m.theme.Glyphs.Cursor, theme.Hold)
 	} else {

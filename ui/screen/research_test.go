@@ -209,7 +209,11 @@ func TestSearchForTheQuietestAsksHowFast(t *testing.T) {
 	r, s := studied(t, scenarios.Limits{Settle: number(0.35)})
 	r.press("Q")
 	r.wantShown("settle within, s: ")
-	r.press("x", "enter")
+	r.press("0", ".", "5", "enter") // typed in place of what is suggested
+	if q := s.last(); q.Kind != study.Quietest || q.SettleMax != 0.5 {
+		t.Errorf("asked for %+v", q)
+	}
+	r.press("Q", "right", "x", "enter")
 	r.wantShown("a settle time in seconds")
 	r.press("backspace", "enter")
 	if q := s.last(); q.Kind != study.Quietest || q.SettleMax != 0.35 {
