@@ -107,13 +107,13 @@ func openScreen(cmd *cobra.Command, o screenOptions, args []string) error {
 		}
 		return talk(cmd, w, known)
 	}
-	in, out, ok := launch.IsTerminal(cmd.InOrStdin(), cmd.OutOrStdout())
-	if !ok {
-		return &plants.Error{Where: "terminal", Wrong: "input and output are no terminal, which the screen needs", Expected: "expected a terminal, or --lines for a dialogue in plain lines"}
-	}
 	log, err := o.readLog(cmd, w.Bench, strings.Join(args, ""))
 	if err != nil {
 		return err
+	}
+	in, out, ok := launch.IsTerminal(cmd.InOrStdin(), cmd.OutOrStdout())
+	if !ok {
+		return &plants.Error{Where: "terminal", Wrong: "input and output are no terminal, which the screen needs", Expected: "expected a terminal, or --lines for a dialogue in plain lines"}
 	}
 	saved, err := launch.Run(cmd.Context(), launch.Options{Work: *w, Log: log, Known: known, Any: len(args) == 0, Program: "polewright " + Version, Theme: look, Calm: o.calm, In: in, Out: out})
 	if saved != "" {

@@ -106,7 +106,7 @@ func (p *page) sensor(f *Replay, i, rows int, t *theme.Theme) {
 	}
 	if i < len(o.Result.Whiteness) {
 		w := &o.Result.Whiteness[i]
-		p.row(span{x: 2, text: "white at floor", ink: theme.Faint}, span{x: logFigure, text: "p " + tick(float64(w.P)), right: true},
+		p.row(span{x: 2, text: "white at floor", ink: theme.Faint}, span{x: logFigure, text: chance(float64(w.P), g), right: true},
 			span{x: logExpected, text: "effect " + readings.Figure(float64(w.EffectSize), 1, g), right: true},
 			span{x: logBand, text: canvas.Cut(measures.WhiteWords(w), p.w-logBand, g.Ellipsis), ink: theme.Faint})
 	}
@@ -193,6 +193,17 @@ func (p *page) noiseFigures(o *replays.Outcome, g *theme.Glyphs) {
 		p.prose(2, words, theme.Text)
 	}
 	p.prose(2, "Taking them over is your choice: nothing was changed.", theme.Faint)
+}
+
+// chance prints how often a true model gives more.
+func chance(p float64, g *theme.Glyphs) string {
+	switch {
+	case math.IsNaN(p):
+		return "p " + g.Undefined
+	case p < 1e-4:
+		return "p < 0.0001"
+	}
+	return fmt.Sprintf("p %.4f", p)
 }
 
 func withUnit(name, unit string) string {

@@ -118,16 +118,21 @@ func (l *logPlot) key(x int, g *theme.Glyphs) {
 	}
 }
 
-// lagAxis holds what is measured and expected, and zero, within -1 to 1.
+// lagAxis holds what is measured and expected, zero in its middle. Its few steps
+// keep it still while poles move.
 func lagAxis(v *logs.Innovation) traces.Axis {
-	low, high := -0.1, 0.1
+	size := 0.0
 	for _, list := range [][]logs.Number{v.Autocorrelation, v.AutocorrelationExpected, v.AutocorrelationLow, v.AutocorrelationHigh} {
 		for _, x := range list {
 			if f := float64(x); !math.IsNaN(f) {
-				low, high = math.Min(low, f), math.Max(high, f)
+				size = math.Max(size, math.Abs(f))
 			}
 		}
 	}
-	a := traces.Axes([][]float64{{low, high}})
-	return traces.Axis{Low: math.Max(a.Low, -1), High: math.Min(a.High, 1)}
+	for _, step := range []float64{0.1, 0.25, 0.5} {
+		if size <= step {
+			return traces.Axis{Low: -step, High: step}
+		}
+	}
+	return traces.Axis{Low: -1, High: 1}
 }
