@@ -284,13 +284,17 @@ func loop(f Facts, g *theme.Glyphs) Section {
 		case math.IsNaN(v):
 			return g.Undefined
 		case math.IsInf(v, 0):
-			return "none"
+			return fmt.Sprintf("%+.0f", v)[:1] + g.Infinite
 		}
 		return fmt.Sprintf("%+.1f", v)
 	}
+	gain := db(l.GainMarginBelow) + " " + db(l.GainMarginAbove)
+	if strings.Contains(gain, g.Infinite) { // shorter
+		gain = db(l.GainMarginBelow) + " to " + db(l.GainMarginAbove)
+	}
 	s.Rows = []Row{
 		{Label: "phase", Value: Fixed(l.PhaseMargin, 1, g), Unit: "deg"},
-		{Label: "gain", Value: db(l.GainMarginBelow) + " " + db(l.GainMarginAbove), Unit: "dB"},
+		{Label: "gain", Value: gain, Unit: "dB"},
 		{Label: "delay", Value: Fixed(l.DelayMargin*1000, 2, g), Unit: "ms"},
 		{Label: "sensitivity", Value: Fixed(l.SensitivityPeak, 2, g), Unit: "peak"},
 	}

@@ -20,7 +20,7 @@ type Glyphs struct {
 	Estimate Line
 	Band     rune
 
-	PlusMinus, AtMost, AtLeast, Undefined, Middle, Sigma, Arrows string
+	PlusMinus, AtMost, AtLeast, Undefined, Infinite, Middle, Sigma, Arrows string
 }
 
 // Line is what a trace is drawn with.
@@ -37,7 +37,7 @@ var unicode = Glyphs{
 	Truth:     Line{"─", "│", "╭", "╮", "╰", "╯", "╶", "╴", "───"},
 	Estimate:  Line{"•", "•", "•", "•", "•", "•", "•", "•", "•••"},
 	Band:      '┄',
-	PlusMinus: "±", AtMost: "≤", AtLeast: "≥", Undefined: "–", Middle: " · ", Sigma: "σ", Arrows: "←↓↑→",
+	PlusMinus: "±", AtMost: "≤", AtLeast: "≥", Undefined: "–", Infinite: "∞", Middle: " · ", Sigma: "σ", Arrows: "←↓↑→",
 }
 
 var ascii = Glyphs{
@@ -48,5 +48,5 @@ var ascii = Glyphs{
 	Truth:     Line{"-", "|", ".", ".", "'", "'", "-", "-", "---"},
 	Estimate:  Line{"*", "*", "*", "*", "*", "*", "*", "*", "***"},
 	Band:      '~',
-	PlusMinus: "+-", AtMost: "<=", AtLeast: ">=", Undefined: "-", Middle: ", ", Sigma: "sigma", Arrows: "hjkl",
+	PlusMinus: "+-", AtMost: "<=", AtLeast: ">=", Undefined: "-", Infinite: "inf", Middle: ", ", Sigma: "sigma", Arrows: "hjkl",
 }
