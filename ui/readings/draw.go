@@ -56,7 +56,7 @@ func more(c *canvas.Canvas, right, y int, f Facts, hidden, unseenLimits bool) {
 	}
 	switch n := len(f.Design.Warnings); {
 	case unseenLimits && broken > 0:
-		c.Right(right, y, fmt.Sprintf("%d of %d limits broken, r", broken, len(f.Limits)), theme.Trouble)
+		c.Right(right, y, fmt.Sprintf("r shows %d of %d limits broken", broken, len(f.Limits)), theme.Trouble)
 	case n > 0:
 		c.Right(right, y, fmt.Sprintf("%d warning%s, r shows all", n, plural(n)), theme.Trouble)
 	case hidden:
@@ -108,7 +108,11 @@ func drawRow(c *canvas.Canvas, x, y, w int, r Row, ink theme.Ink, late bool, g *
 	if r.Value == "" {
 		labelEnd = unitEnd
 	}
-	c.Text(x, y, canvas.Cut(r.Label, labelEnd, g.Ellipsis), label)
+	text := r.Label
+	if r.Short != "" && canvas.TextWidth(text) > labelEnd {
+		text = r.Short
+	}
+	c.Text(x, y, canvas.Cut(text, labelEnd, g.Ellipsis), label)
 	c.Right(x+valueEnd, y, r.Value, ink)
 	if canvas.TextWidth(r.Unit) <= unitEnd-valueEnd-1 {
 		c.Text(x+valueEnd+1, y, r.Unit, theme.Faint)

@@ -48,6 +48,7 @@ type Facts struct {
 // Row is one figure.
 type Row struct {
 	Label, Value, Unit, Tail string
+	Short                    string    // in place of a label that does not fit
 	Ink                      theme.Ink // of the tail
 }
 
@@ -108,9 +109,9 @@ func held(f Facts, g *theme.Glyphs) Section {
 	s.Rows = append(s.Rows, Row{Label: string(byte(f.Plane)), Value: place, Unit: unit})
 	s.Rows = append(s.Rows, Row{Label: "frequency", Value: Figure(d.Frequency, ref, g), Unit: "rad/s"},
 		Row{Label: "damping", Value: Fixed(d.Damping, 3, g)})
-	tau := Row{Label: "time constant", Value: Figure(d.TimeConstant, 1/slow/3, g), Unit: "s"}
+	tau := Row{Label: "time constant", Short: "decays in", Value: Figure(d.TimeConstant, 1/slow/3, g), Unit: "s"}
 	if d.TimeConstant < 0 {
-		tau.Label, tau.Value = "grows in", Figure(-d.TimeConstant, 1/slow/3, g)
+		tau.Label, tau.Short, tau.Value = "grows in", "", Figure(-d.TimeConstant, 1/slow/3, g)
 	}
 	s.Rows = append(s.Rows, tau)
 	if period > 0 {

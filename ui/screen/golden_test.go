@@ -36,6 +36,8 @@ func TestFrames(t *testing.T) {
 		{"120x36", 120, 36, plain, []string{"left", "up", "a"}},
 		{"200x50", 200, 50, plain, []string{"tab", "shift+left", "e"}},
 		{"60x18", 60, 18, plain, nil},
+		{"60x18-broken", 60, 18, plain, []string{"<", "<", "<", "<", "<"}},
+		{"60x18-readings", 60, 18, plain, []string{"r", " "}},
 		{"80x24-colour", 80, 24, colour, []string{"left"}},
 		{"80x24-ascii", 80, 24, seven, []string{"left"}},
 		{"80x24-z", 80, 24, plain, []string{"z"}},

@@ -32,7 +32,7 @@ func Readings(w int, f readings.Facts, t *theme.Theme) []string {
 		for _, r := range s.Rows {
 			p.row(span{x: 2, text: canvas.Cut(r.Label, name-3, g.Ellipsis), ink: theme.Faint},
 				span{x: name + 14, text: r.Value, right: true}, span{x: name + 15, text: r.Unit, ink: theme.Faint},
-				span{x: name + 36, text: r.Tail, ink: r.Ink, right: true})
+				span{x: min(name+36, w), text: r.Tail, ink: r.Ink, right: true})
 		}
 	}
 	if f.Design == nil {
