@@ -6,7 +6,6 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"math"
 	"reflect"
 
 	"polewright/estimator"
@@ -58,7 +57,11 @@ type Outcome struct {
 	// sample, in at most TraceBins equal bins: of each the largest in size, NaN where
 	// the bin has none.
 	Traces [][]float64
-	Span   float64
+	// Followed has per reference of the log its column and the estimate, absolute
+	// values in as many bins: of each the
+	// first row that has the column.
+	Followed [][2][]float64
+	Span     float64
 }
 
 // Rival is a kept design on the same log.
@@ -67,9 +70,6 @@ type Rival struct {
 	Result *logs.Result // nil where Err says why there is none
 	Err    error
 }
-
-// TraceBins bounds the bins of a trace.
-const TraceBins = 600
 
 // Runner replays designs of one model. It is not for concurrent use.
 type Runner struct {
@@ -104,9 +104,9 @@ func (r *Runner) Run(ctx context.Context, log *Log, d *estimator.Design) (*Outco
 		return nil, err
 	}
 	v := log.Record.Survey()
-	t := newTracer(v, len(log.Record.Layout().Sensors), log.Record.Layout().Period)
+	t := newTracer(v, log.Record.Layout(), r.model)
 	q.Floor, q.Each = r.floor, t.take
-	o := &Outcome{Traces: t.bins, Span: v.End - v.Start}
+	o := &Outcome{Traces: t.bins, Followed: t.followed, Span: v.End - v.Start}
 	if o.Result, err = logs.Replay(ctx, log.Record, q); err != nil {
 		return nil, err
 	}
@@ -124,37 +124,4 @@ func (r *Runner) Rival(ctx context.Context, log *Log, name string, d *estimator.
 	}
 	res, err := logs.Replay(ctx, log.Record, q)
 	return Rival{Name: name, Result: res, Err: err}
-}
-
-// tracer thins the innovations of a replay.
-type tracer struct {
-	start, period float64
-	slots         int
-	bins          [][]float64
-}
-
-func newTracer(v *logs.Survey, sensors int, period float64) *tracer {
-	slots := math.Round((v.End-v.Start)/period) + 1
-	t := &tracer{start: v.Start, period: period, slots: int(math.Min(math.Max(slots, 1), math.MaxInt32))}
-	for range sensors {
-		bins := make([]float64, min(TraceBins, t.slots))
-		for i := range bins {
-			bins[i] = math.NaN()
-		}
-		t.bins = append(t.bins, bins)
-	}
-	return t
-}
-
-// take puts a row into its bin.
-func (t *tracer) take(row *logs.Row) error {
-	slot := int(math.Round((row.Sample.T - t.start) / t.period))
-	for i, e := range row.Innovation {
-		bins := t.bins[i]
-		k := min(max(slot*len(bins)/t.slots, 0), len(bins)-1)
-		if old := bins[k]; math.IsNaN(old) || math.Abs(e) > math.Abs(old) {
-			bins[k] = e
-		}
-	}
-	return nil
 }

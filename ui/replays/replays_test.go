@@ -13,6 +13,7 @@ import (
 	"polewright/ui/desk"
 	"polewright/ui/desk/desktest"
 	"polewright/ui/replays"
+	"polewright/ui/replays/replaystest"
 )
 
 // recorded is a made-up log of the lift with so many rows, its fifth sample lost and
@@ -104,6 +105,42 @@ func TestOutcomeIsTheReplayOfTheWindow(t *testing.T) {
 	}
 	if rival = r.Rival(context.Background(), log, "B", nil); !errors.Is(rival.Err, estimator.ErrShape) {
 		t.Errorf("no design as a rival: %v", rival.Err)
+	}
+}
+
+// What the estimate is held against comes in absolute values, each pair from one
+// row: their differences over all rows of a short log give the bias that the
+// statistics have.
+func TestFollowedIsTheReference(t *testing.T) {
+	b := desktest.Bench(t, "lift")
+	_, _, d := desktest.Start(t, b, estimator.Options{})
+	log := replaystest.Log(t, b, replaystest.Made{Rows: 200, Seed: 3, References: true})
+	none := 0.0
+	log.Skip = &none
+	r, err := replays.NewRunner(b.Model)
+	if err != nil {
+		t.Fatal(err)
+	}
+	o, err := r.Run(context.Background(), log, d)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(o.Followed) != len(o.Result.References) || len(o.Followed) == 0 {
+		t.Fatalf("%d traces, %d references", len(o.Followed), len(o.Result.References))
+	}
+	for i, c := range o.Result.References {
+		f, sum := o.Followed[i], 0.0
+		for k := range f[0] {
+			sum += f[1][k] - f[0][k]
+		}
+		want, rms := float64(c.Bias), float64(c.RMS)
+		if have := sum / float64(len(f[0])); !(math.Abs(have-want) <= 1e-9*rms+1e-12*math.Abs(f[0][0])) {
+			t.Errorf("%s: bias %g, want %g", c.Name, have, want)
+		}
+		state := log.Record.Layout().States[log.Record.Survey().References[i].Index]
+		if f[0][0] != state.Operating {
+			t.Errorf("%s starts at %g, want %g", c.Name, f[0][0], state.Operating)
+		}
 	}
 }
 

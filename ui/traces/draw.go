@@ -25,6 +25,7 @@ type Panel struct {
 	Cursor      *float64 // s; nil for none
 	Note        string   // trouble: the run diverged
 	Late        bool     // older than asked for
+	Beside      string   // what the estimate is drawn beside; empty is the truth
 }
 
 const gutter = 9 // labels of the value axis, in cells
@@ -72,7 +73,11 @@ func heading(c *canvas.Canvas, x, y, w int, p Panel, g *theme.Glyphs) {
 	case p.Cursor != nil && p.Curves != nil:
 		values(c, at, y, x+w-at, p, ink, g)
 	case p.Mode == Both:
-		at = c.Text(at, y, g.Truth.Sample+" truth", theme.Faint) + 2
+		beside := "truth"
+		if p.Beside != "" {
+			beside = p.Beside
+		}
+		at = c.Text(at, y, g.Truth.Sample+" "+beside, theme.Faint) + 2
 		if x+w-at >= 12 {
 			at = c.Text(at, y, g.Estimate.Sample+" estimate", ink) + 2
 		}

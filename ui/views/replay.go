@@ -10,6 +10,7 @@ import (
 	"polewright/ui/readings"
 	"polewright/ui/replays"
 	"polewright/ui/theme"
+	"polewright/ui/traces"
 )
 
 // Replay is what the view of a real log shows.
@@ -35,7 +36,7 @@ func (f *Replay) Lines(w, h int, t *theme.Theme) []string {
 		p.sensor(f, i, min(max(h/3, 7), 13), t)
 	}
 	p.together(f, g)
-	p.references(o, g)
+	p.references(f, min(max(h/4, 6), 10), t)
 	p.rivals(f, g)
 	p.noiseFigures(o, g)
 	p.blank()
@@ -139,7 +140,8 @@ func (p *page) together(f *Replay, g *theme.Glyphs) {
 }
 
 // references holds the estimate against what the log knows of the truth.
-func (p *page) references(o *replays.Outcome, g *theme.Glyphs) {
+func (p *page) references(f *Replay, rows int, t *theme.Theme) {
+	o, g := f.Outcome, &t.Glyphs
 	if len(o.Result.References) == 0 {
 		return
 	}
@@ -151,6 +153,17 @@ func (p *page) references(o *replays.Outcome, g *theme.Glyphs) {
 			span{x: logFigure + 12, text: readings.Figure(rms, rms, g), right: true},
 			span{x: logExpected + 12, text: readings.Figure(float64(c.Bias), rms, g), right: true},
 			span{x: logExpected + 15, text: canvas.Cut(fmt.Sprintf("%d samples", c.Count), p.w-logExpected-15, g.Ellipsis), ink: theme.Faint})
+	}
+	for i, c := range o.Result.References {
+		if i >= len(o.Followed) {
+			break
+		}
+		curves := [][]float64{o.Followed[i][0], o.Followed[i][1]}
+		p.blank()
+		p.plot(rows, func(cv *canvas.Canvas, y int) {
+			traces.Draw(cv, 0, y, cv.W-2, rows, traces.Panel{Title: c.Name, Unit: c.Unit, Curves: curves, Axis: traces.Axes(curves),
+				End: o.Span, Late: f.Older, Beside: "the log"}, t)
+		})
 	}
 }
 
