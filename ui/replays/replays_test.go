@@ -112,34 +112,57 @@ func TestOutcomeIsTheReplayOfTheWindow(t *testing.T) {
 // row: their differences over all rows of a short log give the bias that the
 // statistics have.
 func TestFollowedIsTheReference(t *testing.T) {
-	b := desktest.Bench(t, "lift")
-	_, _, d := desktest.Start(t, b, estimator.Options{})
-	log := replaystest.Log(t, b, replaystest.Made{Rows: 200, Seed: 3, References: true})
-	none := 0.0
-	log.Skip = &none
-	r, err := replays.NewRunner(b.Model)
-	if err != nil {
-		t.Fatal(err)
-	}
-	o, err := r.Run(context.Background(), log, d)
-	if err != nil {
-		t.Fatal(err)
-	}
-	if len(o.Followed) != len(o.Result.References) || len(o.Followed) == 0 {
-		t.Fatalf("%d traces, %d references", len(o.Followed), len(o.Result.References))
-	}
-	for i, c := range o.Result.References {
-		f, sum := o.Followed[i], 0.0
-		for k := range f[0] {
-			sum += f[1][k] - f[0][k]
+	for _, name := range []string{"lift", "pan-drive", "kiln"} {
+		b := desktest.Bench(t, name)
+		_, _, d := desktest.Start(t, b, estimator.Options{})
+		log := replaystest.Log(t, b, replaystest.Made{Rows: 200, Seed: 3, References: true})
+		none := 0.0
+		log.Skip = &none
+		r, err := replays.NewRunner(b.Model)
+		if err != nil {
+			t.Fatal(err)
 		}
-		want, rms := float64(c.Bias), float64(c.RMS)
-		if have := sum / float64(len(f[0])); !(math.Abs(have-want) <= 1e-9*rms+1e-12*math.Abs(f[0][0])) {
-			t.Errorf("%s: bias %g, want %g", c.Name, have, want)
+		o, err := r.Run(context.Background(), log, d)
+		if err != nil {
+			t.Fatal(err)
 		}
-		state := log.Record.Layout().States[log.Record.Survey().References[i].Index]
-		if f[0][0] != state.Operating {
-			t.Errorf("%s starts at %g, want %g", c.Name, f[0][0], state.Operating)
+		l := log.Record.Layout()
+		if len(o.Followed) != len(l.States)+len(l.Outputs) {
+			t.Fatalf("%s: %d traces of %d states and %d outputs", name, len(o.Followed), len(l.States), len(l.Outputs))
+		}
+		for i, c := range o.Result.References {
+			f, sum := o.Followed[i], 0.0
+			for k := range f[0] {
+				sum += f[1][k] - f[0][k]
+			}
+			want, rms := float64(c.Bias), float64(c.RMS)
+			if have := sum / float64(len(f[0])); !(math.Abs(have-want) <= 1e-9*rms+1e-12*math.Abs(f[0][0])) {
+				t.Errorf("%s, %s: bias %g, want %g", name, c.Name, have, want)
+			}
+			list, ref := l.States, log.Record.Survey().References[i]
+			if ref.Output {
+				list = l.Outputs
+			}
+			zero := list[ref.Index].Operating
+			if !(math.Abs(f[0][0]-zero) <= 1e-9*math.Abs(zero)) {
+				t.Errorf("%s, %s starts at %g, want %g", name, c.Name, f[0][0], zero)
+			}
+		}
+	}
+}
+
+// BenchmarkRun is a whole window of the largest size, as after each key.
+func BenchmarkRun(b *testing.B) {
+	bench := desktest.Bench(b, "lift")
+	_, _, d := desktest.Start(b, bench, estimator.Options{})
+	log := replaystest.Log(b, bench, replaystest.Made{Rows: replays.Most, Seed: 3})
+	r, err := replays.NewRunner(bench.Model)
+	if err != nil {
+		b.Fatal(err)
+	}
+	for b.Loop() {
+		if _, err := r.Run(context.Background(), log, d); err != nil {
+			b.Fatal(err)
 		}
 	}
 }

@@ -23,7 +23,7 @@ type Made struct {
 	Rows  int
 	Seed  uint64
 	Noise float64 // times the sensors' own; 0 stands for 1
-	// References adds a column per state.
+	// References adds a column per state and output.
 	References bool
 	// Lost leaves the first sensor's fields of the rows 40 to 44 empty.
 	Lost bool
@@ -82,6 +82,7 @@ func (m *Made) text(model *estimator.Model, l *logs.Layout) []byte {
 	head(l.Sensors)
 	if m.References {
 		head(l.States)
+		head(l.Outputs)
 	}
 	for k := range m.Rows {
 		fmt.Fprintf(&b, "\n%.9g", float64(k)*l.Period)
@@ -100,6 +101,11 @@ func (m *Made) text(model *estimator.Model, l *logs.Layout) []byte {
 		for i, s := range l.States {
 			if m.References {
 				fmt.Fprintf(&b, ",%.12g", s.Operating+x.AtVec(i))
+			}
+		}
+		for i, s := range l.Outputs {
+			if m.References {
+				fmt.Fprintf(&b, ",%.12g", s.Operating+mat.Dot(model.Outputs.RowView(i), x))
 			}
 		}
 		next.MulVec(model.A, x)
