@@ -27,7 +27,6 @@ type reference struct {
 	zero  float64 // the log's column at zero deviation
 	index int
 	row   []float64 // combination of states; nil for one state
-	rest  float64   // to add to a combination of absolute states
 }
 
 func newTracer(v *logs.Survey, l *logs.Layout, m *estimator.Model) *tracer {
@@ -40,10 +39,6 @@ func newTracer(v *logs.Survey, l *logs.Layout, m *estimator.Model) *tracer {
 		r := reference{index: ref.Index}
 		if ref.Output {
 			r.zero, r.row = l.Outputs[ref.Index].Operating, mat.Row(nil, ref.Index, m.Outputs)
-			r.rest = r.zero
-			for i, c := range r.row {
-				r.rest -= c * l.States[i].Operating
-			}
 		} else {
 			r.zero = l.States[ref.Index].Operating
 		}
@@ -81,12 +76,13 @@ func (t *tracer) take(row *logs.Row) error {
 	return nil
 }
 
-// of is the estimate of the reference, from absolute states.
+// of is the estimate of the reference, from absolute states: a combination of these
+// is absolute too.
 func (r *reference) of(x []float64) float64 {
 	if r.row == nil {
 		return x[r.index]
 	}
-	v := r.rest
+	v := 0.0
 	for i, c := range r.row {
 		v += c * x[i]
 	}
