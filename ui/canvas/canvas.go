@@ -3,6 +3,7 @@
 package canvas
 
 import (
+	"fmt"
 	"strings"
 	"unicode/utf8"
 
@@ -202,6 +203,21 @@ func Cut(s string, w int, ellipsis rune) string {
 		n += Width(r)
 	}
 	return s
+}
+
+// CutList shortens a list to w cells: whole entries and the number of those left
+// out, as far as there is room for that.
+func CutList(list []string, w int, ellipsis rune) string {
+	all := strings.Join(list, ", ")
+	if TextWidth(all) <= w {
+		return all
+	}
+	for n := len(list) - 1; n > 0; n-- {
+		if s := fmt.Sprintf("%s, %d more", strings.Join(list[:n], ", "), len(list)-n); TextWidth(s) <= w {
+			return s
+		}
+	}
+	return Cut(all, w, ellipsis)
 }
 
 // Wrap breaks a text into lines of at most w cells, at blanks where there are any.

@@ -25,6 +25,16 @@ func TestRunsOfEqualInk(t *testing.T) {
 	}
 }
 
+func TestListsAreCutBetweenEntries(t *testing.T) {
+	list := []string{"damp -30%", "drive +10%", "mass +10%"}
+	for w, want := range map[int]string{32: "damp -30%, drive +10%, mass +10%", 31: "damp -30%, drive +10%, 1 more",
+		28: "damp -30%, 2 more", 16: "damp -30%, driv~"} {
+		if got := canvas.CutList(list, w, '~'); got != want {
+			t.Errorf("%d cells: %q, expected %q", w, got, want)
+		}
+	}
+}
+
 func TestDrawingOutsideIsIgnored(t *testing.T) {
 	var c canvas.Canvas
 	c.Reset(3, 2)

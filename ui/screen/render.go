@@ -171,7 +171,7 @@ func (m *Model) header() string {
 	c.Right(m.w, 0, right, theme.Faint)
 	room := m.w - canvas.TextWidth(right) - 2
 	if m.truth.name != "" {
-		text := canvas.Cut("real plant: "+m.truth.name, min(room, m.w/2), g.Ellipsis)
+		text := canvas.CutList(strings.Split("real plant: "+m.truth.name, ", "), min(room, m.w/2), g.Ellipsis)
 		c.Right(room, 0, text, theme.Title)
 		room -= canvas.TextWidth(text) + 2
 	}

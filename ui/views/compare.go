@@ -35,7 +35,7 @@ func Compare(w int, b *desk.Bench, an *estimator.Analysis, plane targets.Plane, 
 	fit := max((w-compareLabel)/compareWidth, 1)
 	from := max(cursor-fit+1, 0)
 	c := comparison{page: &p, bench: b, shown: list[from:min(from+fit, len(list))], g: &t.Glyphs}
-	c.names(cursor - from)
+	c.names(from, cursor, len(list))
 	p.blank()
 	c.poles(plane)
 	p.blank()
@@ -123,13 +123,25 @@ func (c *comparison) like(of func(d *estimator.Design) float64) func(v float64) 
 	return func(v float64) string { return readings.Figure(v, ref, c.g) }
 }
 
-func (c *comparison) names(cursor int) {
+// names heads the columns, those from the given one on of all; where not all are
+// in sight it says so.
+func (c *comparison) names(from, cursor, all int) {
 	c.line("candidates", func(column Column) string { return column.Name })
 	row := c.rows[len(c.rows)-1]
 	row[0].x, row[0].ink = 0, theme.Title
+	to := from + len(c.shown)
+	if to-from < all {
+		row[0].text = fmt.Sprintf("%d to %d of %d", from+1, to, all)
+		if from > 0 {
+			row[0].text = string(c.g.Left) + " " + row[0].text
+		}
+		if to < all {
+			row[0].text += " " + string(c.g.Right)
+		}
+	}
 	for k := range c.shown {
 		row[k+1].ink = theme.Title
-		if k == cursor {
+		if k == cursor-from {
 			row[k+1].ink, row[k+1].text = theme.Hold, string(c.g.Right)+" "+row[k+1].text
 		}
 	}

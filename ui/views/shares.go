@@ -21,16 +21,21 @@ func (p *sensorPage) shares() {
 		return
 	}
 	n, _, sensors := m.Dims()
-	p.title("where the noise of the design in hand comes from, std")
 	name := min(max(p.w-(sensors+2)*16, 22), 40)
 	width := min(max((p.w-name)/(sensors+2), 12), 20)
 	fit := max((p.w-name)/width, 1)
 	from := max(p.f.Cursor-fit+3, 0) // the sensor under the cursor is in sight, and two columns more
 	to := min(from+max(fit-2, 1), sensors)
+	title, which := "where the noise of the design in hand comes from, std", ""
 	if to-from < sensors {
-		last := len(p.rows) - 1
-		p.rows[last] = append(p.rows[last], span{x: p.w, text: fmt.Sprintf("%d to %d of %d sensors", from+1, to, sensors), ink: theme.Faint, right: true})
+		which = fmt.Sprintf("%d to %d of %d sensors", from+1, to, sensors)
 	}
+	if len(title)+2+len(which) > p.w {
+		title = "where its noise comes from, std"
+	}
+	p.title(title)
+	last := len(p.rows) - 1
+	p.rows[last] = append(p.rows[last], span{x: p.w, text: which, ink: theme.Faint, right: true})
 	head := []span{}
 	column := func(k int) int { return name + (k+1)*width }
 	for j := from; j < to; j++ {

@@ -70,11 +70,19 @@ func (p *page) state(f *Stress, g *theme.Glyphs) {
 	}
 	if e != nil {
 		if worst, ok := e.Stress(); ok {
-			p.row(span{x: 2, text: "hardest case", ink: theme.Faint}, span{x: 16, text: canvas.Cut(CaseText(worst), p.w-16, g.Ellipsis), ink: theme.Title})
+			p.said("hardest case", CaseText(worst), theme.Title)
 		}
 	}
 	if f.Truth != "" {
-		p.row(span{x: 2, text: "traces run on", ink: theme.Faint}, span{x: 16, text: canvas.Cut(plainMinus(f.Truth), p.w-16, g.Ellipsis), ink: theme.Hold})
+		p.said("traces run on", plainMinus(f.Truth), theme.Hold)
+	}
+}
+
+// said writes a label and a text that may need several rows.
+func (p *page) said(label, text string, ink theme.Ink) {
+	for _, l := range canvas.Wrap(text, p.w-16) {
+		p.row(span{x: 2, text: label, ink: theme.Faint}, span{x: 16, text: l, ink: ink})
+		label = ""
 	}
 }
 
@@ -95,7 +103,7 @@ func (p *page) stability(f *Stress, g *theme.Glyphs) {
 		if i == few {
 			break
 		}
-		p.row(span{x: 4, text: canvas.Cut(CaseText(c), p.w-4, g.Ellipsis), ink: theme.Faint})
+		p.row(span{x: 4, text: canvas.CutList(strings.Split(CaseText(c), ", "), p.w-4, g.Ellipsis), ink: theme.Faint})
 	}
 }
 
