@@ -30,7 +30,7 @@ func (s Set) Place(i int, at []complex128, plane Plane) (Set, int, error) {
 	case len(own) == 1 && imag(own[0]) != 0:
 		return s, i, errors.New("a complex pole comes with its conjugate: type a pair like -4±3i")
 	case len(own) == 1 && held.Pair:
-		return s, i, errors.New("a pair is held: type a pair like -4±3i, or move it onto the real axis, where it parts")
+		return s, i, errors.New("a pair is held: type a pair like -4±3i, or move it to the axis to part it")
 	case len(own) == 1:
 		return s.with(i, Target{At: own[0]}), i, nil
 	case len(own) != 2:
