@@ -151,6 +151,9 @@ func (p *terminal) quits() string {
 	}
 	p.mu.Lock()
 	defer p.mu.Unlock()
+	for !p.ends { // what is still on its way
+		p.more.Wait()
+	}
 	return string(p.out)
 }
 
