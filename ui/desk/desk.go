@@ -90,6 +90,8 @@ type View struct {
 	Trace    int     `json:"trace"`    // state shown
 	Focus    string  `json:"focus"`    // open view, empty for none
 	MapOff   bool    `json:"map_off,omitempty"`
+	Shows    string  `json:"shows,omitempty"` // what the traces show: "error", "innovation", empty for truth and estimate
+	Band     bool    `json:"band,omitempty"`  // around the estimate
 }
 
 // Work is what a session file keeps and what the screen starts from.

@@ -110,6 +110,12 @@ func New(cfg Config) Model {
 			m.open = view(v)
 		}
 	}
+	for mode, name := range modeNames {
+		if name == w.View.Shows {
+			m.mode = traces.Mode(mode)
+		}
+	}
+	m.band = w.View.Band
 	m.resize(cfg.Width, cfg.Height)
 	m.half = w.View.Zoom
 	m.fitPlane()
@@ -136,7 +142,8 @@ func (m Model) Work() desk.Work {
 	}
 	w.Candidates = append([]desk.Candidate(nil), m.candidates...)
 	w.Current = m.current
-	w.View = desk.View{Plane: string(byte(m.plane)), Zoom: m.half, Selected: m.now.held, Trace: m.trace, Focus: viewNames[m.open], MapOff: m.plot.off && !m.plot.unasked}
+	w.View = desk.View{Plane: string(byte(m.plane)), Zoom: m.half, Selected: m.now.held, Trace: m.trace, Focus: viewNames[m.open],
+		MapOff: m.plot.off && !m.plot.unasked, Shows: modeNames[m.mode], Band: m.band}
 	return w
 }
 

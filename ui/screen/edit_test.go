@@ -512,12 +512,12 @@ func TestMethodNeedsAChoice(t *testing.T) {
 
 func TestWorkBringsTheScreenBack(t *testing.T) {
 	r := start(t)
-	r.press("tab", ".", "z", "+", "a", "left", "r")
+	r.press("tab", ".", "z", "+", "a", "left", "b", "e", "r")
 	w := r.work()
 	w.Bench = bench(t, hoist)
 	again := newRig(t, nil, func(c *screen.Config) { c.Work = w })
 	got := again.work()
-	if got.View != w.View || w.View.Focus != "readings" || w.View.Plane != "z" || w.View.Zoom == 0 || w.View.Selected != 1 || w.View.Trace != 1 {
+	if got.View != w.View || w.View.Focus != "readings" || w.View.Plane != "z" || w.View.Zoom == 0 || w.View.Selected != 1 || w.View.Trace != 1 || w.View.Shows != "error" || !w.View.Band {
 		t.Errorf("view %v, expected %v", got.View, w.View)
 	}
 	again.wantPoles(w.Poles...)

@@ -84,6 +84,9 @@ const (
 var viewNames = [...]string{none: "", helpView: "help", readingsView: "readings", compareView: "candidates",
 	tradeoffView: "trade-off", sensorsView: "sensors", stressView: "stress", replayView: "log"}
 
+// modeNames are what the traces show, in a session file.
+var modeNames = [...]string{traces.Both: "", traces.Error: "error", traces.Innovation: "innovation"}
+
 // Model is the root model. Update works on its own copy and returns it; slices
 // and maps in it are replaced, not written to, except the axes and canvases,
 // which only Update touches.

@@ -50,7 +50,7 @@ func FuzzLoad(f *testing.F) {
 			tame(t, "error", err.Error())
 			return
 		}
-		for _, s := range []string{w.Bench.PlantFile, w.Bench.ScenarioFile, w.Bench.TruthFile, w.Current, w.View.Plane, w.View.Focus} {
+		for _, s := range []string{w.Bench.PlantFile, w.Bench.ScenarioFile, w.Bench.TruthFile, w.Current, w.View.Plane, w.View.Focus, w.View.Shows} {
 			tame(t, "text", s)
 		}
 		for _, c := range w.Candidates {
@@ -99,7 +99,7 @@ func TestHostileNames(t *testing.T) {
 		w.Bench.PlantFile, w.Bench.ScenarioFile = given, given
 		w.Candidates[0].Note = attack
 		w.Candidates[0].Letter, w.Current = "A"+attack, "A"+attack
-		w.View.Focus, w.View.Plane = attack, attack
+		w.View.Focus, w.View.Plane, w.View.Shows = attack, attack, attack
 		data, err := session.Encode("polewright test", w)
 		if err != nil {
 			t.Fatal(err)
@@ -115,7 +115,7 @@ func TestHostileNames(t *testing.T) {
 		if back.Bench.PlantFile != want || given != "" && back.Bench.ScenarioFile != want {
 			t.Errorf("%q became %q and %q, expected %q", given, back.Bench.PlantFile, back.Bench.ScenarioFile, want)
 		}
-		for _, s := range []string{back.Candidates[0].Letter, back.Candidates[0].Note, back.Current, back.View.Focus, back.View.Plane} {
+		for _, s := range []string{back.Candidates[0].Letter, back.Candidates[0].Note, back.Current, back.View.Focus, back.View.Plane, back.View.Shows} {
 			tame(t, "text", s)
 		}
 		if back.Current != back.Candidates[0].Letter {

@@ -51,6 +51,6 @@ func view(v desk.View) desk.View {
 		v.Zoom = 0
 	}
 	v.Selected, v.Trace = max(v.Selected, 0), max(v.Trace, 0)
-	v.Focus = Printable(v.Focus, maxLetter)
+	v.Focus, v.Shows = Printable(v.Focus, maxLetter), Printable(v.Shows, maxLetter)
 	return v
 }

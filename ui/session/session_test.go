@@ -41,7 +41,7 @@ func work(t *testing.T, name string) *desk.Work {
 	}
 	w := &desk.Work{
 		Bench: &desk.Bench{Plant: p, PlantFile: file, PlantText: text, Model: m, Scenario: s, ScenarioFile: sc.Name, ScenarioText: sc.Text},
-		View:  desk.View{Plane: "s", Zoom: 40, Selected: 1, Trace: 2},
+		View:  desk.View{Plane: "s", Zoom: 40, Selected: 1, Trace: 2, Shows: "innovation", Band: true},
 	}
 	for _, form := range []estimator.Form{estimator.Prediction, estimator.Current} {
 		d, err := estimator.NewDesigner(m, estimator.Options{Form: form})
