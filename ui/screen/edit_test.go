@@ -15,6 +15,7 @@ import (
 	tea "github.com/charmbracelet/bubbletea"
 
 	"polewright/estimator"
+	"polewright/estimator/poles"
 	"polewright/ui/desk"
 	"polewright/ui/screen"
 )
@@ -131,6 +132,44 @@ func (r *rig) timeout() {
 	r.clock = r.clock.Add(60 * time.Millisecond)
 	time.Sleep(60 * time.Millisecond)
 	r.run()
+}
+
+// Places inside the unit circle that make the s-plane unstable may have been meant
+// for the other plane.
+func TestDoubtsAboutThePlane(t *testing.T) {
+	const doubt = "were these z-plane places?"
+	mapped := func(c *screen.Config) {
+		c.Resolve = func(text, plane string, _ estimator.Form) ([]complex128, error) {
+			spec, err := poles.Parse(text)
+			if err != nil || plane == "z" {
+				return spec.Poles, err
+			}
+			var out []complex128
+			for _, v := range spec.Poles {
+				out = append(out, z(v))
+			}
+			return out, nil
+		}
+	}
+	for _, c := range []struct {
+		keys []string
+		want bool
+	}{
+		{[]string{"=", "0.8+-0.1i", "enter"}, true},
+		{[]string{"=", "-0.8+-0.1i", "enter"}, false},
+		{[]string{"=", "4+-2i", "enter"}, false},
+		{[]string{"z", "=", "0.8+-0.1i", "enter"}, false},
+		{[]string{"p", "0.8, 0.7, 0.9", "enter"}, true},
+		{[]string{"p", "0.8, -7, -9", "enter"}, false},
+		{[]string{"z", "p", "0.8, 0.7, 0.9", "enter"}, false},
+	} {
+		r := start(t, mapped)
+		r.press(c.keys...)
+		r.reply(desk.Traced)
+		if got := strings.Contains(r.m.View(), doubt); got != c.want {
+			t.Errorf("%v: doubt %v, expected %v\n%s", c.keys, got, c.want, strip(r.m.View()))
+		}
+	}
 }
 
 func TestPatternAndFloor(t *testing.T) {

@@ -2,6 +2,7 @@ package screen
 
 import (
 	"errors"
+	"math/cmplx"
 	"strings"
 
 	tea "github.com/charmbracelet/bubbletea"
@@ -35,6 +36,7 @@ func (m *Model) askPlace() tea.Cmd {
 		next.set, next.held, next.gain, next.gainCurrent = set, held, nil, nil
 		cmd := m.change(next, "")
 		m.follow()
+		m.doubtPlane(text, at)
 		return cmd, nil
 	})
 }
@@ -65,6 +67,27 @@ func (m *Model) askPattern() tea.Cmd {
 		}
 		cmd := m.change(next, "")
 		m.follow()
+		if spec, err := poles.Parse(text); err == nil && spec.Kind == poles.List {
+			m.doubtPlane(text, spec.Poles)
+		}
 		return cmd, nil
 	})
+}
+
+// doubtPlane asks whether places that were typed in the s-plane and are unstable
+// there were meant for the z-plane.
+func (m *Model) doubtPlane(text string, typed []complex128) {
+	if m.plane != targets.S || m.period() == 0 || strings.Contains(text, "@") {
+		return
+	}
+	grows := false
+	for _, v := range typed {
+		if cmplx.Abs(v) >= 1 {
+			return
+		}
+		grows = grows || real(v) >= 0
+	}
+	if grows {
+		m.refuse("unstable: were these z-plane places? z shows that plane")
+	}
 }
