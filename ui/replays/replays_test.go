@@ -193,6 +193,23 @@ func TestShortLogsHaveABinPerSample(t *testing.T) {
 	}
 }
 
+// A log goes with the plant and the period that it was read for.
+func TestFits(t *testing.T) {
+	b, other := desktest.Bench(t, "lift"), desktest.Bench(t, "balancer")
+	log := replaystest.Log(t, b, replaystest.Made{Rows: 20, Seed: 1})
+	again := desktest.Bench(t, "lift")
+	if !log.Fits(again.Plant, again.Model) {
+		t.Error("the same plant, read again, does not fit")
+	}
+	if log.Fits(other.Plant, other.Model) {
+		t.Error("another plant fits")
+	}
+	again.Model.Period *= 2
+	if log.Fits(again.Plant, again.Model) {
+		t.Error("another period fits")
+	}
+}
+
 func TestWindows(t *testing.T) {
 	b := desktest.Bench(t, "lift")
 	log, err := recorded(t, b, 100, -1, 10, 0.5)

@@ -83,8 +83,8 @@ func (f *Replay) heading(p *page, g *theme.Glyphs) {
 // Columns of the figures below a plot.
 const (
 	logFigure   = 26
-	logExpected = logFigure + 12
-	logBand     = logExpected + 3
+	logExpected = logFigure + 13
+	logBand     = logExpected + 2
 )
 
 // sensor shows one sensor's innovations: over time, their autocorrelation, figures.
@@ -93,7 +93,7 @@ func (p *page) sensor(f *Replay, i, rows int, t *theme.Theme) {
 	v := &o.Result.Innovations[i]
 	p.blank()
 	p.plot(rows, func(c *canvas.Canvas, y int) {
-		plot := logPlot{c: c, y: y, rows: rows, t: t, late: f.Older}
+		plot := logPlot{c: c, y: y, rows: rows, t: t, late: f.Older, skipped: f.skipped()}
 		plot.draw(o, i)
 	})
 	p.row(span{x: logFigure, text: "innovation", ink: theme.Faint, right: true}, span{x: logExpected, text: "expected", ink: theme.Faint, right: true},
@@ -108,9 +108,20 @@ func (p *page) sensor(f *Replay, i, rows int, t *theme.Theme) {
 	if i < len(o.Result.Whiteness) {
 		w := &o.Result.Whiteness[i]
 		p.row(span{x: 2, text: "white at floor", ink: theme.Faint}, span{x: logFigure, text: chance(float64(w.P), g), right: true},
-			span{x: logExpected, text: "effect " + readings.Figure(float64(w.EffectSize), 1, g), right: true},
+			span{x: logExpected, text: "effect " + readings.Fixed(float64(w.EffectSize), 3, g), right: true},
 			span{x: logBand, text: canvas.Cut(measures.WhiteWords(w), p.w-logBand, g.Ellipsis), ink: theme.Faint})
 	}
+}
+
+// skipped is the part of the span that is not in the statistics.
+func (f *Replay) skipped() float64 {
+	switch {
+	case f.Log.Skip == nil:
+		return 0.1
+	case f.Outcome.Span > 0:
+		return math.Min(*f.Log.Skip/f.Outcome.Span, 1)
+	}
+	return 0
 }
 
 // judged writes a figure beside what is expected and where it lies.

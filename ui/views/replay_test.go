@@ -60,6 +60,19 @@ func TestReplayOfLittle(t *testing.T) {
 			t.Errorf("what is not there is shown:\n%s", all)
 		}
 	}
+	late := 1e9
+	f.Log.Skip = &late // nothing is left for the statistics
+	r, err := replays.NewRunner(b.Model)
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, _, design := desktest.Start(t, b, estimator.Options{})
+	if f.Outcome, err = r.Run(context.Background(), f.Log, design); err != nil {
+		t.Fatal(err)
+	}
+	if all := text(f.Lines(80, 20, plain)); !strings.Contains(all, "0 in the statistics") || strings.Contains(all, "NaN") || strings.Contains(all, "inside") {
+		t.Error(all)
+	}
 	f = &views.Replay{Log: f.Log, Trouble: "the estimate grows beyond all bounds"}
 	if all := text(f.Lines(80, 20, theme.New(theme.Options{}))); !strings.Contains(all, "beyond all bounds") || strings.Contains(all, "computing") {
 		t.Error(all)

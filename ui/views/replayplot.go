@@ -17,6 +17,7 @@ type logPlot struct {
 	y, rows int
 	t       *theme.Theme
 	late    bool
+	skipped float64 // part of the trace that does not matter for its axis
 }
 
 // lagGutter is the room of the labels left of the autocorrelation.
@@ -31,7 +32,7 @@ func (l *logPlot) draw(o *replays.Outcome, i int) {
 	right := lagGutter + lags*step + 3
 	left := l.c.W - right - 2
 	curves := [][]float64{o.Traces[i]}
-	panel := traces.Panel{Title: v.Name, Unit: v.Unit, Mode: traces.Innovation, Curves: curves, Axis: evenAxis(curves), End: o.Span, Late: l.late}
+	panel := traces.Panel{Title: v.Name, Unit: v.Unit, Mode: traces.Innovation, Curves: curves, Axis: evenAxis(o.Traces[i], l.skipped), End: o.Span, Late: l.late}
 	if std := float64(v.StdExpected); std > 0 && !math.IsInf(std, 0) {
 		panel.Band = 2 * std
 		if panel.Axis.High < panel.Band {
@@ -42,11 +43,14 @@ func (l *logPlot) draw(o *replays.Outcome, i int) {
 	l.lags(v, left+2, step)
 }
 
-// evenAxis has zero in its middle.
-func evenAxis(curves [][]float64) traces.Axis {
-	a, ok := traces.Span(curves)
+// evenAxis has zero in its middle and holds what comes behind the skipped part of a
+// trace: a start from a wrong state would leave no room for the rest.
+func evenAxis(trace []float64, skipped float64) traces.Axis {
+	a, ok := traces.Span([][]float64{trace[int(skipped*float64(len(trace))):]})
 	if !ok {
-		return traces.Axis{Low: -1, High: 1}
+		if a, ok = traces.Span([][]float64{trace}); !ok {
+			return traces.Axis{Low: -1, High: 1}
+		}
 	}
 	size := math.Max(math.Abs(a.Low), math.Abs(a.High))
 	return traces.Axes([][]float64{{-size, size}})
