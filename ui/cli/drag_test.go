@@ -24,6 +24,12 @@ func TestDraggingCostsFewBytes(t *testing.T) {
 		t.Run(c.name, func(t *testing.T) {
 			p := open(t, program, t.TempDir(), c.args...)
 			p.resize(40, 120)
+			if c.name == "ascii" {
+				p.waitFor("limits")
+				p.press("M") // the 7-bit look starts without shades
+				p.waitFor("is shaded")
+				p.press("hl") // a key takes the word about it away
+			}
 			p.waitFor("limit broken") // the legend of a map that is there
 			p.still()
 			var bytes []int
