@@ -13,6 +13,7 @@ import (
 	"polewright/plants/library"
 	"polewright/ui/desk"
 	"polewright/ui/launch"
+	"polewright/ui/measures"
 	"polewright/ui/quiet"
 	"polewright/ui/replays"
 	"polewright/ui/session"
@@ -115,9 +116,12 @@ func openScreen(cmd *cobra.Command, o screenOptions, args []string) error {
 	if !ok {
 		return &plants.Error{Where: "terminal", Wrong: "input and output are no terminal, which the screen needs", Expected: "expected a terminal, or --lines for a dialogue in plain lines"}
 	}
-	saved, err := launch.Run(cmd.Context(), launch.Options{Work: *w, Log: log, Known: known, Any: len(args) == 0, Program: "polewright " + Version, Theme: look, Calm: o.calm, In: in, Out: out})
-	if saved != "" {
-		fmt.Fprintln(cmd.OutOrStdout(), "saved in "+saved)
+	left, err := launch.Run(cmd.Context(), launch.Options{Work: *w, Log: log, Known: known, Any: len(args) == 0, Program: "polewright " + Version, Theme: look, Calm: o.calm, In: in, Out: out})
+	if left.Gain != nil {
+		fmt.Fprintln(cmd.OutOrStdout(), "gain L, prediction form: "+measures.GainText(left.Gain))
+	}
+	if left.Saved != "" {
+		fmt.Fprintln(cmd.OutOrStdout(), "saved in "+left.Saved)
 	}
 	return err
 }

@@ -18,7 +18,7 @@ type Map struct {
 	Keep, Recall, Compare, Readings         key.Binding
 	Tradeoff, Sensors, Stress, Log          key.Binding
 	Fastest, Quietest, OtherCurve           key.Binding
-	Save, Help, Leave, Quit, Suspend        key.Binding
+	Save, Copy, Help, Leave, Quit, Suspend  key.Binding
 	ViewUp, ViewDown, ViewLeft, ViewRight   key.Binding
 	PageUp, PageDown, Delete, Choose, Close key.Binding
 }
@@ -81,6 +81,7 @@ func Default() Map {
 		Help:    bind("?", "help", "?"),
 		Leave:   bind("Esc", "leave what is open", "esc"),
 		Quit:    bind("q Ctrl+C", "quit; asks if something is unsaved", "q", "ctrl+c"),
+		Copy:    bind("y", "copy the gain with all digits, as --use-gain takes it, to the terminal's clipboard (OSC 52)", "y"),
 		Suspend: bind("Ctrl+Z", "suspend", "ctrl+z"),
 
 		ViewUp:     bind("k up", "scroll up", "up", "k"),
@@ -109,7 +110,7 @@ func (m Map) Groups() []Group {
 		{"Place", []key.Binding{m.Place, m.Pattern, m.Floor, m.Faster, m.Slower, m.Fastest, m.Quietest, m.Undo, m.Redo, m.Better, m.Form, m.Method}},
 		{"See", []key.Binding{m.Plane, m.ZoomIn, m.ZoomOut, m.Fit, m.Map, m.Mouse, m.NextState, m.PreviousState, m.Trace, m.Band, m.Clock, m.Readings, m.Tradeoff, m.Sensors, m.Stress, m.Log}},
 		{"Candidates", []key.Binding{m.Keep, m.Recall, m.Compare}},
-		{"Session", []key.Binding{m.Save, m.Help, m.Leave, m.Quit, m.Suspend}},
+		{"Session", []key.Binding{m.Save, m.Copy, m.Help, m.Leave, m.Quit, m.Suspend}},
 		{"In a view", []key.Binding{m.ViewUp, m.ViewDown, m.PageUp, m.PageDown, m.ViewLeft, m.ViewRight, m.OtherCurve, m.Choose, m.Delete, m.Close}},
 	}
 }

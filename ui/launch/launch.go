@@ -9,7 +9,9 @@ import (
 	"path/filepath"
 	"time"
 
+	"github.com/aymanbagabas/go-osc52/v2"
 	tea "github.com/charmbracelet/bubbletea"
+	"gonum.org/v1/gonum/mat"
 
 	"polewright/ui/aim"
 	"polewright/ui/desk"
@@ -36,19 +38,24 @@ type Options struct {
 	In, Out *os.File     // the terminal
 }
 
-// Run shows the screen until the person quits and returns where the work was
-// saved, empty where it was not. Work that was left unsaved is offered first. The
+// Left is what a person has in hand after leaving the screen.
+type Left struct {
+	Saved string     // where the work was saved; empty where it was not
+	Gain  *mat.Dense // of the design in hand, prediction form; nil for none
+}
+
+// Run shows the screen until the person quits and returns what is left. Work that was left unsaved is offered first. The
 // terminal is restored in any case; where a signal or a fault ends the screen, the
 // unsaved work stays in the journal and the error says so.
-func Run(ctx context.Context, o Options) (saved string, err error) {
+func Run(ctx context.Context, o Options) (Left, error) {
 	folder := journal.Folder()
-	left, err := offer(ctx, &o, folder, time.Now())
+	found, err := offer(ctx, &o, folder, time.Now())
 	if err != nil {
-		return "", err
+		return Left{}, err
 	}
 	keeper, message := &keeper{program: o.Program, folder: folder}, ""
-	if left != nil {
-		o.Work, o.Known, keeper.journal, keeper.recovered = *left.work, left.sum, left.journal, true
+	if found != nil {
+		o.Work, o.Known, keeper.journal, keeper.recovered = *found.work, found.sum, found.journal, true
 		message = "recovered; not saved yet"
 		if o.Log != nil && !o.Log.Fits(o.Work.Bench.Plant, o.Work.Bench.Model) {
 			o.Log, message = nil, "recovered; not saved yet; the log was read for another plant and is left out"
@@ -58,11 +65,11 @@ func Run(ctx context.Context, o Options) (saved string, err error) {
 	}
 	store, err := newStore(&o)
 	if err != nil {
-		return "", err
+		return Left{}, err
 	}
 	keeper.mark = store.mark
 	err = keeper.finish(show(ctx, &o, keeper, store, message))
-	return store.where(), err
+	return Left{store.where(), keeper.latest.Work().Gain}, err
 }
 
 // show runs the screen and the background.
@@ -84,6 +91,7 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 		program.Send(screen.MapMsg{Answer: a})
 	})
 	defer surveyor.Close()
+	terminal := wire.New(o.Out)
 	first := screen.New(screen.Config{
 		Work:    o.Work,
 		Ask:     work.Ask,
@@ -91,6 +99,7 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 		Study:   student.Ask,
 		Log:     o.Log,
 		Save:    store.save,
+		Copy:    func(text string) error { return terminal.Pass(osc52.New(text).String()) },
 		Resolve: aim.Resolver(o.Work.Bench.Model),
 		Theme:   o.Theme,
 		Calm:    o.Calm,
@@ -99,7 +108,7 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 	})
 	keeper.latest = first
 	program = tea.NewProgram(kept{first, keeper},
-		tea.WithAltScreen(), tea.WithContext(ctx), tea.WithInput(o.In), tea.WithOutput(wire.New(o.Out)), tea.WithoutSignalHandler())
+		tea.WithAltScreen(), tea.WithContext(ctx), tea.WithInput(o.In), tea.WithOutput(terminal), tea.WithoutSignalHandler())
 	close(ready)
 	defer keeper.guard(program)()
 	_, err := program.Run()

@@ -5,6 +5,7 @@
 package measures
 
 import (
+	"encoding/json"
 	"math"
 
 	"gonum.org/v1/gonum/mat"
@@ -366,4 +367,13 @@ func MethodName(m estimator.Method) string {
 		return "least-noise"
 	}
 	return "robust"
+}
+
+// GainText is a gain as one line with all digits, as --use-gain takes it.
+func GainText(l *mat.Dense) string {
+	text, err := json.Marshal(Matrix(l))
+	if err != nil {
+		return ""
+	}
+	return string(text)
 }

@@ -83,6 +83,7 @@ func (m *Model) bindings() map[string]action {
 	plain(k.Choose, func(m *Model) tea.Cmd { return m.takeOffer() })
 	plain(k.Leave, func(m *Model) tea.Cmd { return m.leaveSearch() })
 	plain(k.Help, func(m *Model) tea.Cmd { return m.openView(helpView) })
+	plain(k.Copy, func(m *Model) tea.Cmd { return m.copyGain() })
 	plain(k.Save, func(m *Model) tea.Cmd { return m.save() })
 	plain(k.Quit, func(m *Model) tea.Cmd { return m.quit() })
 	return out

@@ -51,6 +51,10 @@ type Config struct {
 	// movable poles of the model's own plane. It runs inside Update: short.
 	Resolve func(text, plane string, form estimator.Form) ([]complex128, error)
 
+	// Copy hands text to the clipboard of the person's terminal; nil for none. It runs
+	// outside Update.
+	Copy func(text string) error
+
 	Theme theme.Options
 	// Calm sends little while poles move, for a slow link: the rest follows when
 	// the hands rest.

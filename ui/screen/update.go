@@ -51,6 +51,8 @@ func (m Model) Update(msg tea.Msg) (tea.Model, tea.Cmd) {
 		cmd = m.lateTick()
 	case restMsg:
 		cmd = m.restTick()
+	case copiedMsg:
+		m.copied(msg)
 	case savedMsg:
 		cmd = m.savedResult(msg)
 	case calmMsg:

@@ -6,6 +6,7 @@ package wire
 import (
 	"bytes"
 	"os"
+	"sync"
 	"unicode/utf8"
 
 	"polewright/ui/canvas"
@@ -16,6 +17,7 @@ import (
 // frame that it does not understand, goes through as it is.
 type Terminal struct {
 	*os.File
+	mu   sync.Mutex
 	thin Thinner
 }
 
@@ -24,6 +26,8 @@ func New(f *os.File) *Terminal { return &Terminal{File: f} }
 
 // Write takes one whole frame, or anything that is none.
 func (t *Terminal) Write(p []byte) (int, error) {
+	t.mu.Lock()
+	defer t.mu.Unlock()
 	out := t.thin.Thin(p)
 	if len(out) == 0 {
 		return len(p), nil
@@ -32,6 +36,14 @@ func (t *Terminal) Write(p []byte) (int, error) {
 		return 0, err
 	}
 	return len(p), nil
+}
+
+// Pass sends a sequence that shows nothing, between two frames. Frames do not notice.
+func (t *Terminal) Pass(sequence string) error {
+	t.mu.Lock()
+	defer t.mu.Unlock()
+	_, err := t.File.WriteString(sequence)
+	return err
 }
 
 // WriteString is Write; it keeps that of the file from being used.
