@@ -94,8 +94,8 @@ func Scale(list []complex128, k, period float64) ([]complex128, error) {
 }
 
 // Speeds scales the wanted poles of base by each factor and follows its branch
-// outwards from the factor nearest to 1, so that the curve has no jumps. The
-// designer must be the one that base came from. It stops early, with the points
+// outwards from the factor nearest to 1, so that the curve has no jumps; at 1
+// stands base itself. The designer must be the one that base came from. It stops early, with the points
 // found so far, when ctx is cancelled.
 func Speeds(ctx context.Context, d *estimator.Designer, base *estimator.Design, period float64, factors []float64) ([]Point, error) {
 	movable, _ := d.Movable()
@@ -117,6 +117,10 @@ func Speeds(ctx context.Context, d *estimator.Designer, base *estimator.Design, 
 				return
 			}
 			p := &out[i]
+			if p.Factor == 1 { // placing its poles anew may choose another gain
+				p.Design, p.Err = base, nil
+				continue
+			}
 			var list []complex128
 			if list, p.Err = Scale(base.Wanted[:movable], p.Factor, period); p.Err != nil {
 				continue

@@ -55,6 +55,38 @@ func TestSpeedsOfAnIntegratorByHand(t *testing.T) {
 	}
 }
 
+// With more sensors than needed the same poles have many gains: the point at 1 is
+// the design itself, and its neighbours continue from it.
+func TestSpeedsPassThroughTheDesign(t *testing.T) {
+	m := &estimator.Model{
+		A: mat.NewDense(2, 2, []float64{0, 1, -2, -0.3}), C: mat.NewDense(2, 2, []float64{1, 0, 0, 1}),
+		Q: mat.NewSymDense(2, []float64{0.1, 0, 0, 1}), R: mat.NewSymDense(2, []float64{0.01, 0, 0, 0.5}),
+	}
+	d := designer(t, m)
+	placed, err := d.Place([]complex128{-3, -5}, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	skew := mat.NewDense(2, 2, []float64{3, 1 + 0.8, -2, 5 - 0.3}) // A - L C = [-3 -0.8; 0 -5]
+	base, err := d.Judge(estimator.Given{L: skew})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if math.Abs(base.Noise.OverFloorRMS/placed.Noise.OverFloorRMS-1) < 1e-3 {
+		t.Fatal("the two gains do not differ: the test shows nothing")
+	}
+	base.Wanted = placed.Wanted
+	points, err := sweep.Speeds(context.Background(), d, base, 0, sweep.Factors(2, 5))
+	if err != nil {
+		t.Fatal(err)
+	}
+	for i, p := range points {
+		if p.Err != nil || (p.Design == base) != (i == 2) {
+			t.Errorf("at %g: %v, the design itself: %v", p.Factor, p.Err, p.Design == base)
+		}
+	}
+}
+
 // A factor k on the process noise moves the floor's gain to √(k q/r).
 func TestFloorsOfAnIntegratorByHand(t *testing.T) {
 	const q, r = 4, 0.25
