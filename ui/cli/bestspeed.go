@@ -103,10 +103,9 @@ func (s *swept) fill(points []logs.Point) {
 		s.Speeds[i].Point = points[i]
 		errs[i] = float64(points[i].Error)
 	}
-	best := least(errs)
-	s.BestSpeed, s.BestSpeedAtEnd = logs.Number(math.NaN()), best == 0 || best == len(errs)-1
-	if best >= 0 {
-		s.BestSpeed = s.Speeds[best].Factor
+	s.BestSpeed = logs.Number(math.NaN())
+	if best := least(errs); best >= 0 {
+		s.BestSpeed, s.BestSpeedAtEnd = s.Speeds[best].Factor, best == 0 || best == len(errs)-1
 	}
 	points = points[len(s.Speeds):]
 	errs = make([]float64, len(s.Floors))
@@ -114,10 +113,9 @@ func (s *swept) fill(points []logs.Point) {
 		s.Floors[i].Point = points[i]
 		errs[i] = float64(points[i].Error)
 	}
-	best = least(errs)
-	s.BestFloor, s.BestFloorAtEnd = logs.Number(math.NaN()), best == 0 || best == len(errs)-1
-	if best >= 0 {
-		s.BestFloor = s.Floors[best].Factor
+	s.BestFloor = logs.Number(math.NaN())
+	if best := least(errs); best >= 0 {
+		s.BestFloor, s.BestFloorAtEnd = s.Floors[best].Factor, best == 0 || best == len(errs)-1
 	}
 }
 
@@ -132,50 +130,65 @@ func least(list []float64) int {
 	return best
 }
 
-// print writes the tables; unit is that of the only sensor's error.
+// print writes the tables; unit is that of the only sensor's error, skipped the time
+// in s before the statistics.
 func (s *swept) print(line func(string, ...any), unit string, skipped float64) {
 	line("")
 	line("best speed for this log: one-step-ahead error over %d samples", s.Counted)
 	line("(one sensor: rms; several: 2p-th root of the determinant of their second moments)")
-	present := float64(s.Present.Error)
-	row := func(factor, settle logs.Number, p logs.Point, mark string) {
-		line("%s\t%s\t%s\t%s\t%s", figure4(float64(factor)), figure4(float64(settle)), figure(float64(p.Error)), against(float64(p.Error), present), mark)
-	}
-	if s.SpeedsNote != "" {
-		line("speeds\tnone: %s", s.SpeedsNote)
-	} else {
-		line("all poles times\tsettle [s]\terror%s\tto the present\t", unit)
-		seen := false
-		for _, p := range s.Speeds {
-			mark := ""
-			if p.Factor == 1 {
-				mark, seen = "PRESENT", true
-			}
-			row(p.Factor, p.Settle, p.Point, marks(mark, p.Factor == s.BestSpeed, s.BestSpeedAtEnd))
-		}
-		if !seen {
-			line("present\t\t%s\t\tPRESENT", figure(present))
-		}
-	}
+	s.printSpeeds(line, unit)
 	line("")
-	if len(s.Floors) == 0 {
-		line("floors\tnone: this model has no floor")
-	} else {
-		line("floor for Q times\tsettle [s]\terror%s\tto the present\t", unit)
-		for _, p := range s.Floors {
-			mark := ""
-			if p.Factor == 1 {
-				mark = "floor of the plant file"
-			}
-			row(p.Factor, p.Settle, p.Point, marks(mark, p.Factor == s.BestFloor, s.BestFloorAtEnd))
-		}
-		if s.SpeedsNote != "" {
-			line("present\t\t%s\t\tPRESENT", figure(present))
-		}
-	}
+	s.printFloors(line, unit)
 	if longest := float64(s.Longest); longest > skipped {
 		line("note: the slowest of these takes %s s to settle, the statistics begin after %s s: its start is in its error (--skip, --start)", figure4(longest), figure4(skipped))
 	}
+}
+
+// row writes one gain.
+func (s *swept) row(line func(string, ...any), factor, settle logs.Number, p logs.Point, mark string) {
+	v := float64(p.Error)
+	line("%s\t%s\t%s\t%s\t%s", figure4(float64(factor)), figure4(float64(settle)), figure(v), against(v, float64(s.Present.Error)), mark)
+}
+
+func (s *swept) printSpeeds(line func(string, ...any), unit string) {
+	if s.SpeedsNote != "" {
+		line("speeds\tnone: %s", s.SpeedsNote)
+		return
+	}
+	line("all poles times\tsettle [s]\terror%s\tto the present\t", unit)
+	seen := false
+	for _, p := range s.Speeds {
+		mark := ""
+		if p.Factor == 1 {
+			mark, seen = "PRESENT", true
+		}
+		s.row(line, p.Factor, p.Settle, p.Point, marks(mark, p.Factor == s.BestSpeed, s.BestSpeedAtEnd))
+	}
+	if !seen {
+		s.printPresent(line)
+	}
+}
+
+func (s *swept) printFloors(line func(string, ...any), unit string) {
+	if len(s.Floors) == 0 {
+		line("floors\tnone: this model has no floor")
+		return
+	}
+	line("floor for Q times\tsettle [s]\terror%s\tto the present\t", unit)
+	for _, p := range s.Floors {
+		mark := ""
+		if p.Factor == 1 {
+			mark = "floor of the plant file"
+		}
+		s.row(line, p.Factor, p.Settle, p.Point, marks(mark, p.Factor == s.BestFloor, s.BestFloorAtEnd))
+	}
+	if s.SpeedsNote != "" {
+		s.printPresent(line)
+	}
+}
+
+func (s *swept) printPresent(line func(string, ...any)) {
+	line("present\t\t%s\t\tPRESENT", figure(float64(s.Present.Error)))
 }
 
 // marks joins what stands behind a row.
