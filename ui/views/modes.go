@@ -97,6 +97,13 @@ func (p *sensorPage) table(seen *Seen) {
 		place := p.place(r, seen.Model.Period)
 		said, ink := seenWord(r.mode, best)
 		lines := combination(r.parts, seen.Model, p.w-parts, p.g)
+		if own := owners(r, seen.Model); len(own) > 1 || len(own) == 1 && (r.count > 1 || !slices.Equal(lines, []string{"1.00 " + own[0]})) {
+			word := "mode of "
+			if len(own) > 1 {
+				word = "modes of "
+			}
+			lines = append(lines, canvas.Wrap(word+strings.Join(own, ", "), p.w-parts-1)...)
+		}
 		for i := range max(len(lines), 1) {
 			var row []span
 			if i == 0 {
@@ -109,6 +116,29 @@ func (p *sensorPage) table(seen *Seen) {
 			p.row(row...)
 		}
 	}
+}
+
+// owners are the unknown states, and where several modes share a place all states,
+// that no other state drives or that drive no other: the mode at their diagonal
+// entry is their own.
+func owners(r seenRow, m *estimator.Model) []string {
+	var out []string
+	n, _, _ := m.Dims()
+	for i := range n {
+		own := complex(m.A.At(i, i), 0)
+		if cmplx.Abs(own-r.mode.Eigenvalue) > 1e-9*max(cmplx.Abs(own), 1) || role(m, i) == estimator.DelayRegister {
+			continue
+		}
+		driven, drives := false, false
+		for j := range n {
+			driven = driven || j != i && m.A.At(i, j) != 0
+			drives = drives || j != i && m.A.At(j, i) != 0
+		}
+		if (!driven || !drives) && (r.count > 1 || role(m, i) == estimator.UnknownState) {
+			out = append(out, m.StateNames[i])
+		}
+	}
+	return out
 }
 
 func sigmaText(v float64) string {

@@ -2,6 +2,7 @@ package views_test
 
 import (
 	"fmt"
+	"slices"
 	"strings"
 	"testing"
 
@@ -53,6 +54,29 @@ func TestHardestCaseIsWhole(t *testing.T) {
 	for _, part := range []string{"traces run on", "damping -30%", "stiffness -20%"} {
 		if !strings.Contains(text, part) {
 			t.Errorf("%q is missing:\n%s", part, text)
+		}
+	}
+}
+
+// A mode that is a state's own, as that of an offset, is named after it, also where
+// it shares its place with others.
+func TestModesOfUnknownsHaveNames(t *testing.T) {
+	for plant, want := range map[string]string{"climber": "modes of height, accelerometer offset", "gangway": "mode of valve force offset"} {
+		b := desktest.Bench(t, plant)
+		f := views.Sensors{Bench: b, Plane: targets.S, Plugged: make([]bool, len(b.Model.SensorNames)), All: views.See(b, estimator.Prediction, b.Plant.Enabled())}
+		for i := range f.Plugged {
+			f.Plugged[i] = true
+		}
+		for _, w := range []int{80, 120} {
+			lines := f.Lines(w, theme.New(theme.Options{}))
+			k := slices.IndexFunc(lines, func(l string) bool { return strings.Contains(l, "0.00, 2 times") })
+			if k < 0 {
+				t.Fatalf("%s: no such modes:\n%s", plant, strings.Join(lines, "\n"))
+			}
+			said := strings.Join(strings.Fields(strings.Join(lines[k+1:min(k+4, len(lines))], " ")), " ")
+			if !strings.Contains(said, want) {
+				t.Errorf("%s, %d wide: %q, expected %q", plant, w, said, want)
+			}
 		}
 	}
 }
