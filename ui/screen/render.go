@@ -248,6 +248,9 @@ func (m *Model) drawTraces(c *canvas.Canvas) {
 			}
 		}
 		p.Late = m.late && m.runGen < m.gen || m.failure != nil
+		if i == 0 && bench.ScenarioFile == "" {
+			p.Run = []string{"no scenario: start-up, one scale off", "start-up, one scale off", "no scenario"}
+		}
 		p.Around, p.Events = m.band, traces.Events(bench.Scenario)
 		traces.Draw(c, i*(width+gap), 0, width, c.H, p, m.theme)
 	}

@@ -25,6 +25,7 @@ type Panel struct {
 	Cursor      *float64 // s; nil for none
 	Note        string   // trouble: the run diverged
 	Late        bool     // older than asked for
+	Run         []string // what the run is, from long to short; empty for one that needs no words
 	Beside      string   // what the estimate is drawn beside; empty is the truth
 }
 
@@ -55,6 +56,33 @@ func Draw(c *canvas.Canvas, x, y, w, h int, p Panel, t *theme.Theme) {
 		c.Text(x+gutter+1+width/2-len(mid)/2, bottom, mid, theme.Faint)
 	}
 	events(c, x+gutter+1, bottom, width, p, g)
+	said(c, x, w, y, bottom, p)
+}
+
+// said writes what the run is, in the longest words that find room at the end of
+// the title or behind the zero of the time axis.
+func said(c *canvas.Canvas, x, w, title, bottom int, p Panel) {
+	free := func(from, to, y int) bool {
+		for ; from < to; from++ {
+			if c.At(from, y) != ' ' {
+				return false
+			}
+		}
+		return true
+	}
+	for _, text := range p.Run {
+		n := canvas.TextWidth(text)
+		from := x + gutter + 4
+		switch {
+		case n+2 <= w && free(x+w-n-2, x+w, title):
+			c.Right(x+w, title, text, theme.Faint)
+		case from+n+2 <= x+w && free(from-1, from+n+2, bottom):
+			c.Text(from, bottom, text, theme.Faint)
+		default:
+			continue
+		}
+		return
+	}
 }
 
 func heading(c *canvas.Canvas, x, y, w int, p Panel, g *theme.Glyphs) {

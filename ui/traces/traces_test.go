@@ -163,3 +163,25 @@ func TestBandAroundTheEstimate(t *testing.T) {
 		t.Error("a band without being asked for")
 	}
 }
+
+// What a run is finds a place in the title or on the time axis, whole or not at
+// all, and covers nothing.
+func TestWhatTheRunIs(t *testing.T) {
+	words := []string{"no scenario: start-up, one scale off", "start-up, one scale off", "no scenario"}
+	for w, want := range map[int][2]string{90: {words[0], ""}, 60: {words[1], ""}, 46: {"", words[1]}, 29: {"", words[2]}, 22: {"", ""}} {
+		p := traces.Panel{Title: "height", Unit: "m", Curves: [][]float64{ramp(50), ramp(50)}, Axis: traces.Axis{Low: 0, High: 1}, End: 2, Run: words}
+		lines := draw(p, w, 8)
+		got := [2]string{}
+		for i, l := range []string{lines[0], lines[7]} {
+			for _, s := range words {
+				if strings.Contains(l, s) {
+					got[i] = s
+					break
+				}
+			}
+		}
+		if got != want || !strings.HasSuffix(lines[7], "2 s") || !strings.Contains(lines[0], "truth") {
+			t.Errorf("%d wide: %q, expected %q\n%s", w, got, want, strings.Join(lines, "\n"))
+		}
+	}
+}
