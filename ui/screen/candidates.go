@@ -21,7 +21,7 @@ func (m *Model) keepWhenReady() tea.Cmd {
 	case m.current != "":
 		m.say("this design is kept as " + m.current + " already")
 	case m.truth.factors != nil:
-		m.refuse("the traces run on a harder real plant: w and Enter go back to the scenario's own, to keep its figures")
+		m.refuse("the traces run on a harder real plant: w, Enter go back, then a keeps")
 	case m.failure != nil:
 		m.refuse("there is no design to keep: " + m.failure.Error())
 	case m.freeLetter() == "":

@@ -164,7 +164,7 @@ func (m *Model) snapToFloor() tea.Cmd {
 		return nil
 	}
 	next.gain, next.gainCurrent = m.analysis.Floor.Gain, nil
-	m.say("on the floor: poles and gain of the best linear estimator for these noise figures")
+	m.say("on the floor: poles and gain of the best linear estimator for this noise")
 	cmd := m.change(next, "")
 	m.follow()
 	return cmd

@@ -35,7 +35,7 @@ func (m *Model) seekFastest() tea.Cmd {
 	case m.cfg.Study == nil:
 		m.refuse("searching is not available here")
 	case !m.cfg.Work.Bench.Scenario.Limits.Any():
-		m.refuse("the scenario sets no limits, so faster is always possible: --scenario names one that does")
+		m.refuse("no limits, so faster is always possible: --scenario names one that has some")
 	default:
 		m.seek(&hunt{kind: study.Fastest})
 	}

@@ -210,7 +210,7 @@ func (m *Model) mapAnswer(a *survey.Answer) {
 func (m *Model) toggleMap() tea.Cmd {
 	m.plot.off, m.plot.unasked = !m.plot.off, false
 	m.plot.shown, m.plot.tones = nil, nil
-	text := "the plane is shaded by the noise over the floor that the held pole would give there"
+	text := "the plane is shaded: noise over the floor if the held pole went there"
 	if m.plot.off {
 		text = "the plane is not shaded"
 	}
