@@ -60,12 +60,17 @@ func TestRandomKeysInATerminal(t *testing.T) {
 	keys := strings.Fields(`Left Right Up Down S-Left S-Right S-Up S-Down h j k l H J K L Tab BTab n N = p f u U C-r c m z + - 0 , . e r v a w t x ? Escape Enter
 		Space BSpace 1 2 3 9 < > PgUp PgDn Home End F1 [ O A B C D [A ~ é`)
 	random := rand.New(rand.NewPCG(7, 11))
+	sent := 0
 	for end := time.Now().Add(length()); time.Now().Before(end); {
 		var burst []string
 		for range 1 + random.IntN(12) {
 			burst = append(burst, keys[random.IntN(len(keys))])
 		}
 		p.tmux(append([]string{"send-keys", "-t", "t", "--"}, burst...)...)
+		sent++
+		if sent%50 == 0 && strings.Contains(p.tmux("capture-pane", "-p", "-t", "t"), "ENDED") {
+			break
+		}
 		switch random.IntN(12) {
 		case 0:
 			p.tmux("resize-window", "-t", "t", "-x", fmt.Sprint(20+random.IntN(200)), "-y", fmt.Sprint(5+random.IntN(60)))
@@ -73,6 +78,9 @@ func TestRandomKeysInATerminal(t *testing.T) {
 			p.tmux("set-buffer", "-b", "b", "q\ny\n-3+-2i\n\x1b[Aqy")
 			p.tmux("paste-buffer", "-p", "-b", "b", "-t", "t")
 		}
+	}
+	if screen := p.tmux("capture-pane", "-p", "-S", "-1000", "-t", "t"); strings.Contains(screen, "ENDED") {
+		t.Fatalf("the program ended by itself:\n%s", screen)
 	}
 	p.tmux("resize-window", "-t", "t", "-x", "80", "-y", "24")
 	for range 6 {

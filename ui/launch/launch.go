@@ -108,7 +108,7 @@ func show(ctx context.Context, o *Options, keeper *keeper, store *store, message
 	})
 	keeper.latest = first
 	program = tea.NewProgram(kept{first, keeper},
-		tea.WithAltScreen(), tea.WithContext(ctx), tea.WithInput(o.In), tea.WithOutput(terminal), tea.WithoutSignalHandler())
+		tea.WithAltScreen(), tea.WithContext(ctx), tea.WithInput(keyboard{o.In}), tea.WithOutput(terminal), tea.WithoutSignalHandler())
 	close(ready)
 	defer keeper.guard(program)()
 	_, err := program.Run()
