@@ -2,6 +2,7 @@ package aim
 
 import (
 	"errors"
+	"fmt"
 
 	"polewright/estimator"
 	"polewright/estimator/poles"
@@ -43,5 +44,9 @@ func counted(k int, m *estimator.Model, d *estimator.Designer) error {
 	if k == movable || k == n || registers > 0 && (k == movable-registers || k == n-registers) {
 		return nil
 	}
-	return &estimator.FixedModesError{Fixed: d.Fixed(), Movable: movable, Wanted: k}
+	err := &estimator.FixedModesError{Fixed: d.Fixed(), Movable: movable, Wanted: k}
+	if registers > 0 && len(err.Fixed) == 0 {
+		return fmt.Errorf("%w, or %d without the delay registers", err, movable-registers)
+	}
+	return err
 }
