@@ -58,6 +58,17 @@ func TestHardestCaseIsWhole(t *testing.T) {
 	}
 }
 
+// Where the last column is too narrow for a case, it stands below its figure, on
+// one row.
+func TestCasesOfANarrowScreenStandBelow(t *testing.T) {
+	f := views.Stress{Envelope: envelope(t, desktest.Bench(t, "lift")), Controlled: true}
+	lines := f.Lines(narrow, theme.New(theme.Options{}))
+	k := slices.IndexFunc(lines, func(l string) bool { return strings.Contains(l, "phase margin") })
+	if k < 0 || !slices.ContainsFunc(lines, func(l string) bool { return strings.HasPrefix(l, "    damp -30%, drive ") }) {
+		t.Errorf("%s", strings.Join(lines, "\n"))
+	}
+}
+
 // A mode that is a state's own, as that of an offset, is named after it, also where
 // it shares its place with others.
 func TestModesOfUnknownsHaveNames(t *testing.T) {

@@ -115,6 +115,7 @@ func (p *page) envelope(e *tolerance.Envelope, g *theme.Glyphs) {
 	name := min(max(p.w/3, 22), 48)
 	nominal, worst := name+stressNumber, name+2*stressNumber
 	at := worst + 8
+	below := p.w-at < 16 // the case goes into a row of its own
 	p.blank()
 	p.row(span{x: 2, text: "figure", ink: theme.Faint}, span{x: nominal, text: "nominal", ink: theme.Faint, right: true},
 		span{x: worst, text: "worst", ink: theme.Faint, right: true}, span{x: at, text: "at", ink: theme.Faint})
@@ -133,13 +134,21 @@ func (p *page) envelope(e *tolerance.Envelope, g *theme.Glyphs) {
 		if m.Figure == tolerance.Stability && e.Unstable > 0 {
 			ink = theme.Trouble
 		}
-		lines := canvas.Wrap(CaseText(m.Case), p.w-at)
+		room := p.w - at
+		if below {
+			room = p.w - 4
+		}
+		lines := canvas.Wrap(CaseText(m.Case), room)
 		text := strings.Join(lines, " ")
 		if text == before && len(m.Case.Truth()) > 0 {
 			lines = []string{"the same"}
 		}
 		before = text
 		label := canvas.Wrap(plainMinus(m.Name), name-3)
+		var under []string
+		if below {
+			lines, under = nil, lines
+		}
 		for i := range max(len(lines), len(label)) {
 			var row []span
 			if i < len(label) {
@@ -154,6 +163,9 @@ func (p *page) envelope(e *tolerance.Envelope, g *theme.Glyphs) {
 				row = append(row, span{x: at, text: lines[i], ink: theme.Faint})
 			}
 			p.row(row...)
+		}
+		for _, l := range under {
+			p.row(span{x: 4, text: l, ink: theme.Faint})
 		}
 	}
 	if unbiased > 0 {
