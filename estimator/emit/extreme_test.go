@@ -75,7 +75,7 @@ func TestExtremeNumbers(t *testing.T) {
 			}
 		}
 	})
-	if emitted < 10 || refused < 10 {
+	if !testing.Short() && (emitted < 10 || refused < 10) {
 		t.Errorf("%d emitted, %d refused: too one-sided to say much", emitted, refused)
 	}
 }

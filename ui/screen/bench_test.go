@@ -65,17 +65,18 @@ func bench(t testing.TB, text string) *desk.Bench {
 
 // rig is a screen with a fake background, a clock and a file store.
 type rig struct {
-	t      testing.TB
-	m      tea.Model
-	asked  []desk.Request
-	clock  time.Time
-	saved  map[string]desk.Work
-	exist  map[string]bool
-	own    string // file of the session; someone else changes it where this is emptied
-	broken error  // why nothing can be saved
-	quit   bool
-	cmds   []tea.Cmd // not yet run
-	T      float64
+	patience time.Duration // how long run waits for a command; 0 is 20 ms
+	t        testing.TB
+	m        tea.Model
+	asked    []desk.Request
+	clock    time.Time
+	saved    map[string]desk.Work
+	exist    map[string]bool
+	own      string // file of the session; someone else changes it where this is emptied
+	broken   error  // why nothing can be saved
+	quit     bool
+	cmds     []tea.Cmd // not yet run
+	T        float64
 }
 
 type option func(*screen.Config)
@@ -171,7 +172,7 @@ func (r *rig) run() {
 			select {
 			case msg := <-done:
 				r.took(msg)
-			case <-time.After(20 * time.Millisecond):
+			case <-time.After(max(r.patience, 20*time.Millisecond)):
 			}
 		}
 	}
