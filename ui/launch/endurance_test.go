@@ -128,7 +128,7 @@ func (d *desktop) leave() {
 		if err != nil {
 			d.t.Errorf("the program ended with %v", err)
 		}
-	case <-time.After(20 * time.Second):
+	case <-time.After(2 * time.Minute):
 		d.t.Fatal("the program does not end")
 	}
 	for _, f := range d.close {
