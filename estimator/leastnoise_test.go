@@ -3,13 +3,13 @@ package estimator_test
 import (
 	"errors"
 	"math"
-	"math/cmplx"
 	"testing"
 
 	"gonum.org/v1/gonum/mat"
 	"pgregory.net/rapid"
 
 	"polewright/estimator"
+	"polewright/estimator/poles"
 )
 
 // At the poles of the best linear estimator of either form, the least-noise gain is
@@ -27,7 +27,7 @@ func TestLeastNoiseReachesTheFloor(t *testing.T) {
 		for _, form := range forms {
 			d := newDesigner(t, c.model(), estimator.Options{Form: form, Method: estimator.LeastNoise})
 			floor := d.Analysis().Floor
-			wanted := without(floor.Poles, d.Fixed())
+			wanted := poles.Without(floor.Poles, d.Fixed())
 			got, err := d.Place(wanted, nil)
 			if err != nil {
 				t.Errorf("%s: %v", c.Name, err)
@@ -49,21 +49,6 @@ func TestLeastNoiseReachesTheFloor(t *testing.T) {
 	if seen < 7 {
 		t.Errorf("only %d designs", seen)
 	}
-}
-
-// without takes the nearest of the fixed eigenvalues out of a list.
-func without(list, fixed []complex128) []complex128 {
-	list = append([]complex128(nil), list...)
-	for _, f := range fixed {
-		best := 0
-		for i, v := range list {
-			if cmplx.Abs(v-f) < cmplx.Abs(list[best]-f) {
-				best = i
-			}
-		}
-		list = append(list[:best], list[best+1:]...)
-	}
-	return list
 }
 
 // cost is the weighted sum of variances that the least-noise gain minimises.

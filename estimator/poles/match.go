@@ -3,6 +3,7 @@ package poles
 import (
 	"math"
 	"math/cmplx"
+	"slices"
 )
 
 // Match pairs two sets of poles one to one so that the sum of the distances is
@@ -113,4 +114,22 @@ func assign(index []int, rows, columns []complex128) {
 			index[owner[j]-1] = j - 1
 		}
 	}
+}
+
+// Without returns a copy of list without, for each of gone in turn, the entry that
+// is nearest to it.
+func Without(list, gone []complex128) []complex128 {
+	out := slices.Clone(list)
+	for _, g := range gone {
+		best := -1
+		for i, v := range out {
+			if best < 0 || cmplx.Abs(v-g) < cmplx.Abs(out[best]-g) {
+				best = i
+			}
+		}
+		if best >= 0 {
+			out = slices.Delete(out, best, best+1)
+		}
+	}
+	return out
 }

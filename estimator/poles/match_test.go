@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/cmplx"
 	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"github.com/google/go-cmp/cmp"
@@ -105,5 +106,19 @@ func BenchmarkMatch(b *testing.B) {
 				sink = poles.Match(wanted, have)
 			}
 		})
+	}
+}
+
+func TestWithoutTakesTheNearestOnce(t *testing.T) {
+	list := []complex128{-1, -1, -2 + 1i, -2 - 1i, 5}
+	got := poles.Without(list, []complex128{-1.1, -2 + 0.9i, 4})
+	if want := []complex128{-1, -2 - 1i}; !slices.Equal(got, want) {
+		t.Errorf("%v is left, expected %v", got, want)
+	}
+	if list[4] != 5 {
+		t.Error("the list itself was changed")
+	}
+	if got := poles.Without(list[:1], []complex128{0, 0}); len(got) != 0 {
+		t.Errorf("%v is left of one", got)
 	}
 }

@@ -12,6 +12,7 @@ import (
 	"gonum.org/v1/gonum/optimize"
 
 	"polewright/estimator"
+	"polewright/estimator/poles"
 	"polewright/estimator/sweep"
 	"polewright/plants"
 	"polewright/scenarios"
@@ -153,7 +154,7 @@ func (s *search) starts() [][]float64 {
 		if pt.Design == nil {
 			continue
 		}
-		_, x, err := newShape(without(pt.Design.Reached, s.designer.Fixed()), s.p.Model.Period)
+		_, x, err := newShape(poles.Without(pt.Design.Reached, s.designer.Fixed()), s.p.Model.Period)
 		if err != nil || len(x) != len(s.start) {
 			continue
 		}

@@ -129,20 +129,3 @@ func (f shape) own(s complex128) complex128 {
 	}
 	return poles.ToZ(s, f.period)
 }
-
-// without returns list without the entry nearest to each of some.
-func without(list, some []complex128) []complex128 {
-	out := slices.Clone(list)
-	for _, v := range some {
-		best := -1
-		for i, w := range out {
-			if best < 0 || cmplx.Abs(w-v) < cmplx.Abs(out[best]-v) {
-				best = i
-			}
-		}
-		if best >= 0 {
-			out = slices.Delete(out, best, best+1)
-		}
-	}
-	return out
-}

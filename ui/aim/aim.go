@@ -83,7 +83,7 @@ func floor(m *estimator.Model, d *estimator.Designer) ([]complex128, error) {
 		}
 		return nil, errors.New(d.Analysis().FloorReason)
 	}
-	list := without(f.Poles, d.Fixed())
+	list := poles.Without(f.Poles, d.Fixed())
 	_, registers := d.Movable()
 	for i, v := range list { // zero but for what an eigenvalue iteration scatters
 		if m.Discrete() && cmplx.Abs(v) < 1e-8 {
@@ -104,35 +104,18 @@ func floor(m *estimator.Model, d *estimator.Designer) ([]complex128, error) {
 	return list, nil
 }
 
-// without returns list without the entry nearest to each of some.
-func without(list, some []complex128) []complex128 {
-	out := append([]complex128(nil), list...)
-	for _, f := range some {
-		best := -1
-		for i, v := range out {
-			if best < 0 || cmplx.Abs(v-f) < cmplx.Abs(out[best]-f) {
-				best = i
-			}
-		}
-		if best >= 0 {
-			out = append(out[:best], out[best+1:]...)
-		}
-	}
-	return out
-}
-
 // faster makes base k times as fast in the s-plane, without the fixed modes and
 // the delay registers.
 func faster(whose string, base []complex128, k float64, m *estimator.Model, d *estimator.Designer) ([]complex128, error) {
 	movable, registers := d.Movable()
-	list := without(base, d.Fixed())
+	list := poles.Without(base, d.Fixed())
 	if m.Discrete() {
 		for i, v := range list {
 			if cmplx.Abs(v) < 1e-9 {
 				list[i] = 0
 			}
 		}
-		list = without(list, make([]complex128, min(registers, countZero(list))))
+		list = poles.Without(list, make([]complex128, min(registers, countZero(list))))
 	}
 	if want := movable - registers; len(list) != want {
 		return nil, fmt.Errorf("%s poles are %d, but %d can be chosen here: list the poles instead", whose, len(list), want)

@@ -1,12 +1,11 @@
 package screen
 
 import (
-	"math"
-	"math/cmplx"
 	"time"
 
 	tea "github.com/charmbracelet/bubbletea"
 
+	"polewright/estimator/poles"
 	"polewright/scenarios"
 	"polewright/ui/desk"
 	"polewright/ui/plane/targets"
@@ -144,7 +143,7 @@ func (m *Model) adopt(a *desk.Answer) {
 		m.takeFixed(a.Fixed)
 	}
 	if l := a.Design.Loop; l != nil && m.controller == nil {
-		m.controller = without(l.Poles, a.Design.Reached)
+		m.controller = poles.Without(l.Poles, a.Design.Reached)
 		m.dirty |= planeRegion
 	}
 	if a.Gen != m.gen {
@@ -180,7 +179,7 @@ func (m *Model) movable(list []complex128) []complex128 {
 	if len(fixed) == 0 || len(list) < n {
 		return list
 	}
-	return without(list, fixed)
+	return poles.Without(list, fixed)
 }
 
 // firstHeld is the pole to start with: the one the session held, else the first
@@ -194,23 +193,6 @@ func (m *Model) firstHeld() int {
 		}
 	}
 	return min(max(m.cfg.Work.View.Selected, 0), max(len(m.now.set.List)-1, 0))
-}
-
-// without removes from list the nearest to each of the others.
-func without(list, others []complex128) []complex128 {
-	out := append([]complex128(nil), list...)
-	for _, o := range others {
-		best, least := -1, math.Inf(1)
-		for i, p := range out {
-			if d := cmplx.Abs(p - o); d < least {
-				best, least = i, d
-			}
-		}
-		if best >= 0 {
-			out = append(out[:best], out[best+1:]...)
-		}
-	}
-	return out
 }
 
 // newRun gives every trace that is looked at an axis, the first time; later runs
