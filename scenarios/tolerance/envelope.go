@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/cmplx"
+	"strings"
 
 	"polewright/estimator"
 	"polewright/plants"
@@ -161,7 +162,7 @@ func (s Study) measures(m *estimator.Model) []Measure {
 			}
 			add(func(q *Measure) {
 				q.Figure, q.State, q.Input, q.Unit = Bias, i, j, state.unit
-				q.Name = fmt.Sprintf("bias of %s for %.4g on %s", state.name, u.Scale, u.Name)
+				q.Name = fmt.Sprintf("bias of %s for %s on %s", state.name, strings.TrimSpace(fmt.Sprintf("%.4g %s", u.Scale, u.Unit)), u.Name)
 				q.of = func(r *estimator.Mismatch) float64 {
 					if r.Bias == nil {
 						return math.NaN()
