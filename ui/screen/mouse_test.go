@@ -36,7 +36,7 @@ func find(t *testing.T, r *rig, text string) (x, y int) {
 // of undo.
 func TestMouseDrags(t *testing.T) {
 	r := start(t)
-	x, y := find(t, r, "○") // the real pole
+	x, y := find(t, r, "□") // the real pole
 	r.mouse(tea.MouseActionPress, x, y)
 	r.mouse(tea.MouseActionRelease, x, y)
 	if r.work().View.Selected != 0 {
@@ -80,7 +80,7 @@ func TestMouseDragsAPair(t *testing.T) {
 	r.press("P")
 	x, y := find(t, r, "●")
 	axis, _ := 0, 0
-	_, axis = find(t, r, "○")
+	_, axis = find(t, r, "□")
 	mirror := 2*axis - y
 	r.mouse(tea.MouseActionPress, x, mirror)
 	r.mouse(tea.MouseActionMotion, x-3, mirror+1)

@@ -1,7 +1,8 @@
 package theme
 
 // Glyphs are the characters of the screen, each one cell wide. Marks differ in
-// shape, so that none needs a colour.
+// shape, so that none needs a colour. A circle would be read as a zero: the trade
+// marks zeros so.
 type Glyphs struct {
 	Target, Selected, Fixed, Plant, Controller, Floor rune
 
@@ -30,7 +31,7 @@ type Line struct {
 }
 
 var unicode = Glyphs{
-	Target: '○', Selected: '●', Fixed: '■', Plant: '×', Controller: '△', Floor: '◇',
+	Target: '□', Selected: '●', Fixed: '■', Plant: '×', Controller: '△', Floor: '◇',
 	Rule: '─', Vertical: '│', Cross: '┼', Dot: '·', Limit: '╌',
 	Left: '◂', Right: '▸', Up: '▴', Down: '▾', Event: '!', Cursor: '▏', Ellipsis: '…',
 	Grain: [Shades][2][4]rune{{{' ', ' ', ' ', ' '}, {' ', ' ', ' ', ' '}}, {{'░', ' ', ' ', ' '}, {' ', ' ', '░', ' '}}, {{'░', ' ', '░', ' '}, {' ', '░', ' ', '░'}}, {{'░', '░', '░', '░'}, {'░', '░', '░', '░'}}, {{'▒', '░', '▒', '░'}, {'░', '▒', '░', '▒'}}}, Hatch: '╱',
@@ -41,7 +42,7 @@ var unicode = Glyphs{
 }
 
 var ascii = Glyphs{
-	Target: 'o', Selected: '@', Fixed: '#', Plant: 'x', Controller: 'c', Floor: '*',
+	Target: 'w', Selected: '@', Fixed: '#', Plant: 'x', Controller: 'c', Floor: '*',
 	Rule: '-', Vertical: '|', Cross: '+', Dot: '.', Limit: '=',
 	Left: '<', Right: '>', Up: '^', Down: 'v', Event: '!', Cursor: '_', Ellipsis: '~',
 	Grain: [Shades][2][4]rune{{{' ', ' ', ' ', ' '}, {' ', ' ', ' ', ' '}}, {{',', ' ', ' ', ' '}, {' ', ' ', ',', ' '}}, {{',', ' ', ',', ' '}, {' ', ',', ' ', ','}}, {{':', ' ', ':', ' '}, {' ', ':', ' ', ':'}}, {{':', ':', ':', ':'}, {':', ':', ':', ':'}}}, Hatch: '%',
