@@ -109,12 +109,16 @@ func drawRow(c *canvas.Canvas, x, y, w int, r Row, ink theme.Ink, late bool, g *
 		labelEnd = unitEnd
 	}
 	text := r.Label
+	unitFits := canvas.TextWidth(r.Unit) <= unitEnd-valueEnd-1
+	if r.Named != "" && !unitFits && canvas.TextWidth(r.Named) <= labelEnd {
+		text = r.Named
+	}
 	if r.Short != "" && canvas.TextWidth(text) > labelEnd {
 		text = r.Short
 	}
 	c.Text(x, y, canvas.Cut(text, labelEnd, g.Ellipsis), label)
 	c.Right(x+valueEnd, y, r.Value, ink)
-	if canvas.TextWidth(r.Unit) <= unitEnd-valueEnd-1 {
+	if unitFits {
 		c.Text(x+valueEnd+1, y, r.Unit, theme.Faint)
 	}
 }

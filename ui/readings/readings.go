@@ -49,6 +49,7 @@ type Facts struct {
 type Row struct {
 	Label, Value, Unit, Tail string
 	Short                    string    // in place of a label that does not fit
+	Named                    string    // label with its unit, where the unit itself does not fit
 	Ink                      theme.Ink // of the tail
 }
 
@@ -221,21 +222,16 @@ func times(v float64, g *theme.Glyphs) string {
 	return Fixed(v, 2, g)
 }
 
-// limitWords are the scenario's limits in words with their units, and whether the
-// limit is a least value.
-var limitWords = map[string]struct {
-	words, unit string
-	least       bool
-}{
-	"settle_s": {"settle", "s", false}, "peak_max": {"peak", "x", false}, "over_floor_max": {"over floor", "x", false},
-	"gain_max": {"gain", "", false}, "sensitivity_max": {"sensitivity", "", false},
-	"phase_margin_deg": {"phase margin", "deg", true}, "delay_margin_s": {"delay margin", "s", true},
+// limitWords are the scenario's limits in words.
+var limitWords = map[string]string{
+	"settle_s": "settle", "peak_max": "peak", "over_floor_max": "over floor", "gain_max": "gain",
+	"sensitivity_max": "sensitivity", "phase_margin_deg": "phase margin", "delay_margin_s": "delay margin",
 }
 
 // LimitWords is the name of a limit in words.
 func LimitWords(name string) string {
-	if l, ok := limitWords[name]; ok {
-		return l.words
+	if words, ok := limitWords[name]; ok {
+		return words
 	}
 	return strings.NewReplacer("_", " ", ".", " ").Replace(name)
 }
@@ -246,15 +242,18 @@ func limits(f Facts, g *theme.Glyphs) Section {
 	s := Section{Title: limitsTitle, Figures: true}
 	over := 0
 	for _, l := range f.Limits {
-		words := limitWords[l.Name]
 		relation := g.AtMost
-		if words.least {
+		if l.AtLeast {
 			relation = g.AtLeast
 		}
 		row := Row{Label: LimitWords(l.Name), Value: Figure(l.Value, l.Limit, g), Unit: relation + " " + strconv.FormatFloat(l.Limit, 'g', 4, 64), Tail: "ok"}
+		if l.Unit != "" {
+			row.Unit += " " + l.Unit
+			row.Named = row.Label + ", " + l.Unit
+		}
 		if !l.Met {
 			row.Tail, row.Ink = "OVER", theme.Trouble
-			if words.least {
+			if l.AtLeast {
 				row.Tail = "UNDER"
 			}
 			over++

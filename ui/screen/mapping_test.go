@@ -273,7 +273,7 @@ func landsAsPromised(t *testing.T, b *desk.Bench) {
 			t.Errorf("step %d: the map promised %s, landing gave %s", i, p[1], l[1])
 		}
 		seen[p[1]] = true
-		if m := limit.FindStringSubmatch(view); m != nil && !regexp.MustCompile(m[1]+" .*(OVER|UNDER)").MatchString(view) {
+		if m := limit.FindStringSubmatch(view); m != nil && !regexp.MustCompile(m[1]+"(,| ).*(OVER|UNDER)").MatchString(view) {
 			t.Errorf("step %d: the map says that %q breaks, the readings do not:\n%s", i, m[1], view)
 		}
 	}
