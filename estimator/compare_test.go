@@ -166,10 +166,11 @@ func TestCompareWithSciPy(t *testing.T) {
 	}
 }
 
-// TestCostAgainstSize prints, with -args -compare, the exponent of the cost against n.
-func TestCostAgainstSize(t *testing.T) {
+// BenchmarkCostAgainstSize reports, with -args -compare, the exponent of the cost
+// against n. It times its own redesigns, whatever -benchtime is.
+func BenchmarkCostAgainstSize(b *testing.B) {
 	if !*compare {
-		t.Skip("prints times only; -args -compare asks for it")
+		b.Skip("takes a minute; -args -compare asks for it")
 	}
 	judge := func(d *estimator.Designer) placing {
 		return func(list []complex128, prev *estimator.Design) (*estimator.Design, error) {
@@ -198,7 +199,7 @@ func TestCostAgainstSize(t *testing.T) {
 			if part.p == 1 && n == 100 {
 				continue // one sensor cannot place 100 poles in double precision
 			}
-			took := least(kind{n, part.p, false, true, part.warm}.redesign(t, part.method), 2*time.Second)
+			took := least(kind{n, part.p, false, true, part.warm}.redesign(b, part.method), 2*time.Second)
 			x, y, line = append(x, math.Log(float64(n))), append(y, math.Log(took)), append(line, int(took))
 		}
 		var sx, sy, sxx, sxy float64
@@ -206,6 +207,6 @@ func TestCostAgainstSize(t *testing.T) {
 			sx, sy, sxx, sxy = sx+x[i], sy+y[i], sxx+x[i]*x[i], sxy+x[i]*y[i]
 		}
 		k := float64(len(x))
-		t.Logf("%-30s n^%.2f  (µs at n = 10, 20, 50, 100: %v)", part.name, (k*sxy-sx*sy)/(k*sxx-sx*sx), line)
+		b.Logf("%-30s n^%.2f  (µs at n = 10, 20, 50, 100: %v)", part.name, (k*sxy-sx*sy)/(k*sxx-sx*sx), line)
 	}
 }
